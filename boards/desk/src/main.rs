@@ -1,0 +1,3 @@
+//! Host tool.
+
+fn main() {}
