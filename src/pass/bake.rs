@@ -1,0 +1,458 @@
+//! Baking: from a delay that can be asked at any instant to a [`PassTable`].
+//!
+//! Segments are taken from the left, each as long as the asked-for error allows. A segment is fitted from its
+//! Chebyshev series: the derivative's series is cut (so the slope, which is the frequency, is what comes out
+//! near its best), the coefficients are rounded from the highest order down, each rounding handed on to the
+//! lower orders, and what is left is bounded, not sampled:
+//!
+//! * (a) the fixed-point evaluation's rounding by analysis (`table/evaluate.rs`);
+//! * (b) the residual, a polynomial of degree N, from M Chebyshev points with the factor 1/cos(pi N / 2M)
+//!   (H. Ehlich and K. Zeller, Mathematische Zeitschrift 86, 1964, from memory);
+//! * (c) the tail beyond degree N as a geometric series with the ratio that the header states; a segment whose
+//!   coefficients visibly decay more slowly is refused.
+
+use super::chebyshev::{self, Cosines};
+use super::geometry::{Direction, Geometry, TaggedAt};
+use super::packing::checksum;
+use super::table::{
+    BASE_FRACTION, CELL_BITS, DEGREE, FIELDS, HEADER_WORDS, MAGIC, PARTIAL_RECORD_WORDS, PartialRecord,
+    PassTable, RECORD_WORDS, SPAN_FRACTION, TableError, VERSION,
+};
+use crate::time::GpsTime;
+
+/// Chebyshev points of a segment.
+const POINTS: usize = 24;
+/// Chebyshev points at which the residual is looked at: 1/cos(pi 23 / 128) = 1.183.
+const RESIDUAL_POINTS: usize = 64;
+/// Assumed ratio of successive coefficients beyond the fit, in 2^-16: one half.
+const SMOOTHNESS: u32 = 1 << 15;
+/// Rounding noise of a Chebyshev coefficient in f64, relative to the delay.
+const COEFFICIENT_NOISE: f64 = 1e-15;
+/// Most segments a table gets.
+const MOST_SEGMENTS: usize = 256;
+/// Values of Q that are tried, from the finest that holds the nodes.
+const FRACTION_TRIES: i32 = 3;
+
+/// Why a table could not be baked.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+#[non_exhaustive]
+pub enum BakeError {
+    /// The end is not after the start, or the span is above 48 days.
+    SpanNotUsable,
+    /// The tolerance is not positive, or finer than the evaluation can be (slope 1e-13, delay 1e-13 s).
+    ToleranceNotUsable,
+    /// The delay was not a number, negative beyond -64 s or above 64 s.
+    DelayNotUsable,
+    /// The delay is not smooth enough, or the tolerance too fine, for 256 segments.
+    TooManySegments,
+    /// The buffer given to write into is too small.
+    BufferTooSmall,
+    /// The span reaches outside the arc.
+    OutsideArc,
+}
+
+impl core::fmt::Display for BakeError {
+    fn fmt(&self, formatter: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
+        formatter.write_str(match self {
+            Self::SpanNotUsable => "table span must be positive and below 48 days",
+            Self::ToleranceNotUsable => "tolerance finer than 1e-13 (slope) or 1e-13 s (delay), or not a number",
+            Self::DelayNotUsable => "a delay was not a number or beyond 64 s",
+            Self::TooManySegments => {
+                "256 segments do not meet the tolerance: allow more error, shorten the span or smooth the input"
+            }
+            Self::BufferTooSmall => "buffer too small for the table",
+            Self::OutsideArc => "the span reaches outside the arc: bake a span inside it, or get the next arc",
+        })
+    }
+}
+
+impl core::error::Error for BakeError {}
+
+/// What a table says about itself.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct BakeSettings {
+    /// First instant.
+    pub start: GpsTime,
+    /// Last instant.
+    pub end: GpsTime,
+    /// Largest allowed error of the delay's slope: hertz over carrier.
+    pub slope_tolerance: f64,
+    /// Largest allowed error of the delay in seconds: cycles over carrier.
+    pub delay_tolerance: f64,
+    /// Direction of the signal.
+    pub direction: Direction,
+    /// End at which time is read.
+    pub tagged_at: TaggedAt,
+    /// Object number.
+    pub object: u32,
+    /// Epoch of the elements.
+    pub element_epoch: GpsTime,
+    /// Latitude and longitude in 1e-7 degree, height in millimetres.
+    pub site: [i32; 3],
+    /// CRC-32 of the arc, or 0.
+    pub arc_digest: u32,
+}
+
+/// One fitted segment.
+#[derive(Clone, Copy, Debug, Default)]
+struct Fit {
+    coefficients: [i32; DEGREE + 1],
+    slope_error: f64,
+    delay_error: f64,
+}
+
+/// Units of one attempt.
+#[derive(Clone, Copy)]
+struct Units {
+    fraction: i32,
+    base: f64,
+    /// log2 of a cell in 2^-30 s.
+    cell: u32,
+}
+
+impl Units {
+    fn cell_seconds(&self) -> f64 {
+        libm::ldexp(1.0, self.cell as i32 - GpsTime::FRACTION_BITS as i32)
+    }
+
+    /// A node in 2^-(Q-1) s over the base; `None` when it does not fit.
+    fn node(&self, delay: f64) -> Option<u32> {
+        let scaled = libm::round(libm::ldexp(delay - self.base, self.fraction - 1));
+        (0.0..4_294_967_296.0).contains(&scaled).then_some(scaled as u32)
+    }
+
+    fn node_delay(&self, node: u32) -> f64 {
+        libm::ldexp(f64::from(node), 1 - self.fraction)
+    }
+}
+
+/// Bakes a table into `buffer` from `delay`, which gives the apparent delay in seconds at seconds from
+/// `settings.start`, read at the tagged end. It is asked up to one segment past the end and must go on smoothly
+/// there. `late` gives, where the table shall answer for lateness, the same for a spacecraft late by its second
+/// argument in seconds.
+///
+/// # Accuracy
+/// The slope within `slope_tolerance` and the delay within `delay_tolerance`, as proven bounds (see the module).
+///
+/// # Errors
+/// See [`BakeError`].
+pub fn bake<'a>(
+    buffer: &'a mut [u32],
+    settings: &BakeSettings,
+    mut delay: impl FnMut(f64) -> f64,
+    late: Option<&mut dyn FnMut(f64, f64) -> f64>,
+) -> Result<PassTable<'a>, BakeError> {
+    let span = settings.end.seconds_since(settings.start);
+    let span_units = libm::ceil(libm::ldexp(span, SPAN_FRACTION as i32));
+    if !(span > 0.0 && span_units < 4_294_967_296.0) {
+        return Err(BakeError::SpanNotUsable);
+    }
+    if !(settings.slope_tolerance > 1e-13 && settings.delay_tolerance > 1e-13) {
+        return Err(BakeError::ToleranceNotUsable);
+    }
+    let cell = cell_for(span);
+    let finest = units_for(span, cell, &mut delay)?;
+    let mut best: Option<(Units, usize)> = None;
+    for coarser in 0..FRACTION_TRIES {
+        let units = Units { fraction: finest.fraction - coarser, ..finest };
+        let counted = Layout::plan(&units, settings, span, &mut delay, |_, _, _| Some(()));
+        if let Ok((count, _)) = counted
+            && best.is_none_or(|(_, least)| count < least)
+        {
+            best = Some((units, count));
+        }
+    }
+    let (units, count) = best.ok_or(BakeError::TooManySegments)?;
+    let length = write(buffer, settings, &units, count, span, &mut delay, late)?;
+    buffer
+        .get(..length)
+        .ok_or(BakeError::BufferTooSmall)
+        .and_then(|words| PassTable::new(words).map_err(|_| BakeError::BufferTooSmall))
+}
+
+/// log2, in 2^-30 s, of the smallest cell of which 1024 cover the span.
+fn cell_for(span: f64) -> u32 {
+    let mut cell = 20;
+    while cell < 48 && libm::ldexp(1.0, cell as i32 - 30) * 1024.0 < span {
+        cell += 1;
+    }
+    cell
+}
+
+/// Base and the finest Q whose nodes hold the delay's range with room for what lies past the end.
+fn units_for(span: f64, cell: u32, delay: &mut impl FnMut(f64) -> f64) -> Result<Units, BakeError> {
+    const LOOKS: i32 = 40;
+    let (mut least, mut most) = (f64::INFINITY, f64::NEG_INFINITY);
+    for look in 0..=LOOKS {
+        let value = delay(span * 1.05 * f64::from(look) / f64::from(LOOKS));
+        if !(value.abs() < 64.0) {
+            return Err(BakeError::DelayNotUsable);
+        }
+        least = least.min(value);
+        most = most.max(value);
+    }
+    let room = (most - least) * 0.02 + 1e-9;
+    let base = libm::ldexp(libm::floor(libm::ldexp(least - room, BASE_FRACTION as i32)), -(BASE_FRACTION as i32));
+    let mut fraction = 46;
+    while fraction > 24 && libm::ldexp(most + room - base, fraction - 1) >= 4_294_967_295.0 {
+        fraction -= 1;
+    }
+    Ok(Units { fraction, base, cell })
+}
+
+/// Walks over the segments of a table.
+struct Layout;
+
+impl Layout {
+    /// Lays segments from the left and hands each (first cell, log2 length, fit and its two nodes) to `keep`;
+    /// returns how many there are and the largest slope and delay errors.
+    fn plan(
+        units: &Units,
+        settings: &BakeSettings,
+        span: f64,
+        delay: &mut impl FnMut(f64) -> f64,
+        mut keep: impl FnMut(u32, u32, &(Fit, [u32; 2])) -> Option<()>,
+    ) -> Result<(usize, Fit), BakeError> {
+        let cells = libm::ceil(span / units.cell_seconds()) as u32;
+        let mut first = 0;
+        let mut length: u32 = 15;
+        let mut worst = Fit::default();
+        for count in 1..=MOST_SEGMENTS {
+            let left = cells - first;
+            let covering = 32 - (left - 1).leading_zeros();
+            length = (length + 1).min(covering).min(15);
+            let fitted = loop {
+                if let Some(fitted) = fit(units, settings, first, length, delay) {
+                    break fitted;
+                }
+                length = length.checked_sub(1).ok_or(BakeError::TooManySegments)?;
+            };
+            worst.slope_error = worst.slope_error.max(fitted.0.slope_error);
+            worst.delay_error = worst.delay_error.max(fitted.0.delay_error);
+            keep(first, length, &fitted).ok_or(BakeError::BufferTooSmall)?;
+            first += 1 << length;
+            if first >= cells {
+                return Ok((count, worst));
+            }
+        }
+        Err(BakeError::TooManySegments)
+    }
+}
+
+/// Fits one segment; `None` when it is too long.
+fn fit(
+    units: &Units,
+    settings: &BakeSettings,
+    first: u32,
+    length: u32,
+    delay: &mut impl FnMut(f64) -> f64,
+) -> Option<(Fit, [u32; 2])> {
+    let half = units.cell_seconds() * libm::ldexp(1.0, length as i32) / 2.0;
+    let start = units.cell_seconds() * f64::from(first);
+    let mut values = [0.0; POINTS];
+    for (index, value) in values.iter_mut().enumerate() {
+        *value = delay(start + half * (1.0 + chebyshev::point(index, POINTS))) - units.base;
+    }
+    let series = chebyshev::interpolate(&values, &Cosines::<POINTS>::new());
+    let tail = tail(&series)?;
+    let nodes = [units.node(delay(start))?, units.node(delay(start + 2.0 * half))?];
+    let (coefficients, left) = round(&series, units, nodes)?;
+    if !fits(&series, units) {
+        return None;
+    }
+    let factor = 1.0 / libm::cos(core::f64::consts::PI * (POINTS - 1) as f64 / (2 * RESIDUAL_POINTS) as f64);
+    let (mut slope_error, mut delay_error) = (0.0_f64, 0.0_f64);
+    for index in 0..RESIDUAL_POINTS {
+        let (value, slope) = chebyshev::evaluate(&left, chebyshev::point(index, RESIDUAL_POINTS));
+        delay_error = delay_error.max(value.abs());
+        slope_error = slope_error.max(slope.abs());
+    }
+    let noise = libm::ldexp(f64::from(super::table::NOISE), -16 - units.fraction);
+    let slope_error = (slope_error * factor + tail.1) / half;
+    let delay_error = delay_error * factor + tail.0 + noise;
+    let met = slope_error <= settings.slope_tolerance && delay_error <= settings.delay_tolerance;
+    met.then_some((Fit { coefficients, slope_error, delay_error }, nodes))
+}
+
+/// Bound on what lies beyond the interpolant: value and slope (per half segment); `None` when the
+/// coefficients do not decay as the header states.
+fn tail(series: &[f64; POINTS]) -> Option<(f64, f64)> {
+    let most = |from: usize, to: usize| {
+        series.get(from..to).unwrap_or(&[]).iter().fold(0.0_f64, |most, value| most.max(value.abs()))
+    };
+    let last = most(POINTS - 4, POINTS);
+    let noise = most(0, POINTS) * COEFFICIENT_NOISE;
+    // Ten orders earlier the same ratio must have held: (1/2)^10, with a factor two for the phase.
+    if last > noise && last * 512.0 > most(POINTS - 14, POINTS - 10) {
+        return None;
+    }
+    let (mut value, mut slope, mut term) = (0.0, 0.0, last);
+    for order in POINTS..POINTS + 64 {
+        term *= f64::from(SMOOTHNESS) / 65536.0;
+        value += term;
+        slope += term * (order * order) as f64;
+    }
+    Some((value, slope))
+}
+
+/// Rounds the coefficients from the top; returns them and the series of what is left.
+fn round(
+    series: &[f64; POINTS],
+    units: &Units,
+    nodes: [u32; 2],
+) -> Option<([i32; DEGREE + 1], [f64; POINTS])> {
+    let mut left = *series;
+    let mut target = cut_for_slope(series);
+    let mut coefficients = [0; DEGREE + 1];
+    let mut take = |left: &mut [f64; POINTS], target: &mut [f64; DEGREE + 1], power: usize, size: f64| {
+        for (order, (left, target)) in left.iter_mut().zip(target).enumerate() {
+            let part = size * chebyshev::of_monomial(power, order);
+            *left -= part;
+            *target -= part;
+        }
+    };
+    for (power, coefficient) in coefficients.iter_mut().enumerate().skip(2).rev() {
+        let (coarser, width) = *FIELDS.get(power)?;
+        let unit = libm::ldexp(1.0, coarser - units.fraction);
+        let leading = *target.get(power)? / chebyshev::of_monomial(power, power);
+        let rounded = libm::round(leading / unit);
+        if !(rounded.abs() < libm::ldexp(1.0, width as i32 - 1)) {
+            return None;
+        }
+        *coefficient = rounded as i32;
+        take(&mut left, &mut target, power, rounded * unit);
+    }
+    // Orders 0 and 1 as the evaluation derives them from the nodes.
+    let unit = libm::ldexp(1.0, -units.fraction);
+    let sum = |parity: usize| {
+        coefficients.iter().zip(&FIELDS).enumerate().skip(2).filter(|(power, _)| power % 2 == parity).fold(
+            0.0,
+            |sum, (_, (&value, &(coarser, _)))| sum + libm::ldexp(f64::from(value), coarser),
+        )
+    };
+    let [start, end] = nodes.map(f64::from);
+    take(&mut left, &mut target, 1, (end - start - sum(1)) * unit);
+    take(&mut left, &mut target, 0, (end + start - sum(0)) * unit);
+    Some((coefficients, left))
+}
+
+/// The series of degree 9 whose derivative is the derivative's series cut at degree 8.
+fn cut_for_slope(series: &[f64; POINTS]) -> [f64; DEGREE + 1] {
+    let mut slopes = [0.0; POINTS + 1];
+    for order in (1..POINTS).rev() {
+        let above = slopes.get(order + 1).copied().unwrap_or(0.0);
+        let own = series.get(order).copied().unwrap_or(0.0);
+        if let Some(slope) = slopes.get_mut(order - 1) {
+            *slope = above + 2.0 * order as f64 * own;
+        }
+    }
+    let mut cut = [0.0; DEGREE + 1];
+    for (order, term) in cut.iter_mut().enumerate().skip(1) {
+        let kept = |index: usize| if index < DEGREE { slopes.get(index).copied().unwrap_or(0.0) } else { 0.0 };
+        *term = (kept(order - 1) - kept(order + 1)) / (2 * order) as f64;
+    }
+    cut
+}
+
+/// Whether slope and curvature stay inside the evaluation's 32 bits anywhere on the segment.
+fn fits(series: &[f64; POINTS], units: &Units) -> bool {
+    let bounds = series.iter().enumerate().fold((0.0, 0.0), |(slope, bend), (order, value)| {
+        let square = (order * order) as f64;
+        (slope + value.abs() * square, bend + value.abs() * square * (square - 1.0).max(0.0) / 3.0)
+    });
+    // In the evaluation's argument, half as long: slope doubles, half the curvature doubles; a quarter is kept free.
+    let scale = libm::ldexp(1.0, units.fraction - 2);
+    bounds.0 * 2.0 * scale < 1.6e9 && bounds.1 * 2.0 * scale < 8.0e8
+}
+
+/// Writes a whole table; returns its length in words.
+fn write(
+    buffer: &mut [u32],
+    settings: &BakeSettings,
+    units: &Units,
+    count: usize,
+    span: f64,
+    delay: &mut impl FnMut(f64) -> f64,
+    late: Option<&mut dyn FnMut(f64, f64) -> f64>,
+) -> Result<usize, BakeError> {
+    let directory_words = count.next_power_of_two().max(2) / 2;
+    let records = HEADER_WORDS + directory_words;
+    let mut end = records + count * RECORD_WORDS + 1;
+    let (directory, rest) = buffer
+        .get_mut(HEADER_WORDS..)
+        .and_then(|words| words.split_at_mut_checked(directory_words))
+        .ok_or(BakeError::BufferTooSmall)?;
+    directory.fill(u32::MAX);
+    let mut segment = 0;
+    let (_, worst) = Layout::plan(units, settings, span, delay, |first, length, (fit, nodes)| {
+        let shift = 16 * (segment % 2);
+        let word = directory.get_mut(segment / 2)?;
+        *word = *word & !(0xFFFF << shift) | (first << (16 - CELL_BITS) | length) << shift;
+        let record = rest.get_mut(segment * RECORD_WORDS..)?.first_chunk_mut::<{ RECORD_WORDS + 1 }>()?;
+        let [start, end] = *nodes;
+        let [_, _, c2, c3, c4, c5, c6, c7, c8, c9] = fit.coefficients;
+        let joined = |high: i32, low: i32, bits: u32| (high as u32) << bits | low as u32 & ((1 << bits) - 1);
+        *record = [
+            start,
+            c2 as u32,
+            c3 as u32,
+            joined(c4, c9, 10),
+            joined(c5, c8, 12),
+            joined(c6, c7, 15),
+            end,
+        ];
+        segment += 1;
+        Some(())
+    })?;
+    if let Some(late) = late {
+        let partial = buffer.get_mut(end..).ok_or(BakeError::BufferTooSmall)?;
+        let directory_copy = |segment: usize, words: &[u32]| {
+            words.get(HEADER_WORDS + segment / 2).map_or(0, |word| word >> (16 * (segment % 2)) & 0xFFFF)
+        };
+        let _ = partial;
+        end = write_partial(buffer, end, count, units, directory_copy, late)?;
+    }
+    let header = header(settings, units, count, span, &worst, end > records + count * RECORD_WORDS + 1);
+    buffer.get_mut(..HEADER_WORDS).ok_or(BakeError::BufferTooSmall)?.copy_from_slice(&header);
+    let sum = checksum(buffer.get(..end).ok_or(BakeError::BufferTooSmall)?);
+    *buffer.get_mut(end).ok_or(BakeError::BufferTooSmall)? = sum;
+    Ok(end + 1)
+}
+
+fn header(
+    settings: &BakeSettings,
+    units: &Units,
+    count: usize,
+    span: f64,
+    worst: &Fit,
+    has_partial: bool,
+) -> [u32; HEADER_WORDS] {
+    let direction = match settings.direction {
+        Direction::Down => 0,
+        Direction::Up => 1,
+        Direction::TwoWay => 2,
+    };
+    let flags = direction
+        | u32::from(settings.tagged_at == TaggedAt::Spacecraft) << 2
+        | u32::from(has_partial) << 3;
+    let epoch = settings.start.to_bits() as u64;
+    let [latitude, longitude, height] = settings.site;
+    [
+        MAGIC << 16 | VERSION << 12 | (DEGREE as u32) << 8 | flags,
+        epoch as u32,
+        (epoch >> 32) as u32,
+        libm::ceil(libm::ldexp(span, SPAN_FRACTION as i32)) as u32,
+        settings.object,
+        (settings.element_epoch.to_bits() >> GpsTime::FRACTION_BITS) as u32,
+        latitude as u32,
+        longitude as u32,
+        height as u32,
+        settings.arc_digest,
+        libm::ceil(libm::ldexp(worst.slope_error, 60)) as u32,
+        libm::ceil(libm::ldexp(worst.delay_error, 60)) as u32,
+        libm::floor(libm::ldexp(units.base, BASE_FRACTION as i32)) as i32 as u32,
+        units.fraction as u32 | units.cell << 8 | (count as u32) << 16,
+        SMOOTHNESS,
+    ]
+}
