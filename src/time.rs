@@ -46,8 +46,8 @@ const DAY: i64 = 86_400;
 /// Source: the leap seconds announced by the IERS (Bulletin C), from memory; the last one took effect on
 /// 2017-01-01 and makes GPS - UTC = 18 s. To add one, append the day on which it takes effect.
 const LEAP_DAYS: [u16; 18] = [
-    4199, 4564, 4929, 5660, 6574, 7305, 7670, 8217, 8582, 8947, 9496, 10043, 10592, 13149, 14245, 15522, 16617,
-    17167,
+    4199, 4564, 4929, 5660, 6574, 7305, 7670, 8217, 8582, 8947, 9496, 10043, 10592, 13149, 14245, 15522,
+    16617, 17167,
 ];
 
 impl GpsTime {
@@ -128,7 +128,10 @@ impl GpsTime {
             return Err(TimeError::OutOfRange);
         }
         let of_day = hour as i64 * 3600 + minute as i64 * 60 + second as i64;
-        Self::from_gps_seconds(midnight - GPS_EPOCH_UNIX + leap_seconds_at_unix(midnight) + of_day, nanoseconds)
+        Self::from_gps_seconds(
+            midnight - GPS_EPOCH_UNIX + leap_seconds_at_unix(midnight) + of_day,
+            nanoseconds,
+        )
     }
 
     /// UTC as Unix seconds and nanoseconds (rounded down). Inside a leap second the Unix count repeats.

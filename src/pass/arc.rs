@@ -258,7 +258,12 @@ impl<'a> Arc<'a> {
     pub fn trajectory(&self) -> Trajectory {
         // `new` has unpacked it once; an arc exists only when that worked.
         self.unpack().map_or(
-            Trajectory { series: [[0.0; MAX_DEGREE + 1]; 3], degree: 0, middle: self.middle(), half_span: 1.0 },
+            Trajectory {
+                series: [[0.0; MAX_DEGREE + 1]; 3],
+                degree: 0,
+                middle: self.middle(),
+                half_span: 1.0,
+            },
             |(trajectory, _)| trajectory,
         )
     }

@@ -11,12 +11,13 @@
 //! * (c) the tail beyond degree N as a geometric series with the ratio that the header states; a segment whose
 //!   coefficients visibly decay more slowly is refused.
 
+use super::arc::Arc;
 use super::chebyshev::{self, Cosines};
 use super::geometry::{Direction, Geometry, TaggedAt};
 use super::packing::checksum;
 use super::table::{
-    BASE_FRACTION, CELL_BITS, DEGREE, FIELDS, HEADER_WORDS, MAGIC, PARTIAL_RECORD_WORDS, PartialRecord,
-    PassTable, RECORD_WORDS, SPAN_FRACTION, TableError, VERSION,
+    BASE_FRACTION, CELL_BITS, DEGREE, FIELDS, HEADER_WORDS, MAGIC, NOISE, PARTIAL_RECORD_WORDS,
+    PartialRecord, PassTable, RECORD_WORDS, SPAN_FRACTION, TableError, VERSION,
 };
 use crate::time::GpsTime;
 
@@ -122,8 +123,12 @@ impl Units {
         (0.0..4_294_967_296.0).contains(&scaled).then_some(scaled as u32)
     }
 
-    fn node_delay(&self, node: u32) -> f64 {
-        libm::ldexp(f64::from(node), 1 - self.fraction)
+    fn round(&self, series: &[f64; POINTS], nodes: [u32; 2]) -> Option<([i32; DEGREE + 1], [f64; POINTS])> {
+        let orders = FIELDS.map(|(coarser, width)| {
+            (libm::ldexp(1.0, coarser - self.fraction), libm::ldexp(1.0, width as i32 - 1))
+        });
+        let storage = Storage { node_unit: libm::ldexp(1.0, 1 - self.fraction), orders: &orders };
+        round(series, &storage, nodes.map(f64::from))
     }
 }
 
@@ -193,7 +198,8 @@ fn units_for(span: f64, cell: u32, delay: &mut impl FnMut(f64) -> f64) -> Result
         most = most.max(value);
     }
     let room = (most - least) * 0.02 + 1e-9;
-    let base = libm::ldexp(libm::floor(libm::ldexp(least - room, BASE_FRACTION as i32)), -(BASE_FRACTION as i32));
+    let base =
+        libm::ldexp(libm::floor(libm::ldexp(least - room, BASE_FRACTION as i32)), -(BASE_FRACTION as i32));
     let mut fraction = 46;
     while fraction > 24 && libm::ldexp(most + room - base, fraction - 1) >= 4_294_967_295.0 {
         fraction -= 1;
@@ -257,7 +263,7 @@ fn fit(
     let series = chebyshev::interpolate(&values, &Cosines::<POINTS>::new());
     let tail = tail(&series)?;
     let nodes = [units.node(delay(start))?, units.node(delay(start + 2.0 * half))?];
-    let (coefficients, left) = round(&series, units, nodes)?;
+    let (coefficients, left) = units.round(&series, nodes)?;
     if !fits(&series, units) {
         return None;
     }
@@ -268,7 +274,7 @@ fn fit(
         delay_error = delay_error.max(value.abs());
         slope_error = slope_error.max(slope.abs());
     }
-    let noise = libm::ldexp(f64::from(super::table::NOISE), -16 - units.fraction);
+    let noise = libm::ldexp(f64::from(NOISE), -16 - units.fraction);
     let slope_error = (slope_error * factor + tail.1) / half;
     let delay_error = delay_error * factor + tail.0 + noise;
     let met = slope_error <= settings.slope_tolerance && delay_error <= settings.delay_tolerance;
@@ -296,49 +302,51 @@ fn tail(series: &[f64; POINTS]) -> Option<(f64, f64)> {
     Some((value, slope))
 }
 
+/// How coefficients and nodes are stored.
+struct Storage<'a> {
+    /// Unit of a node.
+    node_unit: f64,
+    /// Unit and largest magnitude of each coefficient from order 0 on; 0 and 1 are not used.
+    orders: &'a [(f64, f64)],
+}
+
 /// Rounds the coefficients from the top; returns them and the series of what is left.
 fn round(
     series: &[f64; POINTS],
-    units: &Units,
-    nodes: [u32; 2],
+    storage: &Storage<'_>,
+    nodes: [f64; 2],
 ) -> Option<([i32; DEGREE + 1], [f64; POINTS])> {
     let mut left = *series;
-    let mut target = cut_for_slope(series);
+    let mut target = cut_for_slope(series, storage.orders.len() - 1);
     let mut coefficients = [0; DEGREE + 1];
-    let mut take = |left: &mut [f64; POINTS], target: &mut [f64; DEGREE + 1], power: usize, size: f64| {
-        for (order, (left, target)) in left.iter_mut().zip(target).enumerate() {
+    let mut sums = [0.0; 2];
+    let take = |left: &mut [f64; POINTS], target: &mut [f64; POINTS], power: usize, size: f64| {
+        for (order, (left, target)) in left.iter_mut().zip(target).enumerate().take(power + 1) {
             let part = size * chebyshev::of_monomial(power, order);
             *left -= part;
             *target -= part;
         }
     };
-    for (power, coefficient) in coefficients.iter_mut().enumerate().skip(2).rev() {
-        let (coarser, width) = *FIELDS.get(power)?;
-        let unit = libm::ldexp(1.0, coarser - units.fraction);
+    for (power, &(unit, limit)) in storage.orders.iter().enumerate().skip(2).rev() {
         let leading = *target.get(power)? / chebyshev::of_monomial(power, power);
         let rounded = libm::round(leading / unit);
-        if !(rounded.abs() < libm::ldexp(1.0, width as i32 - 1)) {
+        if !(rounded.abs() < limit) {
             return None;
         }
-        *coefficient = rounded as i32;
+        *coefficients.get_mut(power)? = rounded as i32;
+        *sums.get_mut(power % 2)? += rounded * unit;
         take(&mut left, &mut target, power, rounded * unit);
     }
     // Orders 0 and 1 as the evaluation derives them from the nodes.
-    let unit = libm::ldexp(1.0, -units.fraction);
-    let sum = |parity: usize| {
-        coefficients.iter().zip(&FIELDS).enumerate().skip(2).filter(|(power, _)| power % 2 == parity).fold(
-            0.0,
-            |sum, (_, (&value, &(coarser, _)))| sum + libm::ldexp(f64::from(value), coarser),
-        )
-    };
-    let [start, end] = nodes.map(f64::from);
-    take(&mut left, &mut target, 1, (end - start - sum(1)) * unit);
-    take(&mut left, &mut target, 0, (end + start - sum(0)) * unit);
+    let [start, end] = nodes;
+    let [even, odd] = sums;
+    take(&mut left, &mut target, 1, (end - start) / 2.0 * storage.node_unit - odd);
+    take(&mut left, &mut target, 0, (end + start) / 2.0 * storage.node_unit - even);
     Some((coefficients, left))
 }
 
-/// The series of degree 9 whose derivative is the derivative's series cut at degree 8.
-fn cut_for_slope(series: &[f64; POINTS]) -> [f64; DEGREE + 1] {
+/// The series of a degree whose derivative is the derivative's series cut one order lower.
+fn cut_for_slope(series: &[f64; POINTS], degree: usize) -> [f64; POINTS] {
     let mut slopes = [0.0; POINTS + 1];
     for order in (1..POINTS).rev() {
         let above = slopes.get(order + 1).copied().unwrap_or(0.0);
@@ -347,9 +355,10 @@ fn cut_for_slope(series: &[f64; POINTS]) -> [f64; DEGREE + 1] {
             *slope = above + 2.0 * order as f64 * own;
         }
     }
-    let mut cut = [0.0; DEGREE + 1];
-    for (order, term) in cut.iter_mut().enumerate().skip(1) {
-        let kept = |index: usize| if index < DEGREE { slopes.get(index).copied().unwrap_or(0.0) } else { 0.0 };
+    let mut cut = [0.0; POINTS];
+    for (order, term) in cut.iter_mut().enumerate().take(degree + 1).skip(1) {
+        let kept =
+            |index: usize| if index < degree { slopes.get(index).copied().unwrap_or(0.0) } else { 0.0 };
         *term = (kept(order - 1) - kept(order + 1)) / (2 * order) as f64;
     }
     cut
@@ -393,25 +402,15 @@ fn write(
         let [start, end] = *nodes;
         let [_, _, c2, c3, c4, c5, c6, c7, c8, c9] = fit.coefficients;
         let joined = |high: i32, low: i32, bits: u32| (high as u32) << bits | low as u32 & ((1 << bits) - 1);
-        *record = [
-            start,
-            c2 as u32,
-            c3 as u32,
-            joined(c4, c9, 10),
-            joined(c5, c8, 12),
-            joined(c6, c7, 15),
-            end,
-        ];
+        *record =
+            [start, c2 as u32, c3 as u32, joined(c4, c9, 10), joined(c5, c8, 12), joined(c6, c7, 15), end];
         segment += 1;
         Some(())
     })?;
     if let Some(late) = late {
-        let partial = buffer.get_mut(end..).ok_or(BakeError::BufferTooSmall)?;
-        let directory_copy = |segment: usize, words: &[u32]| {
-            words.get(HEADER_WORDS + segment / 2).map_or(0, |word| word >> (16 * (segment % 2)) & 0xFFFF)
-        };
-        let _ = partial;
-        end = write_partial(buffer, end, count, units, directory_copy, late)?;
+        let (before, partial) = buffer.split_at_mut_checked(end).ok_or(BakeError::BufferTooSmall)?;
+        let directory = before.get(HEADER_WORDS..records).unwrap_or(&[]);
+        end += write_partial(partial, directory, count, units, late)?;
     }
     let header = header(settings, units, count, span, &worst, end > records + count * RECORD_WORDS + 1);
     buffer.get_mut(..HEADER_WORDS).ok_or(BakeError::BufferTooSmall)?.copy_from_slice(&header);
@@ -433,9 +432,8 @@ fn header(
         Direction::Up => 1,
         Direction::TwoWay => 2,
     };
-    let flags = direction
-        | u32::from(settings.tagged_at == TaggedAt::Spacecraft) << 2
-        | u32::from(has_partial) << 3;
+    let flags =
+        direction | u32::from(settings.tagged_at == TaggedAt::Spacecraft) << 2 | u32::from(has_partial) << 3;
     let epoch = settings.start.to_bits() as u64;
     let [latitude, longitude, height] = settings.site;
     [
@@ -455,4 +453,162 @@ fn header(
         units.fraction as u32 | units.cell << 8 | (count as u32) << 16,
         SMOOTHNESS,
     ]
+}
+
+/// Degree of the lateness partial.
+const PARTIAL_DEGREE: usize = 5;
+/// Lateness in seconds at which the partial is taken, both ways.
+const PARTIAL_LATENESS: f64 = 2.0;
+
+/// Writes the lateness partial; returns its length in words.
+fn write_partial(
+    partial: &mut [u32],
+    directory: &[u32],
+    count: usize,
+    units: &Units,
+    late: &mut dyn FnMut(f64, f64) -> f64,
+) -> Result<usize, BakeError> {
+    // What a second of lateness changes after the curve has been slid by it.
+    let mut change = |seconds: f64| {
+        let later = late(seconds + PARTIAL_LATENESS, PARTIAL_LATENESS);
+        let earlier = late(seconds - PARTIAL_LATENESS, -PARTIAL_LATENESS);
+        (later - earlier) / (2.0 * PARTIAL_LATENESS)
+    };
+    let place = |segment: usize| {
+        let entry = directory.get(segment / 2).map_or(0, |word| word >> (16 * (segment % 2)) & 0xFFFF);
+        let half = units.cell_seconds() * libm::ldexp(1.0, (entry & 0xF) as i32) / 2.0;
+        (units.cell_seconds() * f64::from(entry >> (16 - CELL_BITS)), half)
+    };
+    let mut sampled = |segment: usize| {
+        let (start, half) = place(segment);
+        let values =
+            core::array::from_fn(|index| change(start + half * (1.0 + chebyshev::point(index, POINTS))));
+        (
+            chebyshev::interpolate(&values, &Cosines::<POINTS>::new()),
+            [change(start), change(start + 2.0 * half)],
+        )
+    };
+    let (mut largest_node, mut largest_term) = (1e-12_f64, 1e-12_f64);
+    for segment in 0..count {
+        let (series, nodes) = sampled(segment);
+        largest_node = nodes.iter().fold(largest_node, |most, node| most.max(node.abs()));
+        // A coefficient of order 2 to 5 is at most this multiple of what the series holds there.
+        let terms = series.iter().skip(2).fold(0.0, |sum, term| sum + term.abs());
+        largest_term = largest_term.max(terms * 20.0);
+    }
+    let exponent = |size: f64| libm::ilogb(size) + 1;
+    let fraction = (30 - exponent(largest_node)).min(59);
+    let coarser = (fraction + exponent(largest_term) - 15).max(0);
+    let unit = libm::ldexp(1.0, coarser - fraction);
+    let orders = [(unit, 32_767.0); PARTIAL_DEGREE + 1];
+    let storage = Storage { node_unit: libm::ldexp(1.0, -fraction), orders: &orders };
+    let (head, records) = partial.split_first_mut().ok_or(BakeError::BufferTooSmall)?;
+    *head = fraction as u32 | (coarser as u32) << 8;
+    for segment in 0..count {
+        let (series, nodes) = sampled(segment);
+        let nodes = nodes.map(|node| libm::round(node / storage.node_unit));
+        let (coefficients, _) = round(&series, &storage, nodes).ok_or(BakeError::DelayNotUsable)?;
+        let [_, _, c2, c3, c4, c5, ..] = coefficients;
+        let [start, end] = nodes;
+        let record =
+            PartialRecord { node: start as i32, coefficients: [c2, c3, c4, c5].map(|value| value as i16) };
+        let words = records.get_mut(segment * PARTIAL_RECORD_WORDS..).ok_or(BakeError::BufferTooSmall)?;
+        let words = words.get_mut(..=PARTIAL_RECORD_WORDS).ok_or(BakeError::BufferTooSmall)?;
+        let (body, next) = words.split_at_mut(PARTIAL_RECORD_WORDS);
+        body.copy_from_slice(&record.to_words());
+        next.fill(end as i32 as u32);
+    }
+    Ok(2 + count * PARTIAL_RECORD_WORDS)
+}
+
+/// Bakes an arc seen by a geometry, with the lateness partial when asked for.
+///
+/// # Errors
+/// [`BakeError::OutsideArc`] when the span, the light time or the partial's lateness reach past the arc; else
+/// as [`bake`].
+pub fn bake_arc<'a>(
+    buffer: &'a mut [u32],
+    arc: &Arc<'_>,
+    geometry: &Geometry,
+    request: &Request,
+) -> Result<PassTable<'a>, BakeError> {
+    let origin = request.start.seconds_since(geometry.origin());
+    let end = request.end.seconds_since(geometry.origin());
+    if !(origin >= -geometry.half_span() && end <= geometry.half_span()) {
+        return Err(BakeError::OutsideArc);
+    }
+    let [latitude, longitude, height] = geometry.site().geodetic_coordinates();
+    let settings = BakeSettings {
+        start: request.start,
+        end: request.end,
+        slope_tolerance: request.slope_tolerance,
+        delay_tolerance: request.delay_tolerance,
+        direction: geometry.direction(),
+        tagged_at: geometry.tagged_at(),
+        object: arc.object(),
+        element_epoch: arc.element_epoch(),
+        site: [latitude * 1e7, longitude * 1e7, height * 1e3].map(|value| libm::round(value) as i32),
+        arc_digest: arc.digest(),
+    };
+    let delay = |seconds: f64| geometry.delay_and_rapidity(origin + seconds).0;
+    let mut late = |seconds: f64, lateness: f64| {
+        geometry.with_lateness(geometry.lateness() + lateness).delay_and_rapidity(origin + seconds).0
+    };
+    bake(buffer, &settings, delay, if request.lateness_partial { Some(&mut late) } else { None })
+}
+
+/// What [`bake_arc`] is asked for.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Request {
+    /// First instant.
+    pub start: GpsTime,
+    /// Last instant.
+    pub end: GpsTime,
+    /// Largest allowed error of the delay's slope: hertz over carrier.
+    pub slope_tolerance: f64,
+    /// Largest allowed error of the delay in seconds: cycles over carrier.
+    pub delay_tolerance: f64,
+    /// Whether the table shall answer for lateness.
+    pub lateness_partial: bool,
+}
+
+/// What [`audit`] saw.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Audit {
+    /// Largest difference of delay in seconds.
+    pub worst_delay: f64,
+    /// Largest difference of the delay's slope, from differences over two steps.
+    pub worst_slope: f64,
+    /// Instants looked at.
+    pub instants: u32,
+}
+
+/// Checks a table against `delay` (seconds from the table's start) on a grid of `step` seconds, without trusting
+/// the fit: nothing here knows how the table was made.
+///
+/// # Errors
+/// The instant's [`TableError`], which a sound table does not give inside its span.
+pub fn audit(
+    table: &PassTable<'_>,
+    step: f64,
+    mut delay: impl FnMut(f64) -> f64,
+) -> Result<Audit, TableError> {
+    let mut seen = Audit::default();
+    let span = table.end().seconds_since(table.start());
+    let mut before: Option<(f64, f64)> = None;
+    let mut index = 0.0;
+    while index * step <= span {
+        let time = table.start().plus_seconds(index * step);
+        let seconds = time.seconds_since(table.start());
+        let stored = table.at(time)?.delay.to_bits() as f64 / 72_057_594_037_927_936.0;
+        let difference = stored - delay(seconds);
+        seen.worst_delay = seen.worst_delay.max(difference.abs());
+        if let Some((earlier, then)) = before {
+            seen.worst_slope = seen.worst_slope.max(((difference - then) / (seconds - earlier)).abs());
+        }
+        before = Some((seconds, difference));
+        seen.instants += 1;
+        index += 1.0;
+    }
+    Ok(seen)
 }

@@ -258,6 +258,11 @@ impl Geometry {
         Self { lateness, ..*self }
     }
 
+    /// How late the spacecraft is taken to be, in seconds.
+    pub fn lateness(&self) -> f64 {
+        self.lateness
+    }
+
     /// Direction of the signal.
     pub fn direction(&self) -> Direction {
         self.direction

@@ -16,7 +16,7 @@ use crate::rapidity::{Delay, Motion, Rapidity, RapidityRate, narrow};
 /// u0 being at most 1/2; orders 8 to 5 and the change of units sum to below 2^-(Q+4+4) = 256 units, the
 /// 64-bit orders to below 2^-(Q+14) (2) = 8, the Taylor term's slope (8 units of 2^-(Q-2), times 2^-16) to
 /// below 2^-(Q-2-3+16) = 32, and its own truncation to 4.
-pub(super) const NOISE: u32 = 300;
+pub(in crate::pass) const NOISE: u32 = 300;
 /// The Q at which [`NOISE`] is in 2^-56 s.
 pub(super) const REFERENCE_FRACTION: u32 = 40;
 
@@ -50,7 +50,8 @@ impl Layout {
         let fraction = header[13] & 0xFF;
         let cell = header[13] >> 8 & 0xFF;
         let segments = header[13] >> 16;
-        let sane = (24..=46).contains(&fraction) && (20..=48).contains(&cell) && (1..=1024).contains(&segments);
+        let sane =
+            (24..=46).contains(&fraction) && (20..=48).contains(&cell) && (1..=1024).contains(&segments);
         // Down tagged at the ground, up tagged at the spacecraft and two-way read the receiver's time.
         let at_transmitter = matches!(header[0] & 7, 1 | 4);
         sane.then(|| Self {

@@ -32,6 +32,7 @@ use super::packing::checksum;
 use crate::rapidity::Motion;
 use crate::time::GpsTime;
 
+pub(super) use evaluate::NOISE;
 pub(super) use lateness::{PARTIAL_RECORD_WORDS, PartialRecord};
 
 pub(super) const MAGIC: u32 = 0x4B54;
@@ -47,18 +48,8 @@ pub(super) const BASE_FRACTION: u32 = 24;
 pub(super) const SPAN_FRACTION: u32 = 10;
 
 /// For each coefficient: power of two by which its unit is coarser than 2^-Q s, and the field's width in bits.
-pub(super) const FIELDS: [(i32, u32); DEGREE + 1] = [
-    (0, 32),
-    (0, 32),
-    (0, 31),
-    (0, 31),
-    (2, 22),
-    (2, 20),
-    (4, 17),
-    (5, 15),
-    (5, 12),
-    (6, 10),
-];
+pub(super) const FIELDS: [(i32, u32); DEGREE + 1] =
+    [(0, 32), (0, 32), (0, 31), (0, 31), (2, 22), (2, 20), (4, 17), (5, 15), (5, 12), (6, 10)];
 
 /// Why a table was refused, or could not answer.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -270,7 +261,8 @@ impl<'a> PassTable<'a> {
 
     /// Largest change, in 2^-60 s, that fixed-point evaluation can add to the difference of two delays.
     pub fn evaluation_noise(&self) -> u32 {
-        evaluate::NOISE << 4u32.saturating_add(evaluate::REFERENCE_FRACTION).saturating_sub(self.layout.fraction())
+        evaluate::NOISE
+            << 4u32.saturating_add(evaluate::REFERENCE_FRACTION).saturating_sub(self.layout.fraction())
     }
 
     /// Assumed ratio of successive Chebyshev coefficients beyond those that the fit saw, in 2^-16.
