@@ -31,41 +31,45 @@ use super::tables::{FINE_COSINE, FINE_SINE};
 pub const fn cosine_sine_fine(phase: u32) -> Complex<i32> {
     // The signed distance u from the nearest axis, -1 to 1 for an eighth of a cycle, in 2^-31; exact.
     let distance = (phase << 2) as i32;
-    let quadrant = phase.wrapping_add(1 << 29) >> 30;
-    let square = high_product(distance, distance); // u^2 in 2^-30
-    let cosine = near_cosine(square);
-    let sine = near_sine(distance, square);
-    // In the odd quadrants the two change places; then each gets its sign.
-    let exchange = (cosine ^ sine) & 0i32.wrapping_sub((quadrant & 1) as i32);
-    let cosine_sign = (quadrant.wrapping_add(1) << 30) as i32 >> 31;
-    let sine_sign = (quadrant << 30) as i32 >> 31;
+    // v = 1 - 2 u^2 in 2^-30: centred, so that the coefficients fall quickly.
+    let square = (1i32 << 30).wrapping_sub(high_product(distance, distance) << 1);
+    let cosine = minus_cosine(square);
+    let sine = minus_sine(distance, square);
+    // In the quadrants round the second and fourth axis the two change places. Then each gets its sign: the
+    // cosine turns positive round axes 0 and 3, the sine round 0 and 1.
+    let quadrant = phase.wrapping_add(1 << 29);
+    let exchange = (cosine ^ sine) & ((quadrant << 1) as i32 >> 31);
+    let cosine_turns = quadrant.wrapping_add(3 << 30) as i32 >> 31;
+    let sine_turns = quadrant.wrapping_add(2 << 30) as i32 >> 31;
     Complex {
-        re: ((cosine ^ exchange) ^ cosine_sign).wrapping_sub(cosine_sign),
-        im: ((sine ^ exchange) ^ sine_sign).wrapping_sub(sine_sign),
+        re: ((cosine ^ exchange) ^ cosine_turns).wrapping_sub(cosine_turns),
+        im: ((sine ^ exchange) ^ sine_turns).wrapping_sub(sine_turns),
     }
 }
 
-/// cos(u pi/4) in full scales of 2^31 - 2^16. The coefficient of u^2 is -1/4 and a remainder, so that the
-/// remainder fits; those of u^2, u^4, u^6 and u^8 are in 2^-33, 2^-35, 2^-37 and 2^-33 (the last one small).
+// Both are computed as their negatives in v = 1 - 2 u^2: then every coefficient and every partial sum is
+// negative, and a compiler that can tell uses the signed product throughout.
+
+/// -cos(u pi/4) in 2^-31 from v, by Horner's rule; a high half of a product with v costs two bits a step.
 #[inline(always)]
-const fn near_cosine(square: i32) -> i32 {
-    let [c0, c2, c4, c6, c8] = FINE_COSINE;
-    // u^8's share is so small that a product of 16 bits each is enough: 2^-14 times 2^-33, shifted to 2^-37.
-    let sum = c6.wrapping_add((square >> 16).wrapping_mul(c8) >> 10);
-    let sum = c4.wrapping_add(high_product(square, sum));
+const fn minus_cosine(square: i32) -> i32 {
+    let [c0, c1, c2, c3, c4] = FINE_COSINE;
+    // The last share is so small that a product of 16 bits each is enough: 2^-14 times 2^-37, shifted to 2^-37.
+    let sum = c3.wrapping_add((square >> 16).wrapping_mul(c4) >> 14);
     let sum = c2.wrapping_add(high_product(square, sum));
-    c0.wrapping_sub(square >> 1).wrapping_add(high_product(square, sum))
+    let sum = c1.wrapping_add(high_product(square, sum));
+    c0.wrapping_add(high_product(square, sum))
 }
 
-/// sin(u pi/4) in full scales of 2^31 - 2^16. The coefficient of u is 1/2 and a remainder, so that the
-/// remainder fits; those of u, u^3, u^5 and u^7 are in 2^-32, 2^-34, 2^-36 and 2^-38.
+/// -sin(u pi/4) in 2^-31 from u and v: -u/2, and u times the polynomial.
 #[inline(always)]
-const fn near_sine(distance: i32, square: i32) -> i32 {
-    let [s1, s3, s5, s7] = FINE_SINE;
-    let sum = s5.wrapping_add(high_product(square, s7));
-    let sum = s3.wrapping_add(high_product(square, sum));
+const fn minus_sine(distance: i32, square: i32) -> i32 {
+    let [s0, s1, s2, s3] = FINE_SINE;
+    // As above: 2^-14 times 2^-32, shifted to 2^-36.
+    let sum = s2.wrapping_add((square >> 16).wrapping_mul(s3) >> 10);
     let sum = s1.wrapping_add(high_product(square, sum));
-    (distance >> 1).wrapping_add(high_product(distance, sum))
+    let sum = s0.wrapping_add(high_product(square, sum));
+    high_product(distance, sum).wrapping_sub(distance >> 1)
 }
 
 /// The high half of a signed 32-bit product, rounded down: one instruction.

@@ -37,10 +37,10 @@ pub(super) static QUARTER_WAVE: [u32; 256] = [
     0xFFAF3094, 0xFFC1C080, 0xFFD1B06D, 0xFFDF5059, 0xFFEA7045, 0xFFF31031, 0xFFF9301E, 0xFFFCF00A,
 ];
 
-/// Coefficients of the fine cosine: 1, u^2, u^4, u^6, u^8.
+/// Coefficients of the fine cosine, negative, in 1 - 2 u^2: units of 2^-31, -33, -35, -37, -37.
 #[rustfmt::skip]
-pub(super) const FINE_COSINE: [i32; 5] = [2147418112, -501787238, 544733843, -44795279, 30320];
+pub(super) const FINE_COSINE: [i32; 5] = [-1824683700, -1257586022, -132029366, -5478132, -30352];
 
-/// Coefficients of the fine sine: u, u^3, u^5, u^7.
+/// Coefficients of the fine sine over u, negative and 1/2 more, in 1 - 2 u^2: units of 2^-32, -34, -36, -32.
 #[rustfmt::skip]
-pub(super) const FINE_SINE: [i32; 4] = [1225672788, -1387152513, 171097477, -9861569];
+pub(super) const FINE_SINE: [i32; 4] = [-1054932861, -672420202, -41849832, -19261];

@@ -68,44 +68,39 @@ pub fn quick_table() -> Vec<u32> {
         .collect()
 }
 
-/// Coefficients in `t` of the polynomial of degree `N - 2` that comes nearest to `target` over 0..1 when the
-/// error is weighted with `weight`: Remez' exchange on `N` alternating points.
+/// Coefficients of the polynomial of degree `N - 2` that comes nearest to `target` over -1..1 when the error is
+/// weighted with `weight`: Remez' exchange on `N` alternating points.
 fn nearest_polynomial<const N: usize>(target: impl Fn(f64) -> f64, weight: impl Fn(f64) -> f64) -> Vec<f64> {
     const GRID: usize = 20_000;
-    let at = |index: usize| 0.5 - 0.5 * libm::cos(PI * (index as f64 + 0.5) / GRID as f64);
-    let mut points: Vec<f64> =
-        (0..N).map(|k| 0.5 - 0.5 * libm::cos(PI * (k as f64 + 0.5) / N as f64)).collect();
+    let node = |index: usize, count: usize| -libm::cos(PI * (index as f64 + 0.5) / count as f64);
+    let mut points: Vec<f64> = (0..N).map(|k| node(k, N)).collect();
     let mut coefficients = Vec::new();
     for _ in 0..30 {
         // weight * (polynomial - target) = +-level at every point.
-        let mut rows: Vec<Vec<f64>> = Vec::new();
-        for (k, &t) in points.iter().enumerate() {
-            let mut row: Vec<f64> =
-                (0..N - 1).scan(1.0, |power, _| Some(core::mem::replace(power, *power * t))).collect();
-            row.push(if k % 2 == 0 { 1.0 } else { -1.0 } / weight(t));
-            row.push(target(t));
-            rows.push(row);
-        }
-        coefficients = solve(rows);
+        let equation = |(k, &v): (usize, &f64)| {
+            let powers = (0..N - 1).scan(1.0, |power, _| Some(std::mem::replace(power, *power * v)));
+            let level = if k % 2 == 0 { 1.0 } else { -1.0 };
+            powers.chain([level / weight(v), target(v)]).collect()
+        };
+        coefficients = solve(points.iter().enumerate().map(equation).collect());
         coefficients.pop();
-        let error = |t: f64| weight(t) * (polynomial(&coefficients, t) - target(t));
         // The largest error of each run of one sign becomes the next point.
         let mut extremes: Vec<(f64, f64)> = Vec::new();
-        for t in (0..GRID).map(at) {
-            let here = error(t);
+        for v in (0..GRID).map(|index| node(index, GRID)) {
+            let here = weight(v) * (polynomial(&coefficients, v) - target(v));
             match extremes.last_mut() {
                 Some(last) if (last.1 < 0.0) == (here < 0.0) => {
                     if here.abs() > last.1.abs() {
-                        *last = (t, here);
+                        *last = (v, here);
                     }
                 }
-                _ => extremes.push((t, here)),
+                _ => extremes.push((v, here)),
             }
         }
         if extremes.len() != N {
             break;
         }
-        points = extremes.iter().map(|&(t, _)| t).collect();
+        points = extremes.iter().map(|&(v, _)| v).collect();
     }
     coefficients
 }
@@ -140,17 +135,23 @@ fn high_product(a: i64, b: i64) -> i64 {
     (a * b) >> 32
 }
 
-/// The fine cosine within an eighth of a cycle of its crest, as the firmware evaluates it.
-fn fine_cosine(c: &[i64], square: i64) -> i64 {
-    let sum = c[3] + (((square >> 16) * c[4]) >> 10);
-    let sum = c[1] + high_product(square, c[2] + high_product(square, sum));
-    c[0] - (square >> 1) + high_product(square, sum)
+/// 1 - 2 u^2 in 2^-30, from u in 2^-31, as the firmware evaluates it.
+fn centred_square(distance: i64) -> i64 {
+    (1 << 30) - 2 * high_product(distance, distance)
 }
 
-/// The fine sine within an eighth of a cycle of its rising zero, as the firmware evaluates it.
+/// The negative of the fine cosine within an eighth of a cycle of its crest, as the firmware evaluates it.
+fn fine_cosine(c: &[i64], square: i64) -> i64 {
+    let sum = c[3] + (((square >> 16) * c[4]) >> 14);
+    let sum = c[1] + high_product(square, c[2] + high_product(square, sum));
+    c[0] + high_product(square, sum)
+}
+
+/// The negative of the fine sine within an eighth of a cycle of its rising zero, as the firmware evaluates it.
 fn fine_sine(s: &[i64], distance: i64, square: i64) -> i64 {
-    let sum = s[1] + high_product(square, s[2] + high_product(square, s[3]));
-    (distance >> 1) + high_product(distance, s[0] + high_product(square, sum))
+    let sum = s[2] + (((square >> 16) * s[3]) >> 10);
+    let sum = s[0] + high_product(square, s[1] + high_product(square, sum));
+    high_product(distance, sum) - (distance >> 1)
 }
 
 /// Moves one coefficient at a time, by steps that shrink to one, while `cost` falls.
@@ -180,47 +181,41 @@ fn distances() -> impl Iterator<Item = i64> {
     (-(1_i64 << 31)..1 << 31).step_by(1_000_003).chain([(1 << 31) - 4])
 }
 
-/// Coefficients of the fine cosine: 1, u^2 (without its -1/4), u^4, u^6, u^8 in 2^-31, -33, -35, -37, -33.
+/// Coefficients of the negative of the fine cosine in v = 1 - 2 u^2, in 2^-31, -33, -35, -37, -37.
 pub fn fine_cosine_coefficients() -> Vec<i64> {
     let scale = FULL_SCALE / 2_147_483_648.0;
-    let c = nearest_polynomial::<6>(|t| scale * libm::cos(PI / 4.0 * t.sqrt()), |_| 1.0);
-    let units = [31, 33, 35, 37, 33];
-    let rounded = c.iter().zip(units).enumerate();
-    let rounded = rounded.map(|(k, (c, unit))| {
-        let c = if k == 1 { c + 0.25 } else { *c };
-        (c * libm::exp2(f64::from(unit))).round() as i64
-    });
+    let target = |v: f64| -scale * libm::cos(PI / 4.0 * ((1.0 - v) / 2.0).sqrt());
+    let c = nearest_polynomial::<6>(target, |_| 1.0);
+    let rounded = c.iter().zip([31, 33, 35, 37, 37]).map(|(c, bits)| in_units(*c, bits));
     let grid: Vec<(i64, f64)> = distances()
-        .map(|u| (high_product(u, u), FULL_SCALE * libm::cos(PI / 4.0 * u as f64 / 2_147_483_648.0)))
+        .map(|u| (centred_square(u), -FULL_SCALE * libm::cos(PI / 4.0 * u as f64 / 2_147_483_648.0)))
         .collect();
     descend(rounded.collect(), |c| {
         grid.iter().map(|&(square, exact)| (fine_cosine(c, square) as f64 - exact).abs()).fold(0.0, f64::max)
     })
 }
 
-/// Coefficients of the fine sine: u (without its 1/2), u^3, u^5, u^7 in 2^-32, -34, -36, -38.
+/// Coefficients of the negative of the fine sine over u in v = 1 - 2 u^2, one half more in the first, in 2^-32, -34, -36, -32.
 pub fn fine_sine_coefficients() -> Vec<i64> {
     let scale = FULL_SCALE / 2_147_483_648.0;
-    // The target is sin(u pi/4) / u in t = u^2, whose limit at zero is pi/4.
-    let target = |t: f64| {
-        let u = t.sqrt();
-        if u < 1e-9 { scale * PI / 4.0 } else { scale * libm::sin(PI / 4.0 * u) / u }
-    };
-    let s = nearest_polynomial::<5>(target, |t| t.sqrt());
-    let units = [32, 34, 36, 38];
-    let rounded = s.iter().zip(units).enumerate();
-    let rounded = rounded.map(|(k, (s, unit))| {
-        let s = if k == 0 { s - 0.5 } else { *s };
-        (s * libm::exp2(f64::from(unit))).round() as i64
-    });
+    let distance = |v: f64| ((1.0 - v) / 2.0).sqrt();
+    let target = |v: f64| -scale * libm::sin(PI / 4.0 * distance(v)) / distance(v);
+    let mut s = nearest_polynomial::<5>(target, distance);
+    s[0] += 0.5;
+    let rounded = s.iter().zip([32, 34, 36, 32]).map(|(s, bits)| in_units(*s, bits));
     let grid: Vec<(i64, i64, f64)> = distances()
-        .map(|u| (u, high_product(u, u), FULL_SCALE * libm::sin(PI / 4.0 * u as f64 / 2_147_483_648.0)))
+        .map(|u| (u, centred_square(u), -FULL_SCALE * libm::sin(PI / 4.0 * u as f64 / 2_147_483_648.0)))
         .collect();
     descend(rounded.collect(), |s| {
         grid.iter()
             .map(|&(u, square, exact)| (fine_sine(s, u, square) as f64 - exact).abs())
             .fold(0.0, f64::max)
     })
+}
+
+/// Rounded to the nearest multiple of 2^-bits.
+fn in_units(value: f64, bits: i32) -> i64 {
+    (value * libm::exp2(f64::from(bits))).round() as i64
 }
 
 /// The whole text of `src/nco/tables.rs`.
@@ -237,8 +232,16 @@ pub fn text() -> String {
     }
     out.push_str("];\n");
     for (what, name, coefficients) in [
-        ("cosine: 1, u^2, u^4, u^6, u^8", "FINE_COSINE", fine_cosine_coefficients()),
-        ("sine: u, u^3, u^5, u^7", "FINE_SINE", fine_sine_coefficients()),
+        (
+            "cosine, negative, in 1 - 2 u^2: units of 2^-31, -33, -35, -37, -37",
+            "FINE_COSINE",
+            fine_cosine_coefficients(),
+        ),
+        (
+            "sine over u, negative and 1/2 more, in 1 - 2 u^2: units of 2^-32, -34, -36, -32",
+            "FINE_SINE",
+            fine_sine_coefficients(),
+        ),
     ] {
         writeln!(out, "\n/// Coefficients of the fine {what}.").unwrap();
         let list: Vec<String> = coefficients.iter().map(i64::to_string).collect();
