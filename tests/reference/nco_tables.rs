@@ -1,0 +1,257 @@
+//! Makes `src/nco/tables.rs`: the same text each time, from nothing but the formulas below.
+//!
+//! The only transcendental functions used are those of the `libm` crate, which is plain Rust and gives the
+//! same bits on every host, so the text does not depend on the machine that makes it.
+
+use core::f64::consts::{FRAC_PI_2, PI};
+use std::fmt::Write as _;
+
+/// Full scale of every 32-bit output: 32767 * 2^16, so that rounding to 16 bits gives exactly +-32767.
+pub const FULL_SCALE: f64 = 2_147_418_112.0;
+
+/// Segments of the quick routine's quarter wave.
+const SEGMENTS: usize = 256;
+
+/// One segment of the quick routine as the firmware evaluates it: magnitude in 2^-32 for a 20-bit offset.
+fn quick_magnitude(entry: u32, offset: u32) -> u32 {
+    entry + (((entry & 0xFFF) * offset) >> 7)
+}
+
+/// Worst error of `entry` over its segment, in units of full scale.
+///
+/// The error of a straight line against a sine is largest at an end or where the slopes agree; the ends and
+/// the neighbourhood of that point are evaluated exactly as the firmware does.
+fn quick_worst(segment: usize, entry: u32) -> f64 {
+    let angle = |offset: u32| (segment as f64 + (f64::from(offset) + 0.5) / 1_048_576.0) / 256.0 * FRAC_PI_2;
+    let error = |offset: u32| {
+        let value = f64::from(quick_magnitude(entry, offset) >> 1) + 0.5;
+        (value / FULL_SCALE - libm::sin(angle(offset))).abs()
+    };
+    // The slope of the line per radian, in units of full scale; the sine's slope is the cosine.
+    let slope = f64::from(entry & 0xFFF) * 1_048_576.0 / 128.0 / 2.0 / FULL_SCALE / (FRAC_PI_2 / 256.0);
+    let mut worst = error(0).max(error(0xF_FFFF));
+    if slope < 1.0 {
+        let touch = (libm::acos(slope) / FRAC_PI_2 * 256.0 - segment as f64) * 1_048_576.0;
+        if touch > 0.0 && touch < 1_048_575.0 {
+            worst = worst.max(error(touch as u32));
+        }
+    }
+    worst
+}
+
+/// The quick routine's quarter wave: 256 entries, each a 20-bit value above a 12-bit slope.
+///
+/// Value and slope are chosen together: every pair near the best straight line is tried and the one with the
+/// smallest worst error is kept (the first of equals). The slope's bits stay in the word when the value is
+/// read, which saves the firmware a mask; the search takes them into account.
+pub fn quick_table() -> Vec<u32> {
+    let step = FRAC_PI_2 / SEGMENTS as f64;
+    (0..SEGMENTS)
+        .map(|segment| {
+            let (start, end) = (segment as f64 * step, (segment + 1) as f64 * step);
+            let rise = libm::sin(end) - libm::sin(start);
+            // 2 * FULL_SCALE: the table holds magnitudes in 2^-32, the output is half of that.
+            let slope = (rise * 2.0 * FULL_SCALE * 128.0 / 1_048_576.0) as i64;
+            let value = (libm::sin(start) * 2.0 * FULL_SCALE / 4096.0) as i64;
+            let mut best = (f64::INFINITY, 0);
+            for slope in (slope - 4).max(0)..=(slope + 5).min(0xFFF) {
+                for value in (value - 4).max(0)..=(value + 5).min(0xF_FFFF) {
+                    let entry = (value << 12 | slope) as u32;
+                    let worst = quick_worst(segment, entry);
+                    if worst < best.0 {
+                        best = (worst, entry);
+                    }
+                }
+            }
+            best.1
+        })
+        .collect()
+}
+
+/// Coefficients of the polynomial of degree `N - 2` that comes nearest to `target` over -1..1 when the error is
+/// weighted with `weight`: Remez' exchange on `N` alternating points.
+fn nearest_polynomial<const N: usize>(target: impl Fn(f64) -> f64, weight: impl Fn(f64) -> f64) -> Vec<f64> {
+    const GRID: usize = 20_000;
+    let node = |index: usize, count: usize| -libm::cos(PI * (index as f64 + 0.5) / count as f64);
+    let mut points: Vec<f64> = (0..N).map(|k| node(k, N)).collect();
+    let mut coefficients = Vec::new();
+    for _ in 0..30 {
+        // weight * (polynomial - target) = +-level at every point.
+        let equation = |(k, &v): (usize, &f64)| {
+            let powers = (0..N - 1).scan(1.0, |power, _| Some(std::mem::replace(power, *power * v)));
+            let level = if k % 2 == 0 { 1.0 } else { -1.0 };
+            powers.chain([level / weight(v), target(v)]).collect()
+        };
+        coefficients = solve(points.iter().enumerate().map(equation).collect());
+        coefficients.pop();
+        // The largest error of each run of one sign becomes the next point.
+        let mut extremes: Vec<(f64, f64)> = Vec::new();
+        for v in (0..GRID).map(|index| node(index, GRID)) {
+            let here = weight(v) * (polynomial(&coefficients, v) - target(v));
+            match extremes.last_mut() {
+                Some(last) if (last.1 < 0.0) == (here < 0.0) => {
+                    if here.abs() > last.1.abs() {
+                        *last = (v, here);
+                    }
+                }
+                _ => extremes.push((v, here)),
+            }
+        }
+        if extremes.len() != N {
+            break;
+        }
+        points = extremes.iter().map(|&(v, _)| v).collect();
+    }
+    coefficients
+}
+
+fn polynomial(coefficients: &[f64], t: f64) -> f64 {
+    coefficients.iter().rev().fold(0.0, |sum, &c| sum * t + c)
+}
+
+/// Gauss' elimination with pivots; each row holds its right-hand side at the end.
+fn solve(mut rows: Vec<Vec<f64>>) -> Vec<f64> {
+    let n = rows.len();
+    for column in 0..n {
+        let pivot =
+            (column..n).max_by(|&a, &b| rows[a][column].abs().total_cmp(&rows[b][column].abs())).unwrap();
+        rows.swap(column, pivot);
+        for row in column + 1..n {
+            let factor = rows[row][column] / rows[column][column];
+            for k in column..=n {
+                rows[row][k] -= factor * rows[column][k];
+            }
+        }
+    }
+    let mut solution = vec![0.0; n];
+    for row in (0..n).rev() {
+        let known: f64 = (row + 1..n).map(|k| rows[row][k] * solution[k]).sum();
+        solution[row] = (rows[row][n] - known) / rows[row][row];
+    }
+    solution
+}
+
+fn high_product(a: i64, b: i64) -> i64 {
+    (a * b) >> 32
+}
+
+/// 1 - 2 u^2 in 2^-30, from u in 2^-31, as the firmware evaluates it.
+fn centred_square(distance: i64) -> i64 {
+    (1 << 30) - 2 * high_product(distance, distance)
+}
+
+/// The negative of the fine cosine within an eighth of a cycle of its crest, as the firmware evaluates it.
+fn fine_cosine(c: &[i64], square: i64) -> i64 {
+    let sum = c[3] + (((square >> 16) * c[4]) >> 14);
+    let sum = c[1] + high_product(square, c[2] + high_product(square, sum));
+    c[0] + high_product(square, sum)
+}
+
+/// The negative of the fine sine within an eighth of a cycle of its rising zero, as the firmware evaluates it.
+fn fine_sine(s: &[i64], distance: i64, square: i64) -> i64 {
+    let sum = s[2] + (((square >> 16) * s[3]) >> 10);
+    let sum = s[0] + high_product(square, s[1] + high_product(square, sum));
+    high_product(distance, sum) - (distance >> 1)
+}
+
+/// Moves one coefficient at a time, by steps that shrink to one, while `cost` falls.
+fn descend(mut coefficients: Vec<i64>, cost: impl Fn(&[i64]) -> f64) -> Vec<i64> {
+    let mut best = cost(&coefficients);
+    for step in [16, 8, 4, 2, 1, 4, 2, 1] {
+        for index in 0..coefficients.len() {
+            for change in [-step, step] {
+                loop {
+                    coefficients[index] += change;
+                    let now = cost(&coefficients);
+                    if now >= best {
+                        coefficients[index] -= change;
+                        break;
+                    }
+                    best = now;
+                }
+            }
+        }
+    }
+    coefficients
+}
+
+/// Distances from the axis at which the search looks, in 2^-31 of an eighth of a cycle: both ends, and a
+/// prime stride between.
+fn distances() -> impl Iterator<Item = i64> {
+    (-(1_i64 << 31)..1 << 31).step_by(1_000_003).chain([(1 << 31) - 4])
+}
+
+/// Coefficients of the negative of the fine cosine in v = 1 - 2 u^2, in 2^-31, -33, -35, -37, -37.
+pub fn fine_cosine_coefficients() -> Vec<i64> {
+    let scale = FULL_SCALE / 2_147_483_648.0;
+    let target = |v: f64| -scale * libm::cos(PI / 4.0 * ((1.0 - v) / 2.0).sqrt());
+    let c = nearest_polynomial::<6>(target, |_| 1.0);
+    let rounded = c.iter().zip([31, 33, 35, 37, 37]).map(|(c, bits)| in_units(*c, bits));
+    let grid: Vec<(i64, f64)> = distances()
+        .map(|u| (centred_square(u), -FULL_SCALE * libm::cos(PI / 4.0 * u as f64 / 2_147_483_648.0)))
+        .collect();
+    descend(rounded.collect(), |c| {
+        grid.iter().map(|&(square, exact)| (fine_cosine(c, square) as f64 - exact).abs()).fold(0.0, f64::max)
+    })
+}
+
+/// Coefficients of the negative of the fine sine over u in v = 1 - 2 u^2, one half more in the first, in 2^-32, -34, -36, -32.
+pub fn fine_sine_coefficients() -> Vec<i64> {
+    let scale = FULL_SCALE / 2_147_483_648.0;
+    let distance = |v: f64| ((1.0 - v) / 2.0).sqrt();
+    let target = |v: f64| -scale * libm::sin(PI / 4.0 * distance(v)) / distance(v);
+    let mut s = nearest_polynomial::<5>(target, distance);
+    s[0] += 0.5;
+    let rounded = s.iter().zip([32, 34, 36, 32]).map(|(s, bits)| in_units(*s, bits));
+    let grid: Vec<(i64, i64, f64)> = distances()
+        .map(|u| (u, centred_square(u), -FULL_SCALE * libm::sin(PI / 4.0 * u as f64 / 2_147_483_648.0)))
+        .collect();
+    descend(rounded.collect(), |s| {
+        grid.iter()
+            .map(|&(u, square, exact)| (fine_sine(s, u, square) as f64 - exact).abs())
+            .fold(0.0, f64::max)
+    })
+}
+
+/// Rounded to the nearest multiple of 2^-bits.
+fn in_units(value: f64, bits: i32) -> i64 {
+    (value * libm::exp2(f64::from(bits))).round() as i64
+}
+
+/// The whole text of `src/nco/tables.rs`.
+pub fn text() -> String {
+    let mut out = String::from(
+        "//! Made by `tests/reference/nco_tables.rs`; `tests/nco_tables.rs` compares. Do not edit.\n\n\
+         /// Sine of a quarter wave in 256 straight lines: a 20-bit value above a 12-bit slope.\n\
+         #[rustfmt::skip]\n\
+         pub(super) static QUARTER_WAVE: [u32; 256] = [\n",
+    );
+    for row in quick_table().chunks(8) {
+        let row: Vec<String> = row.iter().map(|entry| format!("0x{entry:08X},")).collect();
+        writeln!(out, "    {}", row.join(" ")).unwrap();
+    }
+    out.push_str("];\n");
+    for (what, name, coefficients) in [
+        (
+            "cosine, negative, in 1 - 2 u^2: units of 2^-31, -33, -35, -37, -37",
+            "FINE_COSINE",
+            fine_cosine_coefficients(),
+        ),
+        (
+            "sine over u, negative and 1/2 more, in 1 - 2 u^2: units of 2^-32, -34, -36, -32",
+            "FINE_SINE",
+            fine_sine_coefficients(),
+        ),
+    ] {
+        writeln!(out, "\n/// Coefficients of the fine {what}.").unwrap();
+        let list: Vec<String> = coefficients.iter().map(i64::to_string).collect();
+        writeln!(
+            out,
+            "#[rustfmt::skip]\npub(super) const {name}: [i32; {}] = [{}];",
+            list.len(),
+            list.join(", ")
+        )
+        .unwrap();
+    }
+    out
+}
