@@ -1,0 +1,170 @@
+//! The last estimates, used or waiting, and how many agree with the newest.
+
+use super::dynamics::Covariance;
+use super::estimate::Estimate;
+use super::settings::VelocitySettings;
+use super::units::seconds;
+use crate::rapidity::Rapidity;
+use crate::time::GpsTime;
+use libm::sqrtf;
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
+enum Use {
+    #[default]
+    Empty,
+    Waiting,
+    Used,
+}
+
+/// One of the last estimates.
+#[derive(Clone, Copy, Debug, PartialEq, Default)]
+pub(super) struct Candidate {
+    pub time: GpsTime,
+    pub level: Rapidity,
+    /// From the prediction when it came, m/s.
+    residual: f32,
+    state: Use,
+}
+
+impl Candidate {
+    pub(super) fn new(estimate: Estimate, residual: f32) -> Self {
+        Self { time: estimate.time(), level: estimate.rapidity(), residual, state: Use::Waiting }
+    }
+
+    pub(super) fn estimate(&self) -> Estimate {
+        Estimate::from_rapidity(self.time, self.level)
+    }
+
+    fn agrees(&self, newest: &Self, agreement: &Agreement) -> bool {
+        let t = seconds(newest.time, self.time);
+        let apart = self.apart(newest, agreement.shape) - agreement.rate * t;
+        self.state != Use::Empty && apart.abs() <= agreement.level + agreement.bend * t.abs()
+    }
+
+    /// How far this estimate is above another, m/s.
+    fn apart(&self, other: &Self, shape: Shape) -> f32 {
+        match shape {
+            Shape::Predicted => self.residual - other.residual,
+            Shape::Line => self.estimate().residual(other.level),
+        }
+    }
+}
+
+/// What estimates are compared with.
+#[derive(Clone, Copy)]
+enum Shape {
+    /// The predictions that stood when they came.
+    Predicted,
+    /// A straight line.
+    Line,
+}
+
+/// A line through the newest estimate, and how far from it others may be.
+#[derive(Clone, Copy)]
+pub(super) struct Agreement {
+    shape: Shape,
+    /// Slope of the line, m/s^2.
+    rate: f32,
+    /// m/s.
+    level: f32,
+    /// m/s more per second away from the newest.
+    bend: f32,
+}
+
+impl Agreement {
+    /// Along the prediction: both estimates are noisy, and the predicted rate may be off.
+    pub(super) fn predicted(settings: &VelocitySettings, covariance: &Covariance) -> Self {
+        let bend = sqrtf(settings.gate_squared * covariance.aa);
+        let limit = settings.acceleration_limit;
+        let bend = if bend < limit { bend } else { limit };
+        Self { shape: Shape::Predicted, rate: 0.0, level: level(settings), bend }
+    }
+
+    /// Along a line of any slope up to the acceleration limit, which may turn by a sixteenth of it.
+    fn line(settings: &VelocitySettings, rate: f32) -> Option<Self> {
+        let limit = settings.acceleration_limit;
+        let bend = limit * (1.0 / 16.0);
+        (rate.abs() <= limit).then_some(Self { shape: Shape::Line, rate, level: level(settings), bend })
+    }
+}
+
+/// Difference of two estimates that noise explains.
+fn level(settings: &VelocitySettings) -> f32 {
+    sqrtf(2.0 * settings.gate_squared * settings.variance)
+}
+
+/// The last eight estimates, newest first.
+#[derive(Clone, Copy, Debug, PartialEq, Default)]
+pub(super) struct Candidates([Candidate; 8]);
+
+impl Candidates {
+    pub(super) fn push(&mut self, newest: Candidate) {
+        let [a, b, c, d, e, f, g, _] = self.0;
+        self.0 = [newest, a, b, c, d, e, f, g];
+    }
+
+    fn newest(&self) -> Candidate {
+        let [newest, ..] = self.0;
+        newest
+    }
+
+    /// Whether enough of the last agree with the newest, itself included.
+    pub(super) fn confirms(&self, settings: &VelocitySettings, agreement: &Agreement) -> bool {
+        let newest = self.newest();
+        let last = self.0.iter().take(usize::from(settings.confirm_of));
+        let count = last.fold(0, |count, one| count + u8::from(one.agrees(&newest, agreement)));
+        count >= settings.confirm
+    }
+
+    /// A line through the newest and one of the older half on which enough agree.
+    pub(super) fn line(&self, settings: &VelocitySettings) -> Option<Agreement> {
+        let newest = self.newest();
+        let of = usize::from(settings.confirm_of);
+        let older = self.0.iter().take(of).skip(of / 2).filter(|one| one.state != Use::Empty);
+        older
+            .filter_map(|one| {
+                let t = seconds(newest.time, one.time);
+                Agreement::line(settings, one.apart(&newest, Shape::Line) / t)
+            })
+            .find(|line| self.confirms(settings, line))
+    }
+
+    /// Those of the last that agree with the newest and wait, oldest first.
+    pub(super) fn waiting(&self, of: u8, agreement: Agreement) -> impl Iterator<Item = Candidate> + use<> {
+        let newest = self.newest();
+        let mut last = self.0;
+        last.reverse();
+        let skip = last.len().saturating_sub(usize::from(of));
+        last.into_iter()
+            .skip(skip)
+            .filter(move |one| one.state == Use::Waiting && one.agrees(&newest, &agreement))
+    }
+
+    /// Marks the newest as used: it agrees with the prediction from now on.
+    pub(super) fn settle_newest(&mut self) {
+        let [newest, ..] = &mut self.0;
+        *newest = Candidate { residual: 0.0, state: Use::Used, ..*newest };
+    }
+
+    /// Marks as used those that were, drops the others that waited.
+    pub(super) fn settle(&mut self, of: u8, agreement: Agreement) {
+        let newest = self.newest();
+        let mut age = 0;
+        self.0 = self.0.map(|one| {
+            age += 1;
+            let used = one.state == Use::Used || (age <= of && one.agrees(&newest, &agreement));
+            if used { Candidate { residual: 0.0, state: Use::Used, ..one } } else { Candidate::default() }
+        });
+    }
+
+    /// Forgets what came before `time`.
+    pub(super) fn forget_before(&mut self, time: GpsTime) {
+        self.0 = self.0.map(|one| if one.time < time { Candidate::default() } else { one });
+    }
+
+    /// Time of the oldest that waits, or `otherwise`.
+    pub(super) fn oldest_waiting(&self, otherwise: GpsTime) -> GpsTime {
+        let waiting = self.0.iter().filter(|one| one.state == Use::Waiting);
+        waiting.fold(otherwise, |oldest, one| if one.time < oldest { one.time } else { oldest })
+    }
+}
