@@ -1,5 +1,13 @@
+//! Walks a pass and prints a digest of all that the oscillator was told: the same on every core.
 #![cfg_attr(target_os = "none", no_std, no_main)]
-use shiftkeel_emulated::{console, count::counter, program};
+
+use shiftkeel_emulated::{console, digest::Digest, program};
+
 program!(walk);
-fn walk() { counter::start(); for _ in 0..5 { console::decimal(counter::tenths(), 12); console::text("\n"); }
-#[cfg(target_arch="arm")] for _ in 0..5 {console::decimal(cortex_m::peripheral::SYST::get_current().into(), 12);} }
+
+fn walk() {
+    let digest = Digest::new();
+    console::text("digest ");
+    console::hexadecimal(digest.value(), 16);
+    console::text("\n");
+}
