@@ -1,0 +1,25 @@
+//! The routines in the table of costs: ours, and what a user would otherwise write.
+
+mod general;
+mod sample;
+
+use crate::count::{Cost, Opaque, cost};
+
+/// Takes each routine's name and cost.
+pub type Report = fn(&str, &Cost);
+
+/// Counts every routine.
+pub fn all(report: Report) {
+    general::range_rate(report);
+    general::functions(report);
+    general::cosine_and_sine(report);
+}
+
+fn line<I: Opaque, O: Opaque>(
+    report: Report,
+    name: &str,
+    input: impl Fn(u32) -> I,
+    routine: impl FnMut(I) -> O,
+) {
+    report(name, &cost(input, routine));
+}
