@@ -1,3 +1,15 @@
-//! Host tool.
+//! The host tool of Shiftkeel.
 
-fn main() {}
+use clap::Parser;
+use shiftkeel_desk::commands::Arguments;
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    match Arguments::parse().command.run() {
+        Ok(()) => ExitCode::SUCCESS,
+        Err(error) => {
+            eprintln!("error: {error:#}");
+            ExitCode::FAILURE
+        }
+    }
+}
