@@ -3,30 +3,7 @@
 use num_complex::Complex;
 
 use super::{cosine_sine_fine, cosine_sine_quick_i16};
-use crate::frequency::PhaseStep;
-
-/// How much the phase step of an oscillator changes at every clock: cycles per clock squared, signed, in units
-/// of 2^-64.
-///
-/// One unit is 2^-64 of the clock frequency squared: 5.4e-10 Hz/s at a clock of 100 kHz, 5.4e-4 Hz/s at 100 MHz.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Default)]
-#[cfg_attr(feature = "defmt", derive(defmt::Format))]
-pub struct PhaseRamp(i64);
-
-impl PhaseRamp {
-    /// A constant frequency.
-    pub const ZERO: Self = Self(0);
-
-    /// From bits: cycles per clock squared, times 2^64.
-    pub const fn from_bits(bits: i64) -> Self {
-        Self(bits)
-    }
-
-    /// The bits: cycles per clock squared, times 2^64.
-    pub const fn to_bits(self) -> i64 {
-        self.0
-    }
-}
+use crate::frequency::{PhaseRamp, PhaseStep};
 
 /// A numerically controlled oscillator: phase in 2^-64 cycle, a step per clock, and a ramp of the step.
 ///
@@ -35,8 +12,8 @@ impl PhaseRamp {
 /// `phase + n * first_step + ramp * n (n - 1) / 2` and the step is `first_step + n * ramp`.
 ///
 /// ```
-/// use shiftkeel::frequency::PhaseStep;
-/// use shiftkeel::nco::{Nco, PhaseRamp};
+/// use shiftkeel::frequency::{PhaseRamp, PhaseStep};
+/// use shiftkeel::nco::Nco;
 ///
 /// let mut oscillator = Nco::at_phase(0);
 /// // A quarter of a cycle per clock.

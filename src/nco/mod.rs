@@ -18,6 +18,7 @@ mod fine;
 mod quick;
 mod tables;
 
-pub use accumulator::{Nco, PhaseRamp};
+pub use crate::frequency::PhaseRamp;
+pub use accumulator::Nco;
 pub use fine::cosine_sine_fine;
 pub use quick::{cosine_sine_quick, cosine_sine_quick_i16};

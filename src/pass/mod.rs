@@ -14,4 +14,4 @@ mod table;
 
 pub use arc::{Arc, ArcError, ArcModel, ArcSettings, MAX_ARC_WORDS, Trajectory};
 pub use geometry::{Direction, Geometry, GeometryError, Look, Passage, Site, TaggedAt};
-pub use table::{PassTable, TableError};
+pub use table::{MotionExtremes, PassTable, TableError};

@@ -73,8 +73,8 @@ impl Layout {
 
     /// Finds the segment of a time since the epoch, in 2^-30 s, by a search of fixed depth.
     #[inline]
-    pub(super) fn locate(&self, directory: &[u32], elapsed: i64) -> Place {
-        let aligned = (elapsed as u64) << self.align;
+    pub(super) fn locate(&self, directory: &[u32], elapsed: i64, fraction: u32) -> Place {
+        let aligned = (elapsed as u64) << self.align | (u64::from(fraction) << self.align) >> 32;
         let key = ((aligned >> 48) as u32) | 0xF;
         let entry = |index: u32| {
             let word = directory.get((index / 2) as usize).copied().unwrap_or(u32::MAX);
@@ -142,6 +142,22 @@ impl Layout {
         long = long.wrapping_add(high_part(b.wrapping_add(bend), place.rest));
         let slope = b.wrapping_add(bend).wrapping_add(bend);
         self.scale(long, slope, c, place.length, base)
+    }
+
+    /// Half of a segment's length in seconds.
+    pub(super) fn half_length(&self, length: u32) -> f64 {
+        libm::ldexp(0.5, i32::from(self.cell) + length as i32)
+    }
+
+    /// A unit of the slope's evaluation at the shortest segment, or of its 44-bit result.
+    pub(super) fn slope_resolution(&self, directory: &[u32]) -> f64 {
+        let shortest = directory
+            .iter()
+            .flat_map(|word| [word & 0xFFFF, word >> 16])
+            .filter(|&entry| entry != 0xFFFF)
+            .fold(0xF, |least, entry| least.min(entry & 0xF));
+        let unit = libm::ldexp(1.0, 2 - i32::from(self.fraction));
+        (unit / (2.0 * self.half_length(shortest))).max(libm::ldexp(1.0, -44))
     }
 
     /// A slope per segment, per second.

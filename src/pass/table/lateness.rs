@@ -48,7 +48,7 @@ impl PassTable<'_> {
         }
         let slid = GpsTime::from_bits(time.to_bits().wrapping_sub(i64::from(lateness) << 6));
         let motion = self.at(slid)?;
-        let place = self.layout.locate(self.directory, slid.to_bits().wrapping_sub(self.epoch));
+        let place = self.layout.locate(self.directory, slid.to_bits().wrapping_sub(self.epoch), 0);
         let (value, slope) = self.partial(&place);
         let late = i64::from(lateness);
         // Value in 2^-60, lateness in 2^-24 s, delay in 2^-56 s.

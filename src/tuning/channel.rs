@@ -1,0 +1,310 @@
+//! The RF plan as constants, and the step that a rapidity asks for.
+
+use fixed::types::I16F16;
+
+use super::gain::Gain;
+use super::plan::Folded;
+use super::{Injection, Permission, RfPlan, TuningError};
+use crate::frequency::{ClockRatio, Frequency, PhaseStep, divide_nearest};
+use crate::rapidity::narrow::{first_order_range_rate, offset_of_rapidity};
+use crate::rapidity::{Delay, Rapidity};
+
+/// log2 of the steepest rapidity rate that a ramp follows, per second: 7.6e-6/s, ten times a low orbit's.
+const STEEPEST: i32 = -17;
+
+/// A channel that is steered every so many clocks: receiving (`RADIATES` false) or transmitting (true).
+///
+/// Immutable and `Copy`: one serves several oscillators. When a crystal offset changes, build it again
+/// (set-up cost) and go on with the same [`Sweep`](super::Sweep) or [`Hold`](super::Hold): the phase stays
+/// continuous.
+#[derive(Clone, Copy, Debug)]
+pub struct Channel<const RADIATES: bool> {
+    /// W0 in 2^-64 cycle per clock.
+    nominal: u64,
+    /// Wf for a narrow offset.
+    by_offset: Gain,
+    /// Wf/c for a range rate.
+    by_range_rate: Gain,
+    /// f0 / clocks for a difference of truncated delays.
+    by_delay: Gain,
+    /// Bits of a delay that are dropped before the difference.
+    pub(super) delay_shift: u8,
+    /// -1 for high-side injection, else 0.
+    mirror: i64,
+    pub(super) ramp: RampUnits,
+    /// Lowest and highest step from W0 that may be radiated; unused by a receiver.
+    fence: (i64, i64),
+    /// Nominal clock in hertz, for what a refusal says.
+    clock_hertz: u64,
+}
+
+/// How a change of the step over an interval becomes a ramp per clock.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct RampUnits {
+    pub(super) clocks: u32,
+    /// 2^(32 + drop - unit) / clocks.
+    reciprocal: u32,
+    /// Bits of the change that are dropped.
+    drop: u8,
+    /// log2 of the ramp's unit.
+    unit: u8,
+}
+
+impl RampUnits {
+    fn new(clocks: u32, wanted_bits: i32) -> Self {
+        let drop = (wanted_bits - 30).clamp(0, 40);
+        let log_clocks = clocks.ilog2() as i32;
+        let unit = (drop - log_clocks).max(1);
+        let (reciprocal, _) = divide_nearest(1 << (32 + drop - unit), u64::from(clocks));
+        Self {
+            clocks,
+            reciprocal: u32::try_from(reciprocal).unwrap_or(u32::MAX),
+            drop: drop as u8,
+            unit: unit as u8,
+        }
+    }
+
+    /// The even ramp per clock closest to `change` over an interval, and the change that it really makes;
+    /// `None` when the change is beyond what a ramp follows.
+    #[inline]
+    pub(super) fn ramp(&self, change: i64) -> Option<(i64, i64)> {
+        let dropped = change >> self.drop;
+        let narrow = dropped as i32;
+        if i64::from(narrow) != dropped {
+            return None;
+        }
+        let count = (i64::from(narrow).wrapping_mul(i64::from(self.reciprocal)) >> 32) as i32;
+        let made = i64::from(count).wrapping_mul(i64::from(self.clocks)) << self.unit;
+        Some((i64::from(count) << self.unit, made))
+    }
+}
+
+impl Channel<false> {
+    /// A receiving channel, steered every `clocks` clocks (up to a minute).
+    ///
+    /// # Errors
+    /// See [`TuningError`].
+    pub fn receive(plan: &RfPlan<'_>, clocks: u32) -> Result<Self, TuningError> {
+        Self::new(plan, &plan.fold()?, clocks, 64)
+    }
+}
+
+impl Channel<true> {
+    /// A transmitting channel: the far end hears the carrier. Every step is held against the permission's band.
+    ///
+    /// A licence and the local rules come first; see [`Permission`].
+    ///
+    /// # Errors
+    /// See [`TuningError`]; [`TuningError::OutsideFence`] when the carrier itself is not permitted.
+    pub fn transmit(plan: &RfPlan<'_>, clocks: u32, permission: &Permission) -> Result<Self, TuningError> {
+        let folded = plan.fold()?;
+        let mut channel = Self::new(plan, &folded, clocks, 64)?;
+        channel.fence = channel.fence_of(plan, &folded, permission)?;
+        Ok(channel)
+    }
+
+    /// The band as steps from W0.
+    fn fence_of(
+        &self,
+        plan: &RfPlan<'_>,
+        folded: &Folded,
+        permission: &Permission,
+    ) -> Result<(i64, i64), TuningError> {
+        let half_clock = i128::from(plan.clock.to_bits()) << 55;
+        let edge = |frequency: Frequency| {
+            let away = (i128::from(frequency.to_bits()) << 56) - folded.true_carrier;
+            if away.abs() >= half_clock {
+                return Err(TuningError::FenceNotUsable);
+            }
+            // Within half a clock: below 2^63 of the word.
+            let (whole, fraction) = divide_nearest(away.unsigned_abs(), plan.clock.to_bits());
+            let size = ((whole << 8) as i64).saturating_add((fraction >> 56) as i64);
+            Ok(if away < 0 { -size } else { size })
+        };
+        let band = (edge(permission.lowest())?, edge(permission.highest())?);
+        if band.0 > 0 || band.1 < 0 {
+            let away = if band.0 > 0 {
+                (i128::from(permission.lowest().to_bits()) << 56) - folded.true_carrier
+            } else {
+                folded.true_carrier - (i128::from(permission.highest().to_bits()) << 56)
+            };
+            return Err(TuningError::OutsideFence { hertz: (away >> 80) as u32 + 1 });
+        }
+        Ok(band)
+    }
+}
+
+impl<const RADIATES: bool> Channel<RADIATES> {
+    fn new(plan: &RfPlan<'_>, folded: &Folded, clocks: u32, fraction_bits: i32) -> Result<Self, TuningError> {
+        let clock = plan.clock.to_bits();
+        let (seconds, fraction) = divide_nearest(u128::from(clocks) << 24, clock);
+        if clocks == 0 || seconds >= 60 || (seconds == 0 && fraction == 0) {
+            return Err(TuningError::IntervalNotUsable);
+        }
+        // The interval is below 2^log_interval seconds.
+        let log_interval = 64 - (seconds << 64 | u128::from(fraction)).leading_zeros() as i32;
+        let delay_shift = (log_interval + 13).clamp(0, 30);
+        let (whole, fraction) = divide_nearest(folded.carrier as u128, clock);
+        let by_offset = Gain::new(whole, fraction, fraction_bits - 44 - 56);
+        let log_gain = 128 - whole.leading_zeros() as i32 - 56;
+        let (per_metre, _) = divide_nearest(folded.carrier as u128, 299_792_458);
+        let (whole, fraction) = divide_nearest(per_metre, clock);
+        let by_range_rate = Gain::new(whole, fraction, fraction_bits - 16 - 56);
+        let (whole, fraction) = divide_nearest(folded.true_carrier as u128, u64::from(clocks));
+        let delay_exponent = fraction_bits - Delay::FRACTION_BITS as i32 + delay_shift - 80;
+        Ok(Self {
+            nominal: nominal(folded, clock, fraction_bits)?,
+            by_offset,
+            by_range_rate,
+            by_delay: Gain::new(whole, fraction, delay_exponent),
+            delay_shift: delay_shift as u8,
+            mirror: -i64::from(plan.injection == Injection::HighSide),
+            ramp: RampUnits::new(clocks, fraction_bits + STEEPEST + log_gain + log_interval),
+            fence: (0, 0),
+            clock_hertz: clock >> 24,
+        })
+    }
+
+    /// -1 for a transmitter, else 0.
+    const TRANSMIT: i32 = -(RADIATES as i32);
+
+    /// The step W0 at no shift.
+    pub fn nominal_step(&self) -> PhaseStep {
+        PhaseStep::from_bits(self.nominal)
+    }
+
+    /// The step that a rapidity asks for: W0 + Wf expm1(L), with -L for a transmitter.
+    ///
+    /// # Accuracy
+    /// 0.6 units of 2^-44 of the carrier (0.015 mHz at 437 MHz) and 2^-31 of the shift (`tests/channel.rs`).
+    ///
+    /// # Errors
+    /// [`TuningError::TooFast`] beyond 2^-13 or saturated; [`TuningError::OutsideFence`] for a transmitter.
+    #[inline]
+    pub fn step(&self, rapidity: Rapidity) -> Result<PhaseStep, TuningError> {
+        let narrow = narrowed(rapidity)?;
+        let signed = (narrow ^ Self::TRANSMIT).wrapping_sub(Self::TRANSMIT);
+        let offset = self.by_offset.times_coarse(offset_of_rapidity(signed));
+        self.permitted(self.mirrored(offset))
+    }
+
+    /// The step for a range rate in m/s, positive = receding: the cheapest way from an estimate to the
+    /// oscillator.
+    ///
+    /// # Errors
+    /// [`TuningError::OutsideFence`] for a transmitter; a receiver's step always exists.
+    ///
+    /// # Accuracy
+    /// 2.5 units of 2^-16 m/s (0.055 mHz at 437 MHz), 0.8 below 8 km/s, and 2^-31 of the shift.
+    ///
+    /// # Cost
+    /// About 30 instructions on a Cortex-M4, 80 on a Cortex-M0; see README.md.
+    #[inline]
+    pub fn step_for_range_rate(&self, range_rate: I16F16) -> Result<PhaseStep, TuningError> {
+        let rate = (range_rate.to_bits() ^ Self::TRANSMIT).saturating_sub(Self::TRANSMIT);
+        let offset = self.by_range_rate.times_coarse(first_order_range_rate(rate));
+        self.permitted(self.mirrored(offset.wrapping_neg()))
+    }
+
+    /// A delay without the bits that the channel does not use; differences of these never accumulate.
+    #[inline]
+    pub(super) fn truncated(&self, delay: Delay) -> i32 {
+        (delay.to_bits() >> self.delay_shift) as i32
+    }
+
+    /// What dropping bits of the delay can add to a difference, in seconds.
+    pub(super) fn delay_resolution(&self) -> f64 {
+        libm::ldexp(1.0, i32::from(self.delay_shift) - Delay::FRACTION_BITS as i32)
+    }
+
+    /// What rounding the ramp can add to the step within an interval, in cycles per clock.
+    pub(super) fn ramp_resolution(&self) -> f64 {
+        libm::ldexp(f64::from(self.ramp.clocks), i32::from(self.ramp.unit) - 64)
+            + libm::ldexp(1.0, i32::from(self.ramp.drop) - 64)
+    }
+
+    /// The mean step over an interval between two truncated delays: exact in phase.
+    #[inline]
+    pub(super) fn mean(&self, before: i32, after: i32) -> u64 {
+        // Receive: earlier minus later delay; transmit: the other way round.
+        let difference = (before.wrapping_sub(after) ^ Self::TRANSMIT).wrapping_sub(Self::TRANSMIT);
+        self.mirrored(self.by_delay.times(difference))
+    }
+
+    #[inline]
+    fn mirrored(&self, offset: u64) -> u64 {
+        let offset = (offset as i64 ^ self.mirror).wrapping_sub(self.mirror);
+        self.nominal.wrapping_add(offset as u64)
+    }
+
+    /// The step again when a transmitter may radiate it (a receiver always may).
+    #[inline]
+    pub(super) fn permitted(&self, step: u64) -> Result<PhaseStep, TuningError> {
+        if RADIATES {
+            let (lowest, highest) = self.fence;
+            let away = step.wrapping_sub(self.nominal) as i64;
+            let away = (away ^ self.mirror).wrapping_sub(self.mirror);
+            if away < lowest || away > highest {
+                return Err(self.refusal(away));
+            }
+        }
+        Ok(PhaseStep::from_bits(step))
+    }
+
+    #[cold]
+    fn refusal(&self, away: i64) -> TuningError {
+        let (lowest, highest) = self.fence;
+        let beyond = if away < lowest { lowest.abs_diff(away) } else { away.abs_diff(highest) };
+        let hertz = ((beyond >> 32) * (self.clock_hertz >> 8)) >> 24;
+        TuningError::OutsideFence { hertz: u32::try_from(hertz).unwrap_or(u32::MAX).saturating_add(1) }
+    }
+}
+
+/// To 44 fraction bits, rounded to the nearest.
+#[inline]
+pub(super) fn narrowed(rapidity: Rapidity) -> Result<i32, TuningError> {
+    let rounded = rapidity.to_bits().saturating_add(1 << 15) >> 16;
+    let narrow = rounded as i32;
+    if i64::from(narrow) == rounded { Ok(narrow) } else { Err(TuningError::TooFast) }
+}
+
+/// W0, modulo one cycle for a phase step, range-checked for a ratio.
+fn nominal(folded: &Folded, clock: u64, fraction_bits: i32) -> Result<u64, TuningError> {
+    let (whole, fraction) = divide_nearest(folded.nominal.unsigned_abs(), clock);
+    if fraction_bits == 48 {
+        if folded.nominal < 0 {
+            return Err(TuningError::NegativeOutput);
+        }
+        let ratio = (whole + 128) >> 8;
+        return u64::try_from(ratio).map_err(|_| TuningError::RatioTooHigh);
+    }
+    let size = ((whole << 8) as u64).wrapping_add((fraction >> 56) + (fraction >> 55 & 1));
+    Ok(if folded.nominal < 0 { size.wrapping_neg() } else { size })
+}
+
+/// The same for a synthesiser that multiplies its reference: the word is a [`ClockRatio`].
+#[derive(Clone, Copy, Debug)]
+pub struct RatioChannel(Channel<false>);
+
+impl RatioChannel {
+    /// A receiving channel.
+    ///
+    /// # Errors
+    /// See [`TuningError`]; [`TuningError::NegativeOutput`] and [`TuningError::RatioTooHigh`].
+    pub fn receive(plan: &RfPlan<'_>, clocks: u32) -> Result<Self, TuningError> {
+        Channel::new(plan, &plan.fold()?, clocks, 48).map(Self)
+    }
+
+    /// The ratio that a rapidity asks for.
+    ///
+    /// # Errors
+    /// [`TuningError::TooFast`].
+    pub fn ratio(&self, rapidity: Rapidity) -> Result<ClockRatio, TuningError> {
+        self.0.step(rapidity).map(|step| ClockRatio::from_bits(step.to_bits()))
+    }
+
+    /// The mean ratio over an interval between two delays: exact in phase.
+    pub fn mean_ratio(&self, before: Delay, after: Delay) -> ClockRatio {
+        ClockRatio::from_bits(self.0.mean(self.0.truncated(before), self.0.truncated(after)))
+    }
+}

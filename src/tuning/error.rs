@@ -1,0 +1,52 @@
+//! What a tuning call refuses.
+
+/// Why a channel could not be built, or a tick not be steered.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+#[non_exhaustive]
+pub enum TuningError {
+    /// The oscillator clock is zero.
+    ClockZero,
+    /// The carrier is zero, or above 1.09 THz after translation.
+    CarrierNotUsable,
+    /// A crystal's offset is beyond 2^-10 (976 parts per million).
+    CrystalTooFar,
+    /// An interval of no clocks, or of more than a minute.
+    IntervalNotUsable,
+    /// A synthesiser was asked for a frequency below zero: the conversions exceed the carrier, or the injection
+    /// side is wrong.
+    NegativeOutput,
+    /// A synthesiser was asked for 65536 times its reference or more.
+    RatioTooHigh,
+    /// The permitted band is empty, or wider than half the oscillator clock.
+    FenceNotUsable,
+    /// The emitted frequency lies outside the permitted band, by this many hertz (rounded up).
+    OutsideFence {
+        /// Hertz beyond the nearer edge.
+        hertz: u32,
+    },
+    /// The rapidity is saturated or beyond 2^-13 (36 km/s): the last word stays.
+    TooFast,
+}
+
+impl core::fmt::Display for TuningError {
+    fn fmt(&self, formatter: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
+        formatter.write_str(match self {
+            Self::ClockZero => "oscillator clock of zero: give the clock in hertz",
+            Self::CarrierNotUsable => "carrier of zero or above 1.09 THz: give the RF carrier in hertz, not an offset",
+            Self::CrystalTooFar => "crystal offset beyond 976 ppm: check its unit (parts per billion)",
+            Self::IntervalNotUsable => "an interval must have at least one clock and last under a minute",
+            Self::NegativeOutput => {
+                "the synthesiser would have to make a negative frequency: check the conversions and the injection side"
+            }
+            Self::RatioTooHigh => "output 65536 times the reference or more: check the clock",
+            Self::FenceNotUsable => "permitted band empty or wider than half the oscillator clock: narrow it",
+            Self::OutsideFence { hertz } => {
+                return write!(formatter, "emission {hertz} Hz outside the permitted band: not radiated");
+            }
+            Self::TooFast => "rapidity saturated or beyond 2^-13 (36 km/s): last word kept; check the motion",
+        })
+    }
+}
+
+impl core::error::Error for TuningError {}

@@ -1,0 +1,115 @@
+//! Steering an oscillator that ramps: phase-exact, ends meeting.
+//!
+//! Over an interval of n clocks the step runs linearly from s0, where the last interval ended, to s1. With m
+//! the mean step that the delays ask for, e what earlier intervals left over (per clock) and w the model's own
+//! step at the end,
+//!
+//! `s1 = m + e + (w - s0) / 2`
+//!
+//! is the mean of the end that lands exactly on the model's phase and the model's own end. The first alone
+//! rings for ever, the second alone drifts; together they forget an error after two intervals (the recursion's
+//! matrix is nilpotent), and the phase at an interval's end is off by half of what a straight line cannot
+//! follow of the model inside that one interval.
+
+use super::{Channel, TuningError};
+use crate::frequency::{PhaseRamp, PhaseStep};
+use crate::rapidity::Motion;
+
+/// State of a ramping oscillator's steering.
+///
+/// ```
+/// use shiftkeel::frequency::Frequency;
+/// use shiftkeel::nco::Nco;
+/// use shiftkeel::rapidity::Motion;
+/// use shiftkeel::tuning::{Channel, RfPlan, Sweep};
+/// # fn motion_at(_: u32) -> Motion { Motion::default() }
+/// let carrier = Frequency::from_hertz(437_000_000).unwrap();
+/// let clock = Frequency::from_hertz(48_000).unwrap();
+/// let channel = Channel::receive(&RfPlan::direct(carrier, clock), 480)?; // steered every 10 ms
+/// let mut sweep = Sweep::begin(&channel, &motion_at(0))?;
+/// let mut oscillator = Nco::at_phase(0);
+/// for tick in 1..10 {
+///     let swept = sweep.step(&channel, &motion_at(tick))?;
+///     oscillator.retune(swept.first, swept.ramp);
+///     oscillator.advance(480);
+/// }
+/// assert_eq!(oscillator.phase(), channel.nominal_step().to_bits().wrapping_mul(480 * 9));
+/// # Ok::<(), shiftkeel::tuning::TuningError>(())
+/// ```
+#[derive(Clone, Copy, Debug)]
+pub struct Sweep {
+    /// Step at the end of the last interval.
+    end: u64,
+    /// Mean step that was asked for and not yet given, in 2^-64 cycle per clock.
+    remainder: i64,
+    /// Delay at the end of the last interval, truncated by the channel.
+    delay: i32,
+}
+
+/// What an interval's oscillator is given.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Swept {
+    /// Step at the interval's start: where the last one ended.
+    pub start: PhaseStep,
+    /// Step of the first clock (half a clock's ramp on), for an accumulator that adds, then ramps.
+    pub first: PhaseStep,
+    /// Change of the step at every clock.
+    pub ramp: PhaseRamp,
+    /// Change of the step over the interval, in 2^-64 cycle per clock: for a device that sweeps by step and dwell.
+    pub change: i64,
+}
+
+impl Sweep {
+    /// Starts (or starts again, after a gap or another table) at the motion of the first interval's start.
+    ///
+    /// # Errors
+    /// As [`Channel::step`].
+    pub fn begin<const RADIATES: bool>(
+        channel: &Channel<RADIATES>,
+        motion: &Motion,
+    ) -> Result<Self, TuningError> {
+        let end = channel.step(motion.rapidity)?.to_bits();
+        Ok(Self { end, remainder: 0, delay: channel.truncated(motion.delay) })
+    }
+
+    /// The step at which the last interval ended.
+    pub fn end(&self) -> PhaseStep {
+        PhaseStep::from_bits(self.end)
+    }
+
+    /// What the phase at the last interval's end lacks to the model's, per clock of the interval, in 2^-64 cycle.
+    pub fn remainder(&self) -> i64 {
+        self.remainder
+    }
+
+    /// Steers the coming interval, given the motion at its end.
+    ///
+    /// # Errors
+    /// [`TuningError::TooFast`], [`TuningError::OutsideFence`]: the state is as before; the oscillator shall keep
+    /// [`Self::end`], and a transmitter shall stop radiating. After a gap, [`Self::begin`] again.
+    #[inline]
+    pub fn step<const RADIATES: bool>(
+        &mut self,
+        channel: &Channel<RADIATES>,
+        next: &Motion,
+    ) -> Result<Swept, TuningError> {
+        let own = channel.step(next.rapidity)?.to_bits();
+        let delay = channel.truncated(next.delay);
+        let mean = channel.mean(self.delay, delay);
+        let start = self.end;
+        let wanted = mean.wrapping_add(self.remainder as u64);
+        let half = (own.wrapping_sub(start) as i64) >> 1;
+        let change = wanted.wrapping_add(half as u64).wrapping_sub(start) as i64;
+        let (ramp, made) = channel.ramp.ramp(change).ok_or(TuningError::TooFast)?;
+        channel.permitted(start.wrapping_add(made as u64))?;
+        self.end = start.wrapping_add(made as u64);
+        self.remainder = wanted.wrapping_sub(start).wrapping_sub((made >> 1) as u64) as i64;
+        self.delay = delay;
+        Ok(Swept {
+            start: PhaseStep::from_bits(start),
+            first: PhaseStep::from_bits(start.wrapping_add((ramp >> 1) as u64)),
+            ramp: PhaseRamp::from_bits(ramp),
+            change: made,
+        })
+    }
+}
