@@ -77,6 +77,7 @@ impl Nco {
     ///
     /// # Cost
     /// Three 64-bit products; independent of `clocks`.
+    #[inline]
     pub const fn advance(&mut self, clocks: u64) {
         // n (n - 1) / 2 modulo 2^64: the even one of the two factors is halved before the product wraps.
         let odd = clocks & 1;

@@ -15,3 +15,12 @@ pub const QUICK_I16_ERROR: f64 = 0.60;
 
 /// Worst error of [`cosine_sine_fine`](super::cosine_sine_fine), in full scales, over all phases: below 2^-28.7.
 pub const FINE_ERROR: f64 = 2.2e-9;
+
+/// Amplitude of the mixer's oscillator: the length of its pair, the mean over all phases.
+pub const MIXER_AMPLITUDE: f64 = 23165.6;
+
+/// Farthest that the mixer's pair is from its place, in units of the last place of that amplitude.
+pub const MIXER_PAIR_ERROR: f64 = 2.2;
+
+/// Strongest spur of the mixer's oscillator, in dB relative to it.
+pub const MIXER_SPUR_DBC: f64 = -85.0;

@@ -15,10 +15,12 @@
 mod accumulator;
 pub mod bounds;
 mod fine;
+mod mixer;
 mod quick;
 mod tables;
 
 pub use crate::frequency::PhaseRamp;
 pub use accumulator::Nco;
 pub use fine::cosine_sine_fine;
+pub use mixer::Mixer;
 pub use quick::{cosine_sine_quick, cosine_sine_quick_i16};

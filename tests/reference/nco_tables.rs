@@ -218,19 +218,48 @@ fn in_units(value: f64, bits: i32) -> i64 {
     (value * libm::exp2(f64::from(bits))).round() as i64
 }
 
+/// Amplitude of the mixer's oscillator: sums of two products with 16-bit samples, 2 * 2^15 * sqrt(2) times the
+/// longest pair, must fit 32 bits, so that pair may be 23170.4 long; 5 of these are for rounding and the growth
+/// of a pair that is turned to first order.
+pub const MIXER_AMPLITUDE: f64 = 23165.0;
+
+/// The mixer's circle: for the middle of each of 256 cells the cosine in the lower half, the sine above it.
+///
+/// Both are raised by half a unit, because the firmware rounds down after turning the pair; the sine is
+/// lowered by the cosine's 16 bits below it, which the firmware leaves in place. The angle makes up for the
+/// mean of what the firmware leaves off the rest of the angle, (1/2 * 201/8192 + 1/2) * 2^-16 rad.
+pub fn mixer_table() -> Vec<u32> {
+    (0..256)
+        .map(|cell| {
+            let angle = (f64::from(cell) + 0.5) / 128.0 * PI + (0.5 * 201.0 / 8192.0 + 0.5) / 65536.0;
+            let cosine = (MIXER_AMPLITUDE * libm::cos(angle) + 0.5).round() as i16 as u16;
+            let below = f64::from(cosine) / 65536.0;
+            let sine = (MIXER_AMPLITUDE * libm::sin(angle) + 0.5 - below).round() as i16 as u16;
+            u32::from(sine) << 16 | u32::from(cosine)
+        })
+        .collect()
+}
+
 /// The whole text of `src/nco/tables.rs`.
 pub fn text() -> String {
     let mut out = String::from(
-        "//! Made by `tests/reference/nco_tables.rs`; `tests/nco_tables.rs` compares. Do not edit.\n\n\
-         /// Sine of a quarter wave in 256 straight lines: a 20-bit value above a 12-bit slope.\n\
-         #[rustfmt::skip]\n\
-         pub(super) static QUARTER_WAVE: [u32; 256] = [\n",
+        "//! Made by `tests/reference/nco_tables.rs`; `tests/nco_tables.rs` compares. Do not edit.\n",
     );
-    for row in quick_table().chunks(8) {
-        let row: Vec<String> = row.iter().map(|entry| format!("0x{entry:08X},")).collect();
-        writeln!(out, "    {}", row.join(" ")).unwrap();
+    for (what, name, entries) in [
+        (
+            "Sine of a quarter wave in 256 straight lines: a 20-bit value above a 12-bit slope",
+            "QUARTER_WAVE",
+            quick_table(),
+        ),
+        ("The mixer's circle in 256 cells: a 16-bit sine above a 16-bit cosine", "MIXER_WAVE", mixer_table()),
+    ] {
+        writeln!(out, "\n/// {what}.\n#[rustfmt::skip]\npub(super) static {name}: [u32; 256] = [").unwrap();
+        for row in entries.chunks(8) {
+            let row: Vec<String> = row.iter().map(|entry| format!("0x{entry:08X},")).collect();
+            writeln!(out, "    {}", row.join(" ")).unwrap();
+        }
+        out.push_str("];\n");
     }
-    out.push_str("];\n");
     for (what, name, coefficients) in [
         (
             "cosine, negative, in 1 - 2 u^2: units of 2^-31, -33, -35, -37, -37",
