@@ -26,6 +26,20 @@ pub fn fail(what: &str) -> ! {
     exit(1)
 }
 
+/// The value, or the end of the program with what went wrong.
+pub fn must<T, E: core::error::Error>(result: Result<T, E>, what: &str) -> T {
+    match result {
+        Ok(value) => value,
+        Err(error) => {
+            #[cfg(target_os = "none")]
+            semihosting::println!("{what}: {error}");
+            #[cfg(not(target_os = "none"))]
+            println!("{what}: {error}");
+            exit(1)
+        }
+    }
+}
+
 /// Prints text.
 pub fn text(text: &str) {
     #[cfg(target_os = "none")]

@@ -9,6 +9,8 @@ pub mod console;
 pub mod count;
 #[cfg(feature = "harness")]
 pub mod digest;
+#[cfg(feature = "harness")]
+pub mod pass;
 #[cfg(feature = "costs")]
 pub mod routines;
 #[cfg(feature = "harness")]

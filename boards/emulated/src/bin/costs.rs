@@ -7,12 +7,12 @@ program!(print);
 
 fn print() {
     console::text("instructions (not cycles) a call, net of an empty harness\n");
-    console::text("routine                          mean       max  digest of outputs\n");
+    console::text("routine                                  mean       max  digest of outputs\n");
     routines::all(report);
 }
 
 fn report(name: &str, cost: &Cost) {
-    console::left(name, 28);
+    console::left(name, 36);
     console::tenths(cost.mean_tenths, 10);
     console::decimal(cost.maximum, 10);
     console::text("  ");

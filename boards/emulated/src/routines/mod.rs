@@ -1,6 +1,7 @@
 //! The routines in the table of costs: ours, and what a user would otherwise write.
 
 mod general;
+mod oscillator;
 mod sample;
 
 use crate::count::{Cost, Opaque, cost};
@@ -12,7 +13,9 @@ pub type Report = fn(&str, &Cost);
 pub fn all(report: Report) {
     general::range_rate(report);
     general::functions(report);
+    oscillator::cosine_and_sine(report);
     general::cosine_and_sine(report);
+    oscillator::oscillator(report);
 }
 
 fn line<I: Opaque, O: Opaque>(
