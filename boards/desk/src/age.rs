@@ -5,8 +5,7 @@
 //! is about three days for a low orbit without drag.
 
 use crate::elements::ElementSet;
-use crate::orbit::Orbit;
-use crate::vacuum::GRAVITATIONAL_PARAMETER;
+use crate::orbit::{GRAVITATIONAL_PARAMETER, Orbit};
 use crate::{SPEED_OF_LIGHT, instant};
 use chrono::{DateTime, Utc};
 use std::f64::consts::TAU;

@@ -2,9 +2,11 @@
 //!
 //! Results go to standard output, warnings and progress to standard error.
 
+use anyhow::ensure;
 use clap::{Parser, Subcommand, ValueEnum};
 use std::path::PathBuf;
 
+pub mod contacts;
 pub mod trace;
 
 /// Steers a radio's oscillator along a moving carrier: traces and contacts of a pass, computed on the host.
@@ -21,6 +23,8 @@ pub struct Arguments {
 pub enum Command {
     /// Elevation, range, range rate, rapidity and shift of one object over time
     Trace(trace::TraceArguments),
+    /// Passes of one or many objects over a site in a window of time
+    Contacts(contacts::ContactArguments),
 }
 
 impl Command {
@@ -31,6 +35,7 @@ impl Command {
     pub fn run(&self) -> anyhow::Result<()> {
         match self {
             Self::Trace(arguments) => trace::run(arguments),
+            Self::Contacts(arguments) => contacts::run(arguments),
         }
     }
 }
@@ -55,6 +60,27 @@ pub enum Format {
     Csv,
     /// An array of objects, full precision
     Json,
+}
+
+/// Refuses a carrier that is none.
+///
+/// # Errors
+/// With what to give instead.
+pub fn check_carrier(hertz: f64) -> anyhow::Result<()> {
+    ensure!(
+        hertz > 0.0 && hertz <= 1e12,
+        "--carrier {hertz} is not a carrier; give hertz above 0 and up to 1e12, such as 437e6"
+    );
+    Ok(())
+}
+
+/// Refuses a UT1 - UTC that cannot be.
+///
+/// # Errors
+/// With the limit.
+pub fn check_dut1(seconds: f64) -> anyhow::Result<()> {
+    ensure!(seconds.abs() <= 1.0, "--dut1 {seconds} is beyond 1 s; UT1 is kept within 0.9 s of UTC");
+    Ok(())
 }
 
 /// A warning on standard error.

@@ -83,12 +83,16 @@ impl GeometricModel {
     /// # Errors
     /// When the orbit gives no position.
     pub fn sight(&self, t: f64, direction: Direction) -> Result<Sight, OrbitError> {
-        let State { position, velocity } = self.earth_fixed(t)?;
-        let line = position - self.site.earth_fixed();
-        let range = line.length();
-        let range_rate = line.dot(velocity) / range;
-        let legs = if direction == Direction::TwoWay { -2.0 } else { -1.0 };
-        let rapidity = legs * (range_rate / SPEED_OF_LIGHT).atanh();
-        Ok(Sight { look: self.site.look(line), range, range_rate, rapidity })
+        Ok(sight_of(&self.site, self.earth_fixed(t)?, direction))
     }
+}
+
+/// What a site sees of an Earth-fixed state.
+pub fn sight_of(site: &Site, state: State, direction: Direction) -> Sight {
+    let line = state.position - site.earth_fixed();
+    let range = line.length();
+    let range_rate = line.dot(state.velocity) / range;
+    let legs = if direction == Direction::TwoWay { -2.0 } else { -1.0 };
+    let rapidity = legs * (range_rate / SPEED_OF_LIGHT).atanh();
+    Sight { look: site.look(line), range, range_rate, rapidity }
 }

@@ -12,6 +12,8 @@
 //! | [`frames`] | sidereal rotation, geodetic sites, elevation and azimuth |
 //! | [`geometric`] | instantaneous geometry: range, range rate, rapidity |
 //! | [`vacuum`] | light time, time dilation and potential added |
+//! | [`horizon`] | least elevation and horizon mask |
+//! | [`contacts`] | passes in a window |
 //! | [`commands`] | what the program offers on its command line |
 //!
 //! Times are seconds (`f64`) from a reference epoch in UTC, lengths metres, angles radians, unless a name
@@ -20,9 +22,11 @@
 
 pub mod age;
 pub mod commands;
+pub mod contacts;
 pub mod elements;
 pub mod frames;
 pub mod geometric;
+pub mod horizon;
 pub mod instant;
 pub mod orbit;
 pub mod vacuum;

@@ -4,12 +4,17 @@
 //! propagator give positions that are off by kilometres.
 
 use crate::elements::ElementSet;
+use crate::frames::EARTH_ROTATION;
 use crate::instant;
 use crate::vector::{State, Vector};
 use chrono::{DateTime, Utc};
+use std::f64::consts::TAU;
 
 /// Earth radius of WGS-72, m; a spacecraft below it has decayed.
 pub const EARTH_RADIUS_WGS72: f64 = 6_378_135.0;
+
+/// Gravitational parameter of the Earth, m^3/s^2 (WGS-84, IERS Conventions 2010).
+pub const GRAVITATIONAL_PARAMETER: f64 = 3.986_004_418e14;
 
 /// Half step of the differences in [`Orbit::derivative`], s.
 const DIFFERENCE_STEP: f64 = 0.5;
@@ -83,6 +88,7 @@ pub struct Orbit {
     reference: DateTime<Utc>,
     /// Seconds from the element epoch to the reference epoch.
     offset: f64,
+    fastest: f64,
 }
 
 impl Orbit {
@@ -94,7 +100,7 @@ impl Orbit {
         let constants = sgp4::Constants::from_elements_afspc_compatibility_mode(&set.mean)
             .map_err(|error| OrbitError::Unusable { object: set.label(), reason: error.to_string() })?;
         let offset = instant::seconds_between(set.epoch, reference);
-        Ok(Self { constants, label: set.label(), reference, offset })
+        Ok(Self { constants, label: set.label(), reference, offset, fastest: fastest(&set.mean) })
     }
 
     /// The same orbit with a spacecraft that comes `seconds` later than its elements say.
@@ -111,6 +117,11 @@ impl Orbit {
     /// Name or number of the object.
     pub fn label(&self) -> &str {
         &self.label
+    }
+
+    /// A speed that the object does not exceed in the Earth-fixed frame, m/s.
+    pub const fn fastest(&self) -> f64 {
+        self.fastest
     }
 
     /// Position and SGP4's own velocity in TEME at `t` s from the reference epoch.
@@ -174,4 +185,12 @@ impl Orbit {
             reason,
         }
     }
+}
+
+/// Speed at perigee plus that of the turning frame at apogee, m/s, with 10 % for perturbations and drag.
+fn fastest(mean: &sgp4::Elements) -> f64 {
+    let motion = mean.mean_motion * TAU / 86_400.0;
+    let axis = (GRAVITATIONAL_PARAMETER / (motion * motion)).cbrt();
+    let shape = ((1.0 + mean.eccentricity) / (1.0 - mean.eccentricity)).sqrt();
+    1.1 * (motion * axis * shape + EARTH_ROTATION * axis * (1.0 + mean.eccentricity))
 }

@@ -18,11 +18,9 @@
 use crate::SPEED_OF_LIGHT as C;
 use crate::frames::{EARTH_RADIUS_WGS84, EarthRotation, Site};
 use crate::geometric::{Direction, Sight};
-use crate::orbit::{Orbit, OrbitError};
+use crate::orbit::{GRAVITATIONAL_PARAMETER, Orbit, OrbitError};
 use crate::vector::{State, Vector};
 
-/// Gravitational parameter of the Earth, m^3/s^2 (WGS-84, IERS Conventions 2010).
-pub const GRAVITATIONAL_PARAMETER: f64 = 3.986_004_418e14;
 /// Second zonal harmonic of the Earth's potential (EGM96, from memory).
 pub const SECOND_ZONAL_HARMONIC: f64 = 1.082_626_7e-3;
 /// Rate of geocentric coordinate time against terrestrial time (IAU 2000 resolution B1.9).

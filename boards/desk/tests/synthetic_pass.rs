@@ -6,8 +6,8 @@ use shiftkeel_desk::elements::ElementFile;
 use shiftkeel_desk::frames::{EARTH_RADIUS_WGS84, Site};
 use shiftkeel_desk::geometric::{Direction, GeometricModel};
 use shiftkeel_desk::instant;
-use shiftkeel_desk::orbit::Orbit;
-use shiftkeel_desk::vacuum::{GEOID_RATE, GRAVITATIONAL_PARAMETER, VacuumModel, clock_rate};
+use shiftkeel_desk::orbit::{GRAVITATIONAL_PARAMETER, Orbit};
+use shiftkeel_desk::vacuum::{GEOID_RATE, VacuumModel, clock_rate};
 use shiftkeel_desk::vector::{State, Vector};
 
 const CARRIER: f64 = 437.0e6;

@@ -143,17 +143,8 @@ pub fn rows(arguments: &TraceArguments, set: &ElementSet) -> anyhow::Result<Vec<
     let step = arguments.step;
     ensure!(span >= 0.0, "--from is {:.0} s after --to; exchange them", -span);
     ensure!(step > 0.0 && step.is_finite(), "--step {step} is not a time; give seconds above 0");
-    ensure!(
-        arguments.dut1.abs() <= 1.0,
-        "--dut1 {} is beyond 1 s; UT1 is kept within 0.9 s of UTC",
-        arguments.dut1
-    );
-    if let Some(hertz) = arguments.carrier {
-        ensure!(
-            hertz > 0.0 && hertz <= 1e12,
-            "--carrier {hertz} is not a carrier; give hertz above 0 and up to 1e12, such as 437e6"
-        );
-    }
+    super::check_dut1(arguments.dut1)?;
+    arguments.carrier.map_or(Ok(()), super::check_carrier)?;
     let count = (span / step + 1e-9).floor();
     ensure!(count < MOST_ROWS, "that makes {count:.0} rows, more than {MOST_ROWS:.0}; use a longer --step");
     let orbit = Orbit::new(set, arguments.from)?;
