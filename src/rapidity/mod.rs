@@ -27,16 +27,19 @@
 mod arithmetic;
 mod coefficients;
 mod error;
+mod exponential;
 mod from_ratio;
 mod from_speed;
 mod logarithm;
 mod motion;
 pub mod narrow;
+mod shift;
 mod wide_product;
 
 pub use error::RapidityError;
 pub use from_speed::SPEED_OF_LIGHT;
 pub use motion::{Delay, Motion, RapidityRate};
+pub use shift::{ShiftFactor, ShiftOffset, compose_beta_32};
 
 use fixed::types::I4F60;
 

@@ -1,0 +1,176 @@
+//! Exponential in 64 bits: factor, offset from one and velocity ratio of a rapidity.
+//!
+//! exp(x) = 2^k 2^(j/128) (1 + q) with q = exp(r) - 1, where x = (128 k + j) ln 2 / 128 + r and
+//! |r| < 2^-8.5. The table holds 71 bits of 2^(j/128), and sums carry 8 bits below the word, so that what
+//! is left of a difference from one still has 60 good bits.
+
+use super::coefficients::{EXPONENTIAL_RESTS, EXPONENTIALS, LOGARITHM_RECIPROCALS};
+use super::wide_product::{high_i32, high_i64, high_i64_i32, high_u64};
+
+/// 128 / ln 2 with 18 fraction bits.
+const STEPS: i32 = 48_408_813;
+/// ln 2 / 128 with 70 fraction bits ...
+const STEP_HIGH: i64 = 6_393_154_322_601_327_829;
+/// ... and the next 32.
+const STEP_LOW: i64 = 3_841_055_180;
+
+/// `high` 2^(exponent - 63) + `low` 2^(exponent - 71), where `high` 2^-63 is in [0.997, 1.995).
+struct Power {
+    high: u64,
+    low: u64,
+    exponent: i32,
+}
+
+/// exp(x) of x with 60 or 59 fraction bits.
+///
+/// Error: below 2^-68 of the value (remainder r 2^-70, series 2^-69, product 2^-69, table 2^-71).
+const fn power<const FRACTION_BITS: u32>(x: i64) -> Power {
+    // x >> 32 times 128/ln 2 has FRACTION_BITS - 46 fraction bits in the high word.
+    let steps = high_i32((x >> 32) as i32, STEPS);
+    let steps = steps.wrapping_add(1 << (FRACTION_BITS - 47)) >> (FRACTION_BITS - 46);
+    let whole = (x << (70 - FRACTION_BITS)).wrapping_sub((steps as i64).wrapping_mul(STEP_HIGH));
+    // Both terms wrap; their difference, below 2^-8.5, does not.
+    let remainder = whole.wrapping_sub((steps as i64).wrapping_mul(STEP_LOW) >> 32);
+    let index = (steps & 0x7f) as usize;
+    let table = EXPONENTIALS[index];
+    let series = series(remainder);
+    let offset = remainder.wrapping_add(high_i64(remainder, series) >> 6);
+    // table (exp(r) - 1) with 69 fraction bits, below 2^61.6.
+    let product = high_u64(table, offset as u64).wrapping_sub(table & (offset >> 63) as u64) as i64;
+    let low = (((product & 0x3f) << 2) as u64).wrapping_add(EXPONENTIAL_RESTS[index] as u64);
+    Power {
+        high: table.wrapping_add((product >> 6) as u64).wrapping_add(low >> 8),
+        low: low & 0xff,
+        exponent: steps >> 7,
+    }
+}
+
+/// (exp(r) - 1)/r - 1 with 70 fraction bits, of r with 70 fraction bits, |r| < 2^-8.5; error below 2^-62
+/// for |r| < 2^-9.
+///
+/// r (1/2 + r (1/6 + r (1/24 + r (1/120 + r/720)))); the first left out, r^6/5040, is under 2^-63.
+const fn series(remainder: i64) -> i64 {
+    // The high word has 38 fraction bits, so each step takes 6 bits off the scale.
+    let high = (remainder >> 32) as i32;
+    let tail = 4_473_924_i32.wrapping_add(high_i32(high, 11_651)); // 2^29/120 + r 2^29/720
+    let tail = 1_431_655_766_i32.wrapping_add(high_i32(high, tail)); // 2^35/24 and half a unit for the cut
+    let sixth = 1_537_228_672_809_129_301_i64.wrapping_add(high_i64_i32(remainder, tail) >> 10); // 2^63/6
+    let half = (1_i64 << 62).wrapping_add(high_i64(remainder, sixth) >> 6); // 2^63/2
+    high_i64(remainder, half) << 1
+}
+
+/// A value rounded to 61 significant bits: `mantissa` 2^(exponent - 60), mantissa in [2^60, 2^61).
+pub(crate) struct Rounded {
+    pub mantissa: u64,
+    pub exponent: i32,
+}
+
+/// `value` 2^(exponent - 63), `value` not zero, to the nearest.
+const fn rounded(value: u64, exponent: i32) -> Rounded {
+    let shift = value.leading_zeros();
+    let value = value << shift;
+    let mantissa = (value >> 3).wrapping_add((value >> 2) & 1);
+    let carry = mantissa >> 61;
+    Rounded {
+        mantissa: mantissa >> carry,
+        exponent: exponent.wrapping_sub(shift as i32).wrapping_add(carry as i32),
+    }
+}
+
+/// exp(x) of x with 60 fraction bits.
+///
+/// Error: rounding 0.5 units of the mantissa, at most 0.25 for `low`, which is cut off where the value falls
+/// just below a power of two, else 0.125; 0.502 is the most seen.
+pub(crate) const fn factor(x: i64) -> Rounded {
+    let power = power::<60>(x);
+    rounded(power.high, power.exponent)
+}
+
+/// |exp(x) - 1| of x with 60 fraction bits, x not zero.
+///
+/// Error: at most 1 unit of the mantissa. Below 2^-7: rounding 0.5, the last product 0.25, the series
+/// 0.2. Above: rounding 0.5; `power` 2^-68 and the cut 2^-70, both of at most 1.01, on a value of 2^-7 with
+/// units of 2^-67: 0.5 and 0.13, less for all larger ones.
+pub(crate) const fn offset_magnitude(x: i64) -> Rounded {
+    if x.unsigned_abs() < 1 << 53 {
+        return small_offset_magnitude(x);
+    }
+    let power = power::<60>(x);
+    if power.exponent <= -2 {
+        // 1 - exp(x) in (1/2, 1), with 64 fraction bits; the one is 2^64 and falls off.
+        let shift = power.exponent.unsigned_abs().wrapping_sub(1);
+        return rounded((power.high >> shift).wrapping_neg(), -1);
+    }
+    // exp(x) - 1 in units of 2^(exponent - 63): in the word for exponents -1 (where the one is 2^64 and falls
+    // off) to 11.
+    let one = 1_u64.unbounded_shl(63_u32.wrapping_sub(power.exponent as u32));
+    let difference = power.high.wrapping_sub(one);
+    let (high, low) = if x < 0 {
+        ((!difference).wrapping_add((power.low == 0) as u64), 256_u64.wrapping_sub(power.low) & 0xff)
+    } else {
+        (difference, power.low)
+    };
+    let shift = high.leading_zeros();
+    rounded(high << shift | ((low << shift) >> 8), power.exponent.wrapping_sub(shift as i32))
+}
+
+/// |exp(x) - 1| for |x| < 2^-7: x (1 + p)(1 + q1/2)(1 + q2/2), where q1 = exp(x/4) - 1 = x/4 (1 + p) and
+/// q2 = exp(x/2) - 1 = 2 q1 + q1^2.
+const fn small_offset_magnitude(x: i64) -> Rounded {
+    let quarter = x << 8; // 70 fraction bits, below 2^-9
+    let p = series(quarter);
+    let first = quarter.wrapping_add(high_i64(quarter, p) >> 6);
+    let second = (first << 1).wrapping_add(high_i64(first, first) >> 6);
+    let bend = one_plus_product(one_plus_product(p, first >> 1), second >> 1);
+    let shift = x.unsigned_abs().leading_zeros().wrapping_sub(1);
+    let magnitude = (x.unsigned_abs() << shift) as i64; // in [2^62, 2^63)
+    let value = magnitude.wrapping_add(high_i64(magnitude, bend).wrapping_add(1 << 5) >> 6);
+    rounded(value as u64, 3_i32.wrapping_sub(shift as i32))
+}
+
+/// (1 + a)(1 + b) - 1, all with 70 fraction bits and below 2^-7.
+const fn one_plus_product(a: i64, b: i64) -> i64 {
+    a.wrapping_add(b).wrapping_add(high_i64(a, b) >> 6)
+}
+
+/// tanh(|x|) with 63 fraction bits of x with 60.
+///
+/// tanh = 2/(1 + X) - 1 with X = exp(-2|x|); 1/(1 + X) = r (1 + y), where r is a table's reciprocal,
+/// z = r (1 + X) - 1 is exact to 2^-70 and y = -z + z^2 - z^3 + ...
+///
+/// Error: at most 0.6 units of 2^-63: rounding of the last sum 0.5, y and X below 2^-66.
+pub(crate) const fn tanh_magnitude(x: i64) -> u64 {
+    let magnitude = x.saturating_abs();
+    let power = power::<59>(magnitude.wrapping_neg());
+    // X = high 2^(exponent - 63); its part below 2^-63, 7 bits of it.
+    let shift = power.exponent.unsigned_abs();
+    let below = power.high & (1_u64 << shift).wrapping_sub(1);
+    let fraction = (below << 8 | power.low) >> shift.wrapping_add(1);
+    // 1 + X, which only x = 0 takes to 2.
+    let sum = (1_u64 << 63).saturating_add(power.high >> shift);
+    let reciprocal = LOGARITHM_RECIPROCALS[((sum >> 56) & 0x7f) as usize] as u64;
+    let z = ((sum >> 32).wrapping_mul(reciprocal) << 24)
+        .wrapping_add((sum as u32 as u64).wrapping_mul(reciprocal) >> 8)
+        .wrapping_add(fraction.wrapping_mul(reciprocal) >> 15) as i64;
+    let y = reciprocal_offset(z);
+    // r (1 + y) with 64 fraction bits; r has 15, y has 70.
+    let high = (y >> 32).wrapping_mul(reciprocal as i64) << 11;
+    let low = (y as u32 as i64).wrapping_mul(reciprocal as i64).wrapping_add(1 << 20) >> 21;
+    let bend = high.wrapping_add(low);
+    (reciprocal << 49).wrapping_add(bend as u64).wrapping_sub(1 << 63)
+}
+
+/// 1/(1 + z) - 1 with 70 fraction bits, |z| < 2^-7.99; error below 2^-67.
+///
+/// -z + z^2 (1 - z (1 - z (1 - z (1 - z (1 - z (1 - z))))))
+const fn reciprocal_offset(z: i64) -> i64 {
+    let high = (z >> 32) as i32;
+    let tail = (1_i32 << 18).wrapping_sub(high_i32(high, 1 << 12)); // 1 - z
+    let tail = (1_i32 << 24).wrapping_sub(high_i32(high, tail)); // 1 - z (...)
+    let tail = (1_i32 << 30).wrapping_sub(high_i32(high, tail));
+    let inner = (1_i64 << 62).wrapping_sub(high_i64_i32(z, tail) >> 6);
+    let inner = (1_i64 << 62).wrapping_sub(high_i64(z, inner) >> 6);
+    let inner = (1_i64 << 62).wrapping_sub(high_i64(z, inner) >> 6);
+    let square = high_i64(z, z); // 76 fraction bits
+    (high_i64(square, inner) >> 4).wrapping_sub(z)
+}
