@@ -1,5 +1,6 @@
 //! Factor, offset and velocity ratio of a rapidity against 200 bits; composition of velocities.
 
+#[path = "reference/multiprecision.rs"]
 mod reference;
 
 use fixed::types::I1F31;

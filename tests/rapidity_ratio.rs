@@ -1,5 +1,6 @@
 //! Rapidities from ratios, crystal offsets and potentials against 200 bits, and sums that saturate.
 
+#[path = "reference/multiprecision.rs"]
 mod reference;
 
 use fixed::types::{I4F60, I32F32, I48F16};

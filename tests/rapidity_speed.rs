@@ -1,5 +1,6 @@
 //! Rapidities from speeds against atanh in 200 bits, and the speeds that must be refused.
 
+#[path = "reference/multiprecision.rs"]
 mod reference;
 
 use fixed::types::{I1F31, I1F63, I16F16, I32F32};
