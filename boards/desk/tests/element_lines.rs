@@ -6,6 +6,7 @@
 
 use shiftkeel_desk::elements::ElementFile;
 use shiftkeel_desk::instant::{read, write};
+use shiftkeel_desk::orbit::Orbit;
 
 const TOP: &str = "1 90001U 26001A   26152.50000000  .00000000  00000-0  10000-4 0  9995";
 const LOW: &str = "2 90001  97.6000 255.0000 0010000  90.0000   0.0000 15.05491974    12";
@@ -209,4 +210,51 @@ fn bad_lines_are_refused_with_file_line_reason_and_remedy() {
     assert!(message(&format!("{TOP}\n{TOP}\n{LOW}\n")).contains("without its line 2"));
     assert!(message("").contains("holds no element sets"));
     assert!(message("just words\n").contains("holds no element sets"));
+}
+
+/// A generator of the usual kind (Knuth's constants), so that a failure can be repeated.
+fn random(state: &mut u64) -> usize {
+    *state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+    (*state >> 33) as usize
+}
+
+#[test]
+fn damaged_files_neither_panic_nor_give_positions_that_are_no_numbers() {
+    let characters: Vec<char> = "0123456789 -+.eENaIiOé\u{0}\t\n\r".chars().collect();
+    let (mut state, mut accepted, mut placed) = (1u64, 0, 0);
+    for round in 0..20_000 {
+        let mut lines = [TOP.chars().collect::<Vec<_>>(), LOW.chars().collect()];
+        for _ in 0..=random(&mut state) % 4 {
+            let line = &mut lines[random(&mut state) % 2];
+            let at = random(&mut state) % line.len();
+            let character = characters[random(&mut state) % characters.len()];
+            match random(&mut state) % 8 {
+                0 => line.insert(at, character),
+                1 => drop(line.remove(at)),
+                // Mostly digits, so that many of them pass for elements.
+                2..6 => line[at] = characters[random(&mut state) % 10],
+                _ => line[at] = character,
+            }
+        }
+        let text = |line: &Vec<char>| line.iter().collect::<String>();
+        let [top, low] = lines.each_ref().map(|line| match line.len() {
+            69 if round % 2 == 0 => changed(&text(line), 1, ""),
+            _ => text(line),
+        });
+        let Ok(file) = pair(&top, &low) else { continue };
+        accepted += 1;
+        let set = &file.sets()[0];
+        let Ok(orbit) = Orbit::new(set, set.epoch) else { continue };
+        for days in [0.0, -30.0, 1.0, 400.0] {
+            if let Ok(found) = orbit.state(days * 86_400.0) {
+                assert!(
+                    found.position.length().is_finite() && found.velocity.length().is_finite(),
+                    "{top}\n{low}"
+                );
+                placed += 1;
+            }
+        }
+    }
+    println!("{accepted} of 20000 damaged files read as elements, {placed} positions");
+    assert!(accepted > 1000 && placed > 1000, "{accepted} {placed}");
 }

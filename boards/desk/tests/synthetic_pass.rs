@@ -3,12 +3,12 @@
 
 use shiftkeel_desk::SPEED_OF_LIGHT;
 use shiftkeel_desk::elements::ElementFile;
-use shiftkeel_desk::frames::{EARTH_RADIUS_WGS84, Site};
+use shiftkeel_desk::frames::Site;
 use shiftkeel_desk::geometric::{Direction, GeometricModel};
 use shiftkeel_desk::instant;
-use shiftkeel_desk::orbit::{GRAVITATIONAL_PARAMETER, Orbit};
-use shiftkeel_desk::vacuum::{GEOID_RATE, VacuumModel, clock_rate};
-use shiftkeel_desk::vector::{State, Vector};
+use shiftkeel_desk::orbit::Orbit;
+use shiftkeel_desk::vacuum::VacuumModel;
+use shiftkeel_desk::vector::Vector;
 
 const CARRIER: f64 = 437.0e6;
 const CLOSEST: f64 = 715.415_22;
@@ -134,84 +134,10 @@ fn vacuum_against_geometric() {
 }
 
 #[test]
-fn vacuum_against_an_independent_model() {
-    // data/vacuum_reference.py: another propagator, 40 digits, numerical phase; every 10 s, all directions.
-    let mut reader = csv::Reader::from_reader(include_str!("data/vacuum_reference.csv").as_bytes());
-    let (mut rows, mut worst_delay, mut worst_rapidity) = (0, 0.0f64, 0.0f64);
-    for row in reader.records() {
-        let row = row.expect("a row");
-        let number = |column: usize| row[column].parse::<f64>().expect("a number");
-        let direction = match &row[0] {
-            "down" => Direction::Down,
-            "up" => Direction::Up,
-            _ => Direction::TwoWay,
-        };
-        let (model, t) = (vacuum(direction), number(1));
-        worst_delay = worst_delay.max((model.delay(t).expect("a position") - number(2)).abs());
-        worst_rapidity = worst_rapidity.max((model.rapidity(t).expect("a position") - number(3)).abs());
-        rows += 1;
-    }
-    println!("{rows} rows, worst delay {worst_delay:.2e} s, rapidity {worst_rapidity:.2e}");
-    assert_eq!(rows, 3 * 76);
-    // 1 mHz at 437 MHz is 2.3e-12; 1e-14 s is 3 um.
-    assert!(worst_rapidity < 2e-15, "{worst_rapidity}");
-    assert!(worst_delay < 2e-14, "{worst_delay}");
-}
-
-#[test]
 fn down_and_up_differ() {
     // 0.288 Hz at closest approach at 437 MHz, 5.5 Hz at 8.4 GHz.
     let down = vacuum(Direction::Down).rapidity(CLOSEST).expect("a position");
     let up = vacuum(Direction::Up).rapidity(CLOSEST).expect("a position");
     assert!(((down - up) * CARRIER - 0.288).abs() < 0.0006, "{}", (down - up) * CARRIER);
     assert!(((down - up) * 8.4e9 - 5.5).abs() < 0.06, "{}", (down - up) * 8.4e9);
-}
-
-#[test]
-fn rapidity_is_the_slope_of_the_delay() {
-    for direction in [Direction::Down, Direction::Up, Direction::TwoWay] {
-        let model = vacuum(direction);
-        let delay = |t: f64| model.delay(t).expect("a position");
-        let mut worst = 0.0f64;
-        for step in 0..140 {
-            let (t, h) = (350.0 + 5.2 * f64::from(step), 0.4);
-            let slope = (45.0 * (delay(t + h) - delay(t - h))
-                - 9.0 * (delay(t + 2.0 * h) - delay(t - 2.0 * h))
-                + delay(t + 3.0 * h)
-                - delay(t - 3.0 * h))
-                / (60.0 * h);
-            let expected = match direction {
-                Direction::Up => -slope.ln_1p(),
-                _ => (-slope).ln_1p(),
-            };
-            worst = worst.max((model.rapidity(t).expect("a position") - expected).abs());
-        }
-        println!("{direction:?}: {worst:.2e}");
-        assert!(worst < 1e-12, "{direction:?}: {worst}");
-    }
-}
-
-#[test]
-fn clocks_of_circular_orbits() {
-    // L_G - 3GM/(2 a c^2) without the flattening, by substitution of v^2 = GM/a: 40-digit arithmetic.
-    let clock = |radius: f64| {
-        let speed = (GRAVITATIONAL_PARAMETER / radius).sqrt();
-        // At sin^2(latitude) = 1/3 the flattening drops out.
-        let (across, along) = (radius * (2.0f64 / 3.0).sqrt(), radius / 3.0f64.sqrt());
-        let velocity = Vector::new(0.0, speed, 0.0);
-        clock_rate(State { position: Vector::new(across, 0.0, along), velocity })
-    };
-    // IS-GPS-200E: -4.4647e-10 is the offset that the satellite's clock is given, the negative of its rate.
-    assert!((clock(26_561_750.0) - 4.464_732_995e-10).abs() < 1e-18);
-    for (height, expected) in
-        [(400e3, -2.8454e-10), (550e3, -2.6329e-10), (800e3, -2.2985e-10), (1200e3, -1.8093e-10)]
-    {
-        let found = clock(EARTH_RADIUS_WGS84 + height);
-        assert!((found - expected).abs() < 0.6e-14, "{height}: {found}");
-    }
-    assert!((clock(42_164_170.0) - 5.3915e-10).abs() < 0.1e-13);
-    assert!(clock(9_545_510.0).abs() < 1e-15);
-    assert!(
-        (1.5 * GRAVITATIONAL_PARAMETER / (9_545_510.0 * SPEED_OF_LIGHT.powi(2)) - GEOID_RATE).abs() < 1e-15
-    );
 }

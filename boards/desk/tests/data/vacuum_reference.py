@@ -1,5 +1,5 @@
 #!/usr/bin/env python3
-"""Writes vacuum_reference.csv: delay and rapidity of the synthetic pass, by a model independent of the crate.
+"""Writes vacuum_reference.csv: delay and rapidity of three invented pairs, by a model independent of the crate.
 
 Independent in its propagator (the C++ code behind the Python package sgp4), its precision (mpmath, 40 digits from
 the propagator's positions on), its way (fixed-point light time and numerical phase in place of slopes solved by
@@ -13,16 +13,29 @@ mp.dps = 40
 C = mpf(299792458)
 GM, J2, A = mpf("3.986004418e14"), mpf("1.0826267e-3"), mpf(6378137)
 LG = mpf("6.969290134e-10")
-LINES = (
-    "1 90001U 26001A   26152.50000000  .00000000  00000-0  10000-4 0  9995",
-    "2 90001  97.6000 255.0000 0010000  90.0000   0.0000 15.05491974    12",
-)
-satellite = Satrec.twoline2rv(*LINES, WGS72)
+# Elements (all of epoch 2026-06-01T12:00), site, hours from the element epoch to the reference epoch, first time and
+# step in seconds from the reference epoch, count of times.
+TOP = "1 %sU 26001A   26152.50000000  .00000000  00000-0  10000-4 0  999%d"
+CASES = {
+    "synthetic": (
+        (TOP % (90001, 5), "2 90001  97.6000 255.0000 0010000  90.0000   0.0000 15.05491974    12"),
+        ("45", "7.5", "300"), 0, 340, 10, 75,
+    ),
+    "eccentric": (
+        (TOP % (90002, 6), "2 90002  63.4000 300.0000 7000000 270.0000  10.0000  2.00600000    15"),
+        ("-33.9", "-70.4", "2400"), 36, 0, 1800, 12,
+    ),
+    "retrograde": (
+        (TOP % (90003, 7), "2 90003 120.0000  10.0000 0200000 270.0000   0.0000 15.50000000    11"),
+        ("0", "-78", "0"), 100, -500, 400, 12,
+    ),
+}
 
 
 
 def teme(t):
-    """Position at t s from the epoch (= reference), m; the propagator takes f64 minutes."""
+    """Position at t s from the reference, m; the propagator takes f64 minutes."""
+    t += HOURS * 3600
     error, r, v = satellite.sgp4_tsince(float(t / 60))
     assert error == 0
     rest = t - mpf(float(t / 60)) * 60  # what the f64 minutes lost, put back with the velocity
@@ -30,7 +43,7 @@ def teme(t):
 
 
 def gmst(t):
-    ut1 = mpf(9648 * 86400) + t  # seconds from 2000-01-01T12:00 to 2026-06-01T12:00
+    ut1 = mpf(9648 * 86400) + HOURS * 3600 + t  # from 2000-01-01T12:00 over 2026-06-01T12:00
     T = ut1 / (36525 * 86400)
     s = mpf("24110.54841") - 43200 + (mpf("8640184.812866") + (mpf("0.093104") - mpf("6.2e-6") * T) * T) * T + ut1
     return s * 2 * pi / 86400
@@ -39,7 +52,7 @@ def gmst(t):
 def ground(t):
     f = 1 / mpf("298.257223563")
     e2 = f * (2 - f)
-    lat, lon, h = 45 * pi / 180, mpf("7.5") * pi / 180, mpf(300)
+    lat, lon, h = mpf(SITE[0]) * pi / 180, mpf(SITE[1]) * pi / 180, mpf(SITE[2])
     n = A / sqrt(1 - e2 * sin(lat) ** 2)
     x, z = (n + h) * cos(lat), (n * (1 - e2) + h) * sin(lat)
     return [x * cos(lon + gmst(t)), x * sin(lon + gmst(t)), z]
@@ -60,11 +73,10 @@ def clock_rate(s):
     r, v = teme(s)
     radius = distance(r, [0, 0, 0])
     u = GM / radius * (1 - J2 * (A / radius) ** 2 * (3 * (r[2] / radius) ** 2 - 1) / 2)
-    return LG - (sum(w * w for w in v) / 2 + u) / C**2 - mpf("9.80665") * 300 / C**2
+    return LG - (sum(w * w for w in v) / 2 + u) / C**2 - mpf("9.80665") * mpf(SITE[2]) / C**2
 
 
 GRID = 20
-_y = {0: mpf(0)}
 
 
 def clock_gain(s):
@@ -75,6 +87,9 @@ def clock_gain(s):
     for i in range(k):
         if i + 1 not in _y:
             _y[i + 1] = _y[i] + simpson(mpf(i * GRID), mpf((i + 1) * GRID))
+    for i in range(0, k, -1):
+        if i - 1 not in _y:
+            _y[i - 1] = _y[i] - simpson(mpf((i - 1) * GRID), mpf(i * GRID))
     return _y[k] + simpson(mpf(k * GRID), s)
 
 
@@ -98,9 +113,13 @@ def slope(direction, t):
     return (mpf(4) / 5 * d[0] - d[1] / 5 + mpf(4) / 105 * d[2] - d[3] / 280) / h
 
 
-print("direction,t_s,delay_s,rapidity")
-for direction in ("down", "up", "two-way"):
-    for t in [mpf(340 + 10 * k) for k in range(75)] + [mpf("715.41522")]:
-        x = slope(direction, t)
-        rapidity = -log(1 + x) if direction == "up" else log(1 - x)
-        print(f"{direction},{mp.nstr(t, 10)},{mp.nstr(delay(direction, t), 18)},{mp.nstr(rapidity, 15)}")
+print("case,direction,t_s,delay_s,rapidity")
+for name, (lines, SITE, HOURS, first, step, count) in CASES.items():
+    satellite = Satrec.twoline2rv(*lines, WGS72)
+    _y = {0: mpf(0)}
+    times = [mpf(first + step * k) for k in range(count)] + ([mpf("715.41522")] if name == "synthetic" else [])
+    for direction in ("down", "up", "two-way"):
+        for t in times:
+            x = slope(direction, t)
+            rapidity = -log(1 + x) if direction == "up" else log(1 - x)
+            print(f"{name},{direction},{mp.nstr(t, 10)},{mp.nstr(delay(direction, t), 18)},{mp.nstr(rapidity, 15)}")
