@@ -298,3 +298,23 @@ fn a_day_of_a_hundred_objects_within_ten_seconds() {
     assert!(passes > 200, "{passes}");
     assert!(took < 10.0, "{took} s");
 }
+
+#[test]
+fn examples_of_the_readme() {
+    let readme = include_str!("../README.md");
+    let mut examples = 0;
+    for block in readme.split("```console\n").skip(1) {
+        let block = block.split("```").next().expect("an end");
+        let (command, expected) = block.split_once('\n').expect("a command and its output");
+        let arguments: Vec<&str> =
+            command.strip_prefix("$ shiftkeel ").expect("a command").split_whitespace().collect();
+        let output = Command::new(env!("CARGO_BIN_EXE_shiftkeel"))
+            .args(arguments)
+            .current_dir(concat!(env!("CARGO_MANIFEST_DIR"), "/../.."))
+            .output()
+            .expect("the program starts");
+        assert_eq!(succeeds(&output), expected, "{command}");
+        examples += 1;
+    }
+    assert_eq!(examples, 2);
+}
