@@ -2,13 +2,13 @@
 //!
 //! The search walks in steps of 8 s where the spacecraft could be in view, so that no pass longer than that is
 //! missed, whatever the orbit and the mask; shorter ones are found where the elevation turns between two steps.
-//! Where it is below the site's horizontal plane the step is the time that
-//! its greatest possible speed needs to climb up to the plane, which saves nearly all of the work. Rise and set are
-//! then found as roots to a microsecond.
+//! Far from the horizon the step is the time that the spacecraft's greatest possible speed needs to reach it, which
+//! saves nearly all of the work. Rise and set are then found as roots to a microsecond.
 
 use crate::geometric::{Direction, GeometricModel, Sight};
 use crate::horizon::Horizon;
 use crate::orbit::OrbitError;
+use std::f64::consts::FRAC_PI_2;
 
 /// Longest step where the spacecraft could be in view, s.
 const STEP: f64 = 8.0;
@@ -94,11 +94,11 @@ impl Search<'_> {
         let mut looks: Vec<Look> = Vec::new();
         let mut t = from;
         loop {
-            let ahead = self.clearance(t).and_then(|clearance| Ok((clearance, self.stride(t)?)));
-            let (clearance, stride) = match ahead {
-                Ok(ahead) => ahead,
+            let sight = match self.sight(t) {
+                Ok(sight) => sight,
                 Err(error) => return (looks, Some(error)),
             };
+            let clearance = self.above_horizon(&sight);
             looks.push(Look { t, clearance });
             if let [.., before, middle, after] = looks.as_slice() {
                 match self.turn(*before, *middle, *after) {
@@ -110,7 +110,7 @@ impl Search<'_> {
             if t >= to {
                 return (looks, None);
             }
-            t = (t + stride).min(to);
+            t = (t + self.stride(&sight)).min(to);
         }
     }
 
@@ -157,18 +157,22 @@ impl Search<'_> {
 
     /// Elevation above the horizon, rad; in view while positive.
     fn clearance(&self, t: f64) -> Result<f64, OrbitError> {
-        let look = self.sight(t)?.look;
-        Ok(look.elevation - self.horizon.elevation(look.azimuth))
+        Ok(self.above_horizon(&self.sight(t)?))
+    }
+
+    fn above_horizon(&self, Sight { look, .. }: &Sight) -> f64 {
+        look.elevation - self.horizon.elevation(look.azimuth)
     }
 
     /// How far the next look may be away.
-    fn stride(&self, t: f64) -> Result<f64, OrbitError> {
-        if self.horizon.lowest() < 0.0 {
-            return Ok(STEP);
-        }
-        let sight = self.sight(t)?;
-        let depth = -sight.range * sight.look.elevation.sin();
-        Ok(STEP.max(depth / self.model.orbit().fastest()))
+    ///
+    /// Seen from the site, an elevation is a cone; the spacecraft cannot cross it before it has covered its
+    /// distance from it. Between the lowest and the highest elevation of a mask nothing is saved.
+    fn stride(&self, sight: &Sight) -> f64 {
+        let below = self.horizon.lowest() - sight.look.elevation;
+        let above = sight.look.elevation - self.horizon.highest();
+        let angle = below.max(above).clamp(0.0, FRAC_PI_2);
+        STEP.max(sight.range * angle.sin() / self.model.orbit().fastest())
     }
 
     /// Where the clearance changes its sign, between a time out of view and one in view.
@@ -182,16 +186,17 @@ impl Search<'_> {
 
     /// The figures of a pass between two instants.
     fn contact(&self, (start, rises): (f64, bool), (end, sets): (f64, bool)) -> Result<Contact, OrbitError> {
-        let count = ((end - start) / STEP).ceil().max(16.0);
+        let step = STEP.max(self.model.orbit().period() / 720.0);
+        let count = ((end - start) / step).ceil().max(16.0);
         let times: Vec<f64> =
             (0..=count as usize).map(|at| start + (end - start) * at as f64 / count).collect();
         let elevation = |t: f64| Ok(self.sight(t)?.look.elevation);
         let nearness = |t: f64| Ok(-self.sight(t)?.range);
         let offset = |t: f64| Ok(self.sight(t)?.rapidity.exp_m1());
-        // Within the pass: beyond its end there may be no orbit any more.
+        // A decaying orbit may end with the pass; then the last instant stands for what would follow.
         let rate = |t: f64| {
-            let (left, right) = ((t - 0.5).max(start), (t + 0.5).min(end));
-            Ok((offset(right)? - offset(left)?) / (right - left).max(ROOT))
+            let right = if self.sight(t + 0.5).is_ok() { t + 0.5 } else { t };
+            Ok((offset(right)? - offset(t - 0.5)?) / (right - (t - 0.5)))
         };
         let size = |t: f64| Ok(offset(t)?.abs());
         let steepness = |t: f64| Ok(rate(t)?.abs());

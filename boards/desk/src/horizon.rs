@@ -133,6 +133,11 @@ impl Horizon {
         let of_mask = self.mask.iter().map(|point| point.1).fold(f64::INFINITY, f64::min);
         if self.mask.is_empty() { self.least } else { of_mask.max(self.least) }
     }
+
+    /// The highest elevation anywhere, rad.
+    pub fn highest(&self) -> f64 {
+        self.mask.iter().map(|point| point.1).fold(self.least, f64::max)
+    }
 }
 
 /// Azimuth in [0, 2 pi) and elevation, rad.

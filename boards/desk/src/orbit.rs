@@ -102,6 +102,7 @@ pub struct Orbit {
     /// Seconds from the element epoch to the reference epoch.
     offset: f64,
     fastest: f64,
+    period: f64,
 }
 
 impl Orbit {
@@ -113,7 +114,14 @@ impl Orbit {
         let constants = sgp4::Constants::from_elements_afspc_compatibility_mode(&set.mean)
             .map_err(|error| OrbitError::Unusable { object: set.label(), reason: error.to_string() })?;
         let offset = instant::seconds_between(set.epoch, reference);
-        Ok(Self { constants, label: set.label(), reference, offset, fastest: fastest(&set.mean) })
+        Ok(Self {
+            constants,
+            label: set.label(),
+            reference,
+            offset,
+            fastest: fastest(&set.mean),
+            period: 86_400.0 / set.mean.mean_motion,
+        })
     }
 
     /// The same orbit with a spacecraft that comes `seconds` later than its elements say.
@@ -135,6 +143,11 @@ impl Orbit {
     /// A speed that the object does not exceed in the Earth-fixed frame, m/s.
     pub const fn fastest(&self) -> f64 {
         self.fastest
+    }
+
+    /// Period of revolution at the element epoch, s.
+    pub const fn period(&self) -> f64 {
+        self.period
     }
 
     /// Position and SGP4's own velocity in TEME at `t` s from the reference epoch.

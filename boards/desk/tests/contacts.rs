@@ -210,3 +210,25 @@ fn masks() {
     assert!(refused("# nothing\n").contains("holds no points"));
     assert!(Horizon::flat(91.0).is_err() && Horizon::flat(f64::NAN).is_err());
 }
+
+#[test]
+fn what_was_in_view_before_a_decay_is_reported() {
+    // From the SGP4 verification set: below the surface between 50 and 55 minutes after its epoch; the site lies
+    // under its last minutes.
+    let top = "1 28872U 05037B   05333.02012661  .25992681  00000-0  24476-3 0  1534";
+    let low = "2 28872  96.4736 157.9986 0303955 244.0492 110.6523 16.46015938 10708";
+    let file = ElementFile::read("decaying", &format!("{top}\n{low}\n")).expect("valid elements");
+    let set = &file.sets()[0];
+    let orbit = Orbit::new(set, set.epoch).expect("usable elements");
+    let over = |site| GeometricModel::new(orbit.clone(), site, 0.0);
+    let anywhere = over(Site::from_degrees(0.0, 0.0, 0.0).expect("a site"));
+    let end = (3000..3300).find(|&t| orbit.state(f64::from(t)).is_err()).expect("an end");
+    let last = anywhere.earth_fixed(f64::from(end - 1)).expect("a position").position;
+    let latitude = (last.z / last.length()).asin().to_degrees();
+    let site = Site::from_degrees(latitude, last.y.atan2(last.x).to_degrees(), 0.0).expect("a site");
+    let found = find(&over(site), &Horizon::flat(0.0).expect("a horizon"), Direction::Down, (0.0, 7200.0));
+    let Some(pass) = found.contacts.last() else { panic!("{found:?}") };
+    assert!(pass.rises && !pass.sets && (f64::from(end) - pass.end).abs() < 10.0, "{pass:?}");
+    assert!(pass.highest_elevation > 0.2 && pass.steepest_rate < 0.0, "{pass:?}");
+    assert!(found.ended.is_some_and(|error| error.to_string().contains("decayed")));
+}
