@@ -5,7 +5,7 @@
 //! is left of a difference from one still has 60 good bits.
 
 use super::coefficients::{EXPONENTIAL_RESTS, EXPONENTIALS, LOGARITHM_RECIPROCALS};
-use super::wide_product::{high_i32, high_i64, high_i64_i32, high_u64};
+use super::wide_product::{about_high_i64, high_i32, high_i64_i32, high_u64};
 
 /// 128 / ln 2 with 18 fraction bits.
 const STEPS: i32 = 48_408_813;
@@ -34,7 +34,7 @@ const fn power<const FRACTION_BITS: u32>(x: i64) -> Power {
     let index = (steps & 0x7f) as usize;
     let table = EXPONENTIALS[index];
     let series = series(remainder);
-    let offset = remainder.wrapping_add(high_i64(remainder, series) >> 6);
+    let offset = remainder.wrapping_add(about_high_i64(remainder, series) >> 6);
     // table (exp(r) - 1) with 69 fraction bits, below 2^61.6.
     let product = high_u64(table, offset as u64).wrapping_sub(table & (offset >> 63) as u64) as i64;
     let low = (((product & 0x3f) << 2) as u64).wrapping_add(EXPONENTIAL_RESTS[index] as u64);
@@ -55,8 +55,8 @@ const fn series(remainder: i64) -> i64 {
     let tail = 4_473_924_i32.wrapping_add(high_i32(high, 11_651)); // 2^29/120 + r 2^29/720
     let tail = 1_431_655_766_i32.wrapping_add(high_i32(high, tail)); // 2^35/24 and half a unit for the cut
     let sixth = 1_537_228_672_809_129_301_i64.wrapping_add(high_i64_i32(remainder, tail) >> 10); // 2^63/6
-    let half = (1_i64 << 62).wrapping_add(high_i64(remainder, sixth) >> 6); // 2^63/2
-    high_i64(remainder, half) << 1
+    let half = (1_i64 << 62).wrapping_add(about_high_i64(remainder, sixth) >> 6); // 2^63/2
+    about_high_i64(remainder, half) << 1
 }
 
 /// A value rounded to 61 significant bits: `mantissa` 2^(exponent - 60), mantissa in [2^60, 2^61).
@@ -83,7 +83,15 @@ const fn rounded(value: u64, exponent: i32) -> Rounded {
 /// just below a power of two, else 0.125; 0.502 is the most seen.
 pub(crate) const fn factor(x: i64) -> Rounded {
     let power = power::<60>(x);
-    rounded(power.high, power.exponent)
+    let shift = (power.high >> 63) ^ 1;
+    let value = power.high << shift;
+    // 1.995 2^60 at most where the shift is 0, else just below 2^61, which rounding may reach.
+    let mantissa = (value >> 3).wrapping_add((value >> 2) & 1);
+    let carry = mantissa >> 61;
+    Rounded {
+        mantissa: mantissa >> carry,
+        exponent: power.exponent.wrapping_sub(shift as i32).wrapping_add(carry as i32),
+    }
 }
 
 /// |exp(x) - 1| of x with 60 fraction bits, x not zero.
@@ -119,18 +127,18 @@ pub(crate) const fn offset_magnitude(x: i64) -> Rounded {
 const fn small_offset_magnitude(x: i64) -> Rounded {
     let quarter = x << 8; // 70 fraction bits, below 2^-9
     let p = series(quarter);
-    let first = quarter.wrapping_add(high_i64(quarter, p) >> 6);
-    let second = (first << 1).wrapping_add(high_i64(first, first) >> 6);
+    let first = quarter.wrapping_add(about_high_i64(quarter, p) >> 6);
+    let second = (first << 1).wrapping_add(about_high_i64(first, first) >> 6);
     let bend = one_plus_product(one_plus_product(p, first >> 1), second >> 1);
     let shift = x.unsigned_abs().leading_zeros().wrapping_sub(1);
     let magnitude = (x.unsigned_abs() << shift) as i64; // in [2^62, 2^63)
-    let value = magnitude.wrapping_add(high_i64(magnitude, bend).wrapping_add(1 << 5) >> 6);
+    let value = magnitude.wrapping_add(about_high_i64(magnitude, bend).wrapping_add(1 << 5) >> 6);
     rounded(value as u64, 3_i32.wrapping_sub(shift as i32))
 }
 
 /// (1 + a)(1 + b) - 1, all with 70 fraction bits and below 2^-7.
 const fn one_plus_product(a: i64, b: i64) -> i64 {
-    a.wrapping_add(b).wrapping_add(high_i64(a, b) >> 6)
+    a.wrapping_add(b).wrapping_add(about_high_i64(a, b) >> 6)
 }
 
 /// tanh(|x|) with 63 fraction bits of x with 60.
@@ -169,8 +177,8 @@ const fn reciprocal_offset(z: i64) -> i64 {
     let tail = (1_i32 << 24).wrapping_sub(high_i32(high, tail)); // 1 - z (...)
     let tail = (1_i32 << 30).wrapping_sub(high_i32(high, tail));
     let inner = (1_i64 << 62).wrapping_sub(high_i64_i32(z, tail) >> 6);
-    let inner = (1_i64 << 62).wrapping_sub(high_i64(z, inner) >> 6);
-    let inner = (1_i64 << 62).wrapping_sub(high_i64(z, inner) >> 6);
-    let square = high_i64(z, z); // 76 fraction bits
-    (high_i64(square, inner) >> 4).wrapping_sub(z)
+    let inner = (1_i64 << 62).wrapping_sub(about_high_i64(z, inner) >> 6);
+    let inner = (1_i64 << 62).wrapping_sub(about_high_i64(z, inner) >> 6);
+    let square = about_high_i64(z, z); // 76 fraction bits
+    (about_high_i64(square, inner) >> 4).wrapping_sub(z)
 }

@@ -1,7 +1,7 @@
 //! Rapidities from frequency ratios: turnaround ratios, measured frequencies, crystals, gravity.
 
 use super::logarithm::logarithm;
-use super::wide_product::high_i64;
+use super::wide_product::about_high_i64;
 use super::{Rapidity, RapidityError};
 use crate::frequency::Frequency;
 use fixed::types::{I32F32, I48F16};
@@ -115,6 +115,6 @@ impl Rapidity {
     /// assert_eq!(gravity.to_bits(), 12_580);
     /// ```
     pub const fn from_potential(difference: I48F16) -> Self {
-        Self::from_bits(high_i64(difference.to_bits(), POTENTIAL_SCALE).wrapping_add(1 << 10) >> 11)
+        Self::from_bits(about_high_i64(difference.to_bits(), POTENTIAL_SCALE).wrapping_add(1 << 10) >> 11)
     }
 }

@@ -1,7 +1,7 @@
 //! Rapidities from speeds: range rate, velocity ratio, transverse motion.
 
 use super::logarithm::{Logarithm, logarithm};
-use super::wide_product::{high_i32, high_i64};
+use super::wide_product::{about_high_i64, high_i32};
 use super::{Rapidity, RapidityError};
 use fixed::types::{I1F31, I1F63, I16F16, I32F32};
 
@@ -71,12 +71,12 @@ impl Rapidity {
     pub const fn from_range_rate_mm_per_s(range_rate: i32) -> Self {
         // beta with 70 fraction bits, below 2^-7.1.
         let beta = scaled(range_rate, MM_PER_S_SCALE);
-        let square = high_i64(beta, beta); // 76 fraction bits
+        let square = about_high_i64(beta, beta); // 76 fraction bits
         // 1/3 + b^2/5 + b^4/7 with 62 fraction bits; the products with the square have 74.
-        let fifth = high_i64(square, 658_812_288_346_769_701) >> 12; // b^2 2^62/7
-        let third = high_i64(square, 922_337_203_685_477_581_i64.wrapping_add(fifth)) >> 12; // ... 2^62/5
+        let fifth = about_high_i64(square, 658_812_288_346_769_701) >> 12; // b^2 2^62/7
+        let third = about_high_i64(square, 922_337_203_685_477_581_i64.wrapping_add(fifth)) >> 12; // ... 2^62/5
         let factor = 1_537_228_672_809_129_301_i64.wrapping_add(third); // ... 2^62/3
-        let bend = high_i64(high_i64(square, factor), beta) >> 10; // 74 + 70 - 64 - 10 = 70 fraction bits
+        let bend = about_high_i64(about_high_i64(square, factor), beta) >> 10; // 74 + 70 - 64 - 10 = 70 fraction bits
         Self::from_bits((beta.wrapping_add(bend).wrapping_add(1 << 9) >> 10).wrapping_neg())
     }
 

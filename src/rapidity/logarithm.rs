@@ -4,7 +4,7 @@
 //! 2^-7.99, and ln(1 + z) is the power series. No division.
 
 use super::coefficients::{LOGARITHM_RECIPROCALS, LOGARITHMS};
-use super::wide_product::{high_i32, high_i64, high_i64_i32};
+use super::wide_product::{about_high_i64, high_i32, high_i64_i32};
 
 /// ln 2 with 60 fraction bits, cut to an even number ...
 const LN_2_HIGH: i64 = 799_144_290_325_165_978;
@@ -50,9 +50,9 @@ const fn logarithm_of_one_plus(z: i64) -> i64 {
     let tail = 13_421_773_i32.wrapping_sub(high_i32(z_high, tail)); // 2^26/5 - ...
     let tail = (1_i32 << 30).wrapping_sub(high_i32(z_high, tail)); // 2^32/4 - ...
     let third = 3_074_457_345_618_258_603_i64.wrapping_sub(high_i64_i32(z, tail) >> 7); // 2^63/3 - ...
-    let half = (1_i64 << 62).wrapping_sub(high_i64(z, third) >> 6); // 2^63/2 - ...
-    let square = high_i64(z, z); // 76 fraction bits
-    z.wrapping_sub(high_i64(square, half) >> 5)
+    let half = (1_i64 << 62).wrapping_sub(about_high_i64(z, third) >> 6); // 2^63/2 - ...
+    let square = about_high_i64(z, z); // 76 fraction bits
+    z.wrapping_sub(about_high_i64(square, half) >> 5)
 }
 
 impl Logarithm {

@@ -1,31 +1,140 @@
-//! High halves of products: the one place where a target may need code of its own.
+//! High halves of products: the one place where a target has code of its own.
 //!
-//! All of these are exact floors, so the bits are the same on every target.
+//! All of these are exact floors, so the bits are the same on every target. A core without a long
+//! multiplication (Armv6-M, told here by its lack of atomics) forms the high word from 16-bit halves in
+//! about 20 instructions, where the compiler would call a routine of about 50.
+
+/// floor(a b / 2^32) of two unsigned words.
+#[inline(always)]
+pub(crate) const fn high_u32(a: u32, b: u32) -> u32 {
+    if cfg!(all(target_arch = "arm", not(target_has_atomic = "32"))) {
+        halves::high_u32(a, b)
+    } else {
+        ((a as u64).wrapping_mul(b as u64) >> 32) as u32
+    }
+}
 
 /// floor(a b / 2^32) of two signed words.
+#[inline(always)]
 pub(crate) const fn high_i32(a: i32, b: i32) -> i32 {
-    ((a as i64).wrapping_mul(b as i64) >> 32) as i32
+    if cfg!(all(target_arch = "arm", not(target_has_atomic = "32"))) {
+        halves::high_i32(a, b)
+    } else {
+        ((a as i64).wrapping_mul(b as i64) >> 32) as i32
+    }
+}
+
+/// floor(a b / 2^32) of an unsigned and a signed word.
+#[inline(always)]
+pub(crate) const fn high_u32_i32(a: u32, b: i32) -> i32 {
+    if cfg!(all(target_arch = "arm", not(target_has_atomic = "32"))) {
+        // a = signed(a) + 2^32 [a has its top bit].
+        halves::high_i32(a as i32, b).wrapping_add(b & (a as i32 >> 31))
+    } else {
+        ((a as i64).wrapping_mul(b as i64) >> 32) as i32
+    }
+}
+
+/// a b of two unsigned words.
+#[inline(always)]
+pub(crate) const fn product_u32(a: u32, b: u32) -> u64 {
+    (high_u32(a, b) as u64) << 32 | a.wrapping_mul(b) as u64
+}
+
+/// a b of two signed words.
+#[inline(always)]
+pub(crate) const fn product_i32(a: i32, b: i32) -> i64 {
+    (high_i32(a, b) as i64) << 32 | a.wrapping_mul(b) as u32 as i64
 }
 
 /// floor(a b / 2^32) of a signed double word and a signed word.
 pub(crate) const fn high_i64_i32(a: i64, b: i32) -> i64 {
-    let low = (a as u32 as i64).wrapping_mul(b as i64) >> 32;
-    (a >> 32).wrapping_mul(b as i64).wrapping_add(low)
+    product_i32((a >> 32) as i32, b).wrapping_add(high_u32_i32(a as u32, b) as i64)
 }
 
 /// floor(a b / 2^64) of two unsigned double words.
 pub(crate) const fn high_u64(a: u64, b: u64) -> u64 {
-    let (a_high, a_low) = (a >> 32, a as u32 as u64);
-    let (b_high, b_low) = (b >> 32, b as u32 as u64);
-    let cross = a_high.wrapping_mul(b_low).wrapping_add(a_low.wrapping_mul(b_low) >> 32);
-    // cross <= (2^32 - 1)^2 + 2^32 - 2 and the next sum adds at most (2^32 - 1)^2 to 32 bits: no carry is lost.
-    let middle = a_low.wrapping_mul(b_high).wrapping_add(cross as u32 as u64);
-    a_high.wrapping_mul(b_high).wrapping_add(cross >> 32).wrapping_add(middle >> 32)
+    let (a_high, a_low) = ((a >> 32) as u32, a as u32);
+    let (b_high, b_low) = ((b >> 32) as u32, b as u32);
+    let cross = product_u32(a_high, b_low).wrapping_add(high_u32(a_low, b_low) as u64);
+    // cross <= (2^32 - 1)^2 + 2^32 - 2 and the next sum adds 32 bits to at most (2^32 - 1)^2: no carry is lost.
+    let middle = product_u32(a_low, b_high).wrapping_add(cross as u32 as u64);
+    product_u32(a_high, b_high).wrapping_add(cross >> 32).wrapping_add(middle >> 32)
 }
 
-/// floor(a b / 2^64) of two signed double words.
-pub(crate) const fn high_i64(a: i64, b: i64) -> i64 {
-    // a = unsigned(a) - 2^64 [a < 0], the same for b.
-    let unsigned = high_u64(a as u64, b as u64) as i64;
-    unsigned.wrapping_sub((a >> 63) & b).wrapping_sub((b >> 63) & a)
+/// a b / 2^64 of two signed double words, at most 3 too small: the product of the low words and the low
+/// halves of the mixed products are left out.
+#[inline(always)]
+pub(crate) const fn about_high_i64(a: i64, b: i64) -> i64 {
+    let (a_high, b_high) = ((a >> 32) as i32, (b >> 32) as i32);
+    product_i32(a_high, b_high)
+        .wrapping_add(high_u32_i32(b as u32, a_high) as i64)
+        .wrapping_add(high_u32_i32(a as u32, b_high) as i64)
+}
+
+/// The same from products of 16-bit halves.
+mod halves {
+    /// floor(a b / 2^32) of two unsigned words.
+    #[inline(always)]
+    pub(super) const fn high_u32(a: u32, b: u32) -> u32 {
+        let (a_high, a_low) = (a >> 16, a & 0xffff);
+        let (b_high, b_low) = (b >> 16, b & 0xffff);
+        // At most (2^16 - 1)^2 + 2^16 - 1 in each of the two sums: no carry is lost.
+        let cross = a_high.wrapping_mul(b_low).wrapping_add(a_low.wrapping_mul(b_low) >> 16);
+        let middle = a_low.wrapping_mul(b_high).wrapping_add(cross & 0xffff);
+        a_high.wrapping_mul(b_high).wrapping_add(cross >> 16).wrapping_add(middle >> 16)
+    }
+
+    /// floor(a b / 2^32) of two signed words.
+    #[inline(always)]
+    pub(super) const fn high_i32(a: i32, b: i32) -> i32 {
+        let (a_high, a_low) = (a >> 16, a & 0xffff);
+        let (b_high, b_low) = (b >> 16, b & 0xffff);
+        // The low product fills an unsigned word; the two sums stay within a signed one, as above.
+        let low = (a_low.wrapping_mul(b_low) as u32 >> 16) as i32;
+        let cross = a_high.wrapping_mul(b_low).wrapping_add(low);
+        let middle = a_low.wrapping_mul(b_high).wrapping_add(cross & 0xffff);
+        a_high.wrapping_mul(b_high).wrapping_add(cross >> 16).wrapping_add(middle >> 16)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Every pair of words with extreme halves, and a walk through the rest.
+    fn pairs() -> impl Iterator<Item = (u32, u32)> {
+        let halves = [0_u32, 1, 2, 0x7fff, 0x8000, 0x8001, 0xfffe, 0xffff];
+        let words = move || halves.into_iter().flat_map(move |high| halves.map(|low| high << 16 | low));
+        let extreme = words().flat_map(move |a| words().map(move |b| (a, b)));
+        let walk =
+            (0..100_000_u32).map(|step| (step.wrapping_mul(0x9e37_79b9), step.wrapping_mul(0x85eb_ca6b)));
+        extreme.chain(walk)
+    }
+
+    #[test]
+    fn halves_give_the_same_words_as_long_products() {
+        for (a, b) in pairs() {
+            let unsigned = (u64::from(a) * u64::from(b) >> 32) as u32;
+            let signed = (i64::from(a as i32) * i64::from(b as i32) >> 32) as i32;
+            assert_eq!(halves::high_u32(a, b), unsigned);
+            assert_eq!(halves::high_i32(a as i32, b as i32), signed);
+            let mixed = halves::high_i32(a as i32, b as i32).wrapping_add(b as i32 & (a as i32 >> 31));
+            assert_eq!(mixed, high_u32_i32(a, b as i32));
+        }
+    }
+
+    #[test]
+    fn long_products_are_exact() {
+        for ((a, b), (c, d)) in pairs().zip(pairs().skip(777)) {
+            let (x, y) = (u64::from(a) << 32 | u64::from(c), u64::from(d) << 32 | u64::from(b));
+            assert_eq!(high_u64(x, y), (u128::from(x) * u128::from(y) >> 64) as u64);
+            let floor = (i128::from(x as i64) * i128::from(y as i64) >> 64) as i64;
+            assert!((0..=3).contains(&(floor - about_high_i64(x as i64, y as i64))));
+            let word = i128::from(a as i32);
+            assert_eq!(high_i64_i32(x as i64, a as i32), (i128::from(x as i64) * word >> 32) as i64);
+            assert_eq!(product_u32(a, b), u64::from(a) * u64::from(b));
+            assert_eq!(product_i32(a as i32, b as i32), i64::from(a as i32) * i64::from(b as i32));
+        }
+    }
 }
