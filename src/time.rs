@@ -134,7 +134,8 @@ impl GpsTime {
         )
     }
 
-    /// UTC as Unix seconds and nanoseconds (rounded down). Inside a leap second the Unix count repeats.
+    /// UTC as Unix seconds and nanoseconds (to the nearest, so that [`Self::from_unix`] comes back to the
+    /// nanosecond). Inside a leap second the Unix count repeats.
     ///
     /// # Errors
     /// [`TimeError::OutOfRange`] before 1980-01-06.
@@ -143,7 +144,7 @@ impl GpsTime {
             return Err(TimeError::OutOfRange);
         }
         let gps = self.0 >> 30;
-        let nanoseconds = (((self.0 & (SECOND - 1)) as u64 * 1_000_000_000) >> 30) as u32;
+        let nanoseconds = (((self.0 & (SECOND - 1)) as u64 * 1_000_000_000 + (1 << 29)) >> 30) as u32;
         let mut leap = 0;
         while leap < LEAP_DAYS.len() {
             let starts = LEAP_DAYS[leap] as i64 * DAY - GPS_EPOCH_UNIX + leap as i64;
@@ -155,9 +156,9 @@ impl GpsTime {
         Ok((gps + GPS_EPOCH_UNIX - leap as i64, nanoseconds))
     }
 
-    /// Seconds from `earlier` to `self`, as f64: exact up to 2^23 s (97 days) apart.
+    /// Seconds from `earlier` to `self`, as f64: exact up to 2^23 s (97 days) apart, saturating at 2^33 s.
     pub fn seconds_since(self, earlier: Self) -> f64 {
-        self.0.wrapping_sub(earlier.0) as f64 * (1.0 / SECOND as f64)
+        self.0.saturating_sub(earlier.0) as f64 * (1.0 / SECOND as f64)
     }
 
     /// This instant plus `seconds`, rounded to the nearest 2^-30 s, saturating.

@@ -15,6 +15,14 @@ const RESIDUAL_POINTS: usize = 64;
 const MAGIC: u32 = 0x4B53;
 const VERSION: u32 = 1;
 const HEADER_WORDS: usize = 6;
+/// Quantum of the position, as a power of two in metres, that is tried first: centimetres do for minutes.
+const COARSEST_QUANTUM: i32 = -6;
+/// A quantum that holds every position below a million kilometres.
+const MOST_QUANTUM: i32 = 16;
+/// How many finer quanta are tried: in a short span a centimetre is much velocity.
+const FINER_QUANTA: i32 = 3;
+/// What every stored coefficient stays below.
+const LARGEST_FIELD: f64 = 2_147_483_647.0;
 /// Fraction bits of the half span in seconds.
 const SPAN_FRACTION: f64 = 1024.0;
 
@@ -49,7 +57,7 @@ pub enum ArcError {
     Damaged,
     /// The buffer given to write into is too small.
     BufferTooSmall,
-    /// The span is not positive, or above 48 days.
+    /// The span is not positive, or above 97 days.
     SpanNotUsable,
     /// A position was not a number or too large for the format.
     PositionNotUsable,
@@ -65,7 +73,7 @@ impl core::fmt::Display for ArcError {
             Self::NewerVersion { .. } => "arc of a newer format version; update the firmware or bake again",
             Self::Damaged => "arc damaged: its CRC-32 does not match; send it again",
             Self::BufferTooSmall => "buffer too small for the arc; give it MAX_ARC_WORDS words",
-            Self::SpanNotUsable => "arc span must be positive and below 48 days",
+            Self::SpanNotUsable => "arc span must be positive and below 97 days",
             Self::PositionNotUsable => {
                 "a position of the arc is not a number or over a million kilometres away"
             }
@@ -157,9 +165,9 @@ impl<'a> Arc<'a> {
     /// See [`ArcError`].
     ///
     /// # Accuracy
-    /// Velocity within `velocity_tolerance` on each axis at 64 places of the span, quantisation included;
-    /// position is rounded at 2^-6 m (coarser beyond 33,000 km). `tests/arc.rs` holds it to 1 mHz at 437 MHz
-    /// for a thousand random sites.
+    /// Velocity within `velocity_tolerance` on each axis at 65 places of the span, quantisation included;
+    /// position is rounded at 2^-6 m (finer in spans of a minute or two, coarser far out). `tests/arc.rs` holds
+    /// it to 1 mHz at 437 MHz for a thousand random sites.
     pub fn fit(
         buffer: &'a mut [u32],
         settings: &ArcSettings,
@@ -187,17 +195,8 @@ impl<'a> Arc<'a> {
             }
         }
         let series = samples.map(|axis| chebyshev::interpolate(&axis, &cosines));
-        let largest = series.iter().flatten().fold(0.0_f64, |most, value| most.max(value.abs()));
-        let mut quantum = -6;
-        while largest / power_of_two(quantum - 1) > 2_147_000_000.0 {
-            quantum += 1;
-        }
-        let degree = (2..=MAX_DEGREE)
-            .find(|&degree| {
-                let error = series.iter().map(|axis| velocity_error(axis, degree, quantum));
-                error.fold(0.0, f64::max) / half_span <= settings.velocity_tolerance
-            })
-            .ok_or(ArcError::TooCurved)?;
+        let (quantum, degree) =
+            storage(&series, settings.velocity_tolerance * half_span).ok_or(ArcError::TooCurved)?;
         let length = write(buffer, settings, middle, half_units as u32, quantum, degree, &series)
             .ok_or(ArcError::BufferTooSmall)?;
         Self::new(buffer.get(..length).ok_or(ArcError::BufferTooSmall)?)
@@ -292,6 +291,25 @@ impl<'a> Arc<'a> {
 /// A coefficient in units of its order's quantum.
 fn quantise(value: f64, order: usize, quantum: i32) -> f64 {
     libm::round(value / power_of_two(quantum - finer_bits(order)))
+}
+
+/// Coarsest quantum (as a power of two) and lowest degree with which the velocity is within `tolerance`, in metres
+/// per half span.
+fn storage(series: &[[f64; FIT_POINTS]; 3], tolerance: f64) -> Option<(i32, usize)> {
+    // Every order that may be stored must fit its 32 bits: the third is stored finer than the first.
+    let held = |&quantum: &i32| {
+        series.iter().all(|axis| {
+            let mut stored = axis.iter().enumerate().take(MAX_DEGREE + 1);
+            stored.all(|(order, &value)| quantise(value, order, quantum).abs() < LARGEST_FIELD)
+        })
+    };
+    let coarsest = (COARSEST_QUANTUM..MOST_QUANTUM).find(held)?;
+    (coarsest - FINER_QUANTA..=coarsest).rev().take_while(held).find_map(|quantum| {
+        let error = |degree| {
+            series.iter().fold(0.0_f64, |most, axis| most.max(velocity_error(axis, degree, quantum)))
+        };
+        (2..=MAX_DEGREE).find(|&degree| error(degree) <= tolerance).map(|degree| (quantum, degree))
+    })
 }
 
 /// Largest velocity error, per half span, that stopping at `degree` and rounding leave on one axis.

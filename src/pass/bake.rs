@@ -16,7 +16,7 @@ use super::chebyshev::{self, Cosines};
 use super::geometry::{Direction, Geometry, TaggedAt};
 use super::packing::checksum;
 use super::table::{
-    BASE_FRACTION, CELL_BITS, DEGREE, FIELDS, HEADER_WORDS, MAGIC, NOISE, PARTIAL_RECORD_WORDS,
+    BASE_FRACTION, CELL_BITS, DEGREE, FIELDS, HEADER_WORDS, LAST_SHIFT, MAGIC, NOISE, PARTIAL_RECORD_WORDS,
     PartialRecord, PassTable, RECORD_WORDS, SPAN_FRACTION, TableError, VERSION,
 };
 use crate::time::GpsTime;
@@ -29,8 +29,17 @@ const RESIDUAL_POINTS: usize = 64;
 const SMOOTHNESS: u32 = 1 << 15;
 /// Rounding noise of a Chebyshev coefficient in f64, relative to the delay.
 const COEFFICIENT_NOISE: f64 = 1e-15;
+/// The same in seconds, from places of some 1e7 m that a geometry computes with in f64 (5 nm).
+const GEOMETRY_NOISE: f64 = 2e-17;
+/// Slope that the narrow kernel of the rapidity ends at.
+const STEEPEST: f64 = 1.0 / 8192.0;
+/// Largest error that the header can state, for slope and for delay: 3.7e-9.
+const LARGEST_ERROR: f64 = u32::MAX as f64 / (1u64 << 60) as f64;
 /// Most segments a table gets.
 const MOST_SEGMENTS: usize = 256;
+/// Least and most Q of the format.
+const LEAST_FRACTION: i32 = 24;
+const MOST_FRACTION: i32 = 46;
 /// Values of Q that are tried, from the finest that holds the nodes.
 const FRACTION_TRIES: i32 = 3;
 
@@ -43,8 +52,10 @@ pub enum BakeError {
     SpanNotUsable,
     /// The tolerance is not positive, or finer than the evaluation can be (slope 1e-13, delay 1e-13 s).
     ToleranceNotUsable,
-    /// The delay was not a number, negative beyond -64 s or above 64 s.
+    /// A delay was not a number, or 64 s or more in magnitude.
     DelayNotUsable,
+    /// The delay changes by 2^-13 a second or more: 36.6 km/s one way, half of that two ways.
+    TooFast,
     /// The delay is not smooth enough, or the tolerance too fine, for 256 segments.
     TooManySegments,
     /// The buffer given to write into is too small.
@@ -59,6 +70,7 @@ impl core::fmt::Display for BakeError {
             Self::SpanNotUsable => "table span must be positive and below 48 days",
             Self::ToleranceNotUsable => "tolerance finer than 1e-13 (slope) or 1e-13 s (delay), or not a number",
             Self::DelayNotUsable => "a delay was not a number or beyond 64 s",
+            Self::TooFast => "the delay changes faster than 2^-13 (36.6 km/s): beyond the format; check its unit",
             Self::TooManySegments => {
                 "256 segments do not meet the tolerance: allow more error, shorten the span or smooth the input"
             }
@@ -153,27 +165,47 @@ pub fn bake<'a>(
     if !(span > 0.0 && span_units < 4_294_967_296.0) {
         return Err(BakeError::SpanNotUsable);
     }
+    let span = libm::ldexp(span_units, -(SPAN_FRACTION as i32));
     if !(settings.slope_tolerance > 1e-13 && settings.delay_tolerance > 1e-13) {
         return Err(BakeError::ToleranceNotUsable);
     }
-    let cell = cell_for(span);
-    let finest = units_for(span, cell, &mut delay)?;
-    let mut best: Option<(Units, usize)> = None;
-    for coarser in 0..FRACTION_TRIES {
-        let units = Units { fraction: finest.fraction - coarser, ..finest };
-        let counted = Layout::plan(&units, settings, span, &mut delay, |_, _, _| Some(()));
-        if let Ok((count, _)) = counted
-            && best.is_none_or(|(_, least)| count < least)
-        {
-            best = Some((units, count));
-        }
+    let mut usable = true;
+    let mut checked = |seconds: f64| {
+        let value = delay(seconds);
+        usable &= seconds > span || value.abs() < 64.0;
+        value
+    };
+    let cheapest = cheapest(settings, span, &mut checked);
+    if !usable {
+        return Err(BakeError::DelayNotUsable);
     }
-    let (units, count) = best.ok_or(BakeError::TooManySegments)?;
+    let (units, count) = cheapest?;
     let length = write(buffer, settings, &units, count, span, &mut delay, late)?;
     buffer
         .get(..length)
         .ok_or(BakeError::BufferTooSmall)
         .and_then(|words| PassTable::new(words).map_err(|_| BakeError::BufferTooSmall))
+}
+
+/// The units that need the fewest segments, and how many.
+fn cheapest(
+    settings: &BakeSettings,
+    span: f64,
+    delay: &mut impl FnMut(f64) -> f64,
+) -> Result<(Units, usize), BakeError> {
+    let finest = units_for(span, cell_for(span), delay)?;
+    let mut best: Option<(Units, usize)> = None;
+    let mut refusal = BakeError::TooManySegments;
+    let coarsest = (finest.fraction + 1 - FRACTION_TRIES).max(LEAST_FRACTION);
+    for fraction in (coarsest..=finest.fraction).rev() {
+        let units = Units { fraction, ..finest };
+        match Layout::plan(&units, settings, span, delay, |_, _, _| Some(())) {
+            Ok((count, _)) if best.is_none_or(|(_, least)| count < least) => best = Some((units, count)),
+            Ok(_) => {}
+            Err(error) => refusal = error,
+        }
+    }
+    best.ok_or(refusal)
 }
 
 /// log2, in 2^-30 s, of the smallest cell of which 1024 cover the span.
@@ -200,8 +232,8 @@ fn units_for(span: f64, cell: u32, delay: &mut impl FnMut(f64) -> f64) -> Result
     let room = (most - least) * 0.02 + 1e-9;
     let base =
         libm::ldexp(libm::floor(libm::ldexp(least - room, BASE_FRACTION as i32)), -(BASE_FRACTION as i32));
-    let mut fraction = 46;
-    while fraction > 24 && libm::ldexp(most + room - base, fraction - 1) >= 4_294_967_295.0 {
+    let mut fraction = MOST_FRACTION;
+    while fraction > LEAST_FRACTION && libm::ldexp(most + room - base, fraction - 1) >= 4_294_967_295.0 {
         fraction -= 1;
     }
     Ok(Units { fraction, base, cell })
@@ -220,7 +252,8 @@ impl Layout {
         delay: &mut impl FnMut(f64) -> f64,
         mut keep: impl FnMut(u32, u32, &(Fit, [u32; 2])) -> Option<()>,
     ) -> Result<(usize, Fit), BakeError> {
-        let cells = libm::ceil(span / units.cell_seconds()) as u32;
+        // The last instant itself must lie inside a segment, not at its end.
+        let cells = libm::floor(span / units.cell_seconds()) as u32 + 1;
         let mut first = 0;
         let mut length: u32 = 15;
         let mut worst = Fit::default();
@@ -232,7 +265,12 @@ impl Layout {
                 if let Some(fitted) = fit(units, settings, first, length, delay) {
                     break fitted;
                 }
-                length = length.checked_sub(1).ok_or(BakeError::TooManySegments)?;
+                length = length.checked_sub(1).ok_or_else(|| {
+                    let start = units.cell_seconds() * f64::from(first);
+                    let change = delay(start + units.cell_seconds()) - delay(start);
+                    let too_fast = change.abs() >= 0.99 * STEEPEST * units.cell_seconds();
+                    if too_fast { BakeError::TooFast } else { BakeError::TooManySegments }
+                })?;
             };
             worst.slope_error = worst.slope_error.max(fitted.0.slope_error);
             worst.delay_error = worst.delay_error.max(fitted.0.delay_error);
@@ -261,10 +299,10 @@ fn fit(
         *value = delay(start + half * (1.0 + chebyshev::point(index, POINTS))) - units.base;
     }
     let series = chebyshev::interpolate(&values, &Cosines::<POINTS>::new());
-    let tail = tail(&series)?;
+    let tail = tail(&series, units.base)?;
     let nodes = [units.node(delay(start))?, units.node(delay(start + 2.0 * half))?];
     let (coefficients, left) = units.round(&series, nodes)?;
-    if !fits(&series, units) {
+    if !fits(&series, units, half) {
         return None;
     }
     let factor = 1.0 / libm::cos(core::f64::consts::PI * (POINTS - 1) as f64 / (2 * RESIDUAL_POINTS) as f64);
@@ -274,27 +312,29 @@ fn fit(
         delay_error = delay_error.max(value.abs());
         slope_error = slope_error.max(slope.abs());
     }
-    let noise = libm::ldexp(f64::from(NOISE), -16 - units.fraction);
+    let noise = libm::ldexp(f64::from(NOISE), -16 - units.fraction) + libm::ldexp(f64::from(LAST_SHIFT), -60);
     let slope_error = (slope_error * factor + tail.1) / half;
     let delay_error = delay_error * factor + tail.0 + noise;
-    let met = slope_error <= settings.slope_tolerance && delay_error <= settings.delay_tolerance;
+    let met = slope_error <= settings.slope_tolerance.min(LARGEST_ERROR)
+        && delay_error <= settings.delay_tolerance.min(LARGEST_ERROR);
     met.then_some((Fit { coefficients, slope_error, delay_error }, nodes))
 }
 
 /// Bound on what lies beyond the interpolant: value and slope (per half segment); `None` when the
 /// coefficients do not decay as the header states.
-fn tail(series: &[f64; POINTS]) -> Option<(f64, f64)> {
+fn tail(series: &[f64; POINTS], base: f64) -> Option<(f64, f64)> {
     let most = |from: usize, to: usize| {
         series.get(from..to).unwrap_or(&[]).iter().fold(0.0_f64, |most, value| most.max(value.abs()))
     };
     let last = most(POINTS - 4, POINTS);
-    let noise = most(0, POINTS) * COEFFICIENT_NOISE;
+    let noise = (base.abs() + most(0, POINTS)) * COEFFICIENT_NOISE + GEOMETRY_NOISE;
     // Ten orders earlier the same ratio must have held: (1/2)^10, with a factor two for the phase.
     if last > noise && last * 512.0 > most(POINTS - 14, POINTS - 10) {
         return None;
     }
-    let (mut value, mut slope, mut term) = (0.0, 0.0, last);
+    let (mut value, mut slope, mut term) = (0.0, 0.0, 2.0 * last);
     for order in POINTS..POINTS + 64 {
+        // Twice: the term itself, and the lower order that it looks like at the interpolant's points.
         term *= f64::from(SMOOTHNESS) / 65536.0;
         value += term;
         slope += term * (order * order) as f64;
@@ -364,15 +404,16 @@ fn cut_for_slope(series: &[f64; POINTS], degree: usize) -> [f64; POINTS] {
     cut
 }
 
-/// Whether slope and curvature stay inside the evaluation's 32 bits anywhere on the segment.
-fn fits(series: &[f64; POINTS], units: &Units) -> bool {
+/// Whether slope and curvature stay inside the evaluation's 32 bits, and the slope inside the narrow kernel's
+/// range, anywhere on the segment.
+fn fits(series: &[f64; POINTS], units: &Units, half: f64) -> bool {
     let bounds = series.iter().enumerate().fold((0.0, 0.0), |(slope, bend), (order, value)| {
         let square = (order * order) as f64;
         (slope + value.abs() * square, bend + value.abs() * square * (square - 1.0).max(0.0) / 3.0)
     });
     // In the evaluation's argument, half as long: slope doubles, half the curvature doubles; a quarter is kept free.
     let scale = libm::ldexp(1.0, units.fraction - 2);
-    bounds.0 * 2.0 * scale < 1.6e9 && bounds.1 * 2.0 * scale < 8.0e8
+    bounds.0 < STEEPEST * half && bounds.0 * 2.0 * scale < 1.6e9 && bounds.1 * 2.0 * scale < 8.0e8
 }
 
 /// Writes a whole table; returns its length in words.
@@ -524,8 +565,8 @@ fn write_partial(
 /// Bakes an arc seen by a geometry, with the lateness partial when asked for.
 ///
 /// # Errors
-/// [`BakeError::OutsideArc`] when the span, the light time or the partial's lateness reach past the arc; else
-/// as [`bake`].
+/// [`BakeError::OutsideArc`] when the span reaches past the arc; else as [`bake`]. Light time, the partial's 2 s of
+/// lateness and the last segment may reach a little further: keep some seconds of arc at both ends.
 pub fn bake_arc<'a>(
     buffer: &'a mut [u32],
     arc: &Arc<'_>,
@@ -577,14 +618,15 @@ pub struct Request {
 pub struct Audit {
     /// Largest difference of delay in seconds.
     pub worst_delay: f64,
-    /// Largest difference of the delay's slope, from differences over two steps.
+    /// Largest difference of the delay's slope, as the change from one instant to the next over the step; it holds
+    /// [`PassTable::evaluation_noise`] over the step, so do not look closer than some 10 ms.
     pub worst_slope: f64,
     /// Instants looked at.
     pub instants: u32,
 }
 
-/// Checks a table against `delay` (seconds from the table's start) on a grid of `step` seconds, without trusting
-/// the fit: nothing here knows how the table was made.
+/// Checks a table against `delay` (seconds from the table's start) on a grid of `step` seconds (at least 1 us),
+/// without trusting the fit: nothing here knows how the table was made.
 ///
 /// # Errors
 /// The instant's [`TableError`], which a sound table does not give inside its span.
@@ -594,6 +636,7 @@ pub fn audit(
     mut delay: impl FnMut(f64) -> f64,
 ) -> Result<Audit, TableError> {
     let mut seen = Audit::default();
+    let step = step.max(1e-6);
     let span = table.end().seconds_since(table.start());
     let mut before: Option<(f64, f64)> = None;
     let mut index = 0.0;
@@ -607,7 +650,7 @@ pub fn audit(
             seen.worst_slope = seen.worst_slope.max(((difference - then) / (seconds - earlier)).abs());
         }
         before = Some((seconds, difference));
-        seen.instants += 1;
+        seen.instants = seen.instants.saturating_add(1);
         index += 1.0;
     }
     Ok(seen)

@@ -382,7 +382,8 @@ impl Geometry {
         let azimuth = libm::atan2(dot(&line, &self.site.east), dot(&line, &self.site.north));
         let turn = 2.0 * core::f64::consts::PI;
         Look {
-            elevation: libm::asin(dot(&line, &self.site.up) / range),
+            // Straight overhead, rounding may leave the quotient above one.
+            elevation: libm::asin((dot(&line, &self.site.up) / range).clamp(-1.0, 1.0)),
             azimuth: if azimuth < 0.0 { azimuth + turn } else { azimuth },
             range,
         }

@@ -11,14 +11,25 @@
 use super::{CELL_BITS, HEADER_WORDS, RECORD_WORDS};
 use crate::rapidity::{Delay, Motion, Rapidity, RapidityRate, narrow};
 
-/// Bound on the difference that truncation adds between two evaluations, in 2^-(Q+16) s (so in 2^-56 s at
-/// Q = 40). Value chain: a product truncated at order k of the 32-bit part counts 2^-(Q+4+k) s, its argument
-/// u0 being at most 1/2; orders 8 to 5 and the change of units sum to below 2^-(Q+4+4) = 256 units, the
-/// 64-bit orders to below 2^-(Q+14) (2) = 8, the Taylor term's slope (8 units of 2^-(Q-2), times 2^-16) to
-/// below 2^-(Q-2-3+16) = 32, and its own truncation to 4.
-pub(in crate::pass) const NOISE: u32 = 300;
-/// The Q at which [`NOISE`] is in 2^-56 s.
-pub(super) const REFERENCE_FRACTION: u32 = 40;
+/// Bound on what truncation adds to one evaluation, in 2^-(Q+16) s, beside [`LAST_SHIFT`].
+///
+/// Every truncation makes its term smaller by less than one unit, and enters the result times u^k, |u| <= 1/2:
+///
+/// | where | unit, in 2^-(Q+16) s | orders k | error for u > 0 | for u < 0 |
+/// |---|---|---|---|---|
+/// | 32-bit products | 2^12 | 8 to 5 | -240 to 0 | -80 to 160 |
+/// | 64-bit products | 4 | 4 to 0 | -8 to 0 | -6 to 3 |
+/// | slope (2 units an order, 3 in the bend) times d | 4 | | -28 to 2 | -22 to 8 |
+/// | product with d, Taylor's next term | 4, 2 | | -6 to 2 | -6 to 2 |
+///
+/// So one evaluation is off by -282 to 173 units, and two of them differ by at most the sum.
+pub(in crate::pass) const NOISE: u32 = 282;
+/// Bound on the difference of two evaluations' errors, in the same unit; see [`NOISE`].
+pub(super) const DIFFERENCE_NOISE: u32 = 455;
+/// What the last shift, to the delay's 2^-56 s, may cut off, in 2^-60 s.
+pub(in crate::pass) const LAST_SHIFT: u32 = 16;
+/// Least Q of the format.
+const LEAST_FRACTION: u32 = 24;
 
 /// What the header says about units, unpacked once.
 #[derive(Clone, Copy, Debug)]
@@ -50,8 +61,9 @@ impl Layout {
         let fraction = header[13] & 0xFF;
         let cell = header[13] >> 8 & 0xFF;
         let segments = header[13] >> 16;
-        let sane =
-            (24..=46).contains(&fraction) && (20..=48).contains(&cell) && (1..=1024).contains(&segments);
+        let sane = (LEAST_FRACTION..=46).contains(&fraction)
+            && (20..=48).contains(&cell)
+            && (1..=1024).contains(&segments);
         // Down tagged at the ground, up tagged at the spacecraft and two-way read the receiver's time.
         let at_transmitter = matches!(header[0] & 7, 1 | 4);
         sane.then(|| Self {
@@ -69,6 +81,20 @@ impl Layout {
 
     pub(super) fn fraction(&self) -> u32 {
         u32::from(self.fraction)
+    }
+
+    /// Bound on the difference of two evaluations' errors in 2^-60 s.
+    pub(super) fn difference_noise(&self) -> u32 {
+        let finest = DIFFERENCE_NOISE << (60 - 16 - LEAST_FRACTION);
+        (finest >> self.fraction().saturating_sub(LEAST_FRACTION)) + LAST_SHIFT
+    }
+
+    /// Bound on what the evaluation adds to a rapidity in 2^-60: 7 units of the slope a segment (see [`NOISE`]),
+    /// `shortest` being the log2 of the shortest segment in cells, and the kernel's rounding to 2^-44.
+    pub(super) fn rapidity_noise(&self, shortest: u32) -> u32 {
+        let seconds = i32::from(self.cell) + shortest as i32;
+        let slope = shifted(7, 60 + 2 - i32::from(self.fraction) - seconds).min(i64::from(u32::MAX >> 1));
+        slope as u32 + (3 << 15)
     }
 
     /// Finds the segment of a time since the epoch, in 2^-30 s, by a search of fixed depth.
@@ -90,7 +116,10 @@ impl Layout {
         }
         let found = entry(segment);
         let length = found & 0xF;
-        let local = aligned.wrapping_sub(u64::from(found >> 4) << (64 - CELL_BITS)) << (CELL_BITS - length);
+        // A segment is never longer than a table; a damaged directory's longer ones wrap here.
+        let local = aligned
+            .wrapping_sub(u64::from(found >> 4) << (64 - CELL_BITS))
+            .wrapping_shl(CELL_BITS.wrapping_sub(length));
         let argument = local ^ (1 << 63);
         Place {
             segment: segment as usize,

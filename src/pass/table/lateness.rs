@@ -77,8 +77,8 @@ impl PassTable<'_> {
             i64::from(half) << fine_shift
         };
         let [c2, c3, c4, c5] = core::array::from_fn(|index| coefficient(index + 2));
-        let first = (end - start) / 2 - c3 - c5;
-        let zeroth = (end + start) / 2 - c2 - c4;
+        let first = (end.wrapping_sub(start) >> 1).wrapping_sub(c3).wrapping_sub(c5);
+        let zeroth = (end.wrapping_add(start) >> 1).wrapping_sub(c2).wrapping_sub(c4);
         let mut value = c5 << 5;
         let mut slope = 0i64;
         for term in [c4 << 4, c3 << 3, c2 << 2, first << 1, zeroth] {
