@@ -1,5 +1,6 @@
 //! The routines in the table of costs: ours, and what a user would otherwise write.
 
+mod channel;
 mod general;
 mod oscillator;
 mod pass;
@@ -14,6 +15,7 @@ pub type Report = fn(&str, &Cost);
 /// Counts every routine.
 pub fn all(report: Report) {
     pass::table(report);
+    channel::channel(report);
     rapidity::from_speeds(report);
     general::range_rate(report);
     rapidity::narrow_conversions(report);

@@ -1,6 +1,6 @@
 //! The library's pass: the table at an instant, and once the whole bake.
 
-use super::{Report, line, sample};
+use super::{Report, channel, line, sample};
 use crate::count::{INPUTS, in_memory, once};
 use crate::pass::{ArcFile, TABLE_WORDS, bake};
 use shiftkeel::pass::{Direction, PassTable};
@@ -27,6 +27,7 @@ pub fn table(report: Report) {
         let mut table = &table;
         words(in_memory(&mut table).at_late(GpsTime::from_bits(time), lateness).unwrap_or_default())
     });
+    channel::steering(report, &table);
 }
 
 /// Instants spread over a table, bits scrambled, away from the ends by more than the lateness that is asked.
