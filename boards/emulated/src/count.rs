@@ -217,6 +217,16 @@ pub fn cost<I: Opaque, O: Opaque>(input: impl Fn(u32) -> I, mut routine: impl Fn
     cost
 }
 
+/// Counts one call of a routine too long to repeat: in thousands of instructions.
+#[inline(never)]
+pub fn once<T>(routine: impl FnOnce() -> T, digest: impl FnOnce(&T) -> u64) -> (Cost, T) {
+    counter::start();
+    let from = counter::tenths();
+    let output = routine();
+    let mean_tenths = (counter::tenths() - from) / 1000;
+    (Cost { mean_tenths, maximum: (mean_tenths + 5) / 10, digest: digest(&output) }, output)
+}
+
 /// Tenths of an instruction that so many calls took, harness included.
 #[inline(never)]
 fn repeat<I: Opaque, O: Opaque>(input: I, repeats: u32, routine: &mut impl FnMut(I) -> O) -> u64 {

@@ -11,6 +11,8 @@ pub mod count;
 pub mod digest;
 #[cfg(feature = "harness")]
 pub mod pass;
+#[cfg(feature = "harness")]
+pub mod plans;
 #[cfg(feature = "costs")]
 pub mod routines;
 #[cfg(feature = "harness")]

@@ -31,7 +31,7 @@ impl ArcFile {
     }
 }
 
-/// Bakes the table of the pass as an invented site sees it: 0.6 mHz and a thousandth of a cycle at 437 MHz.
+/// Bakes the table of the pass as an invented site sees it: within 1 mHz and 0.015 cycle at 437 MHz.
 pub fn bake<'a>(buffer: &'a mut [u32], arc: &Arc<'_>, direction: Direction) -> PassTable<'a> {
     let site = console::must(Site::geodetic(45.0, 7.5, 300.0), "the site");
     let geometry = console::must(Geometry::new(arc, &site, direction, TaggedAt::Ground, 0.0), "the pass");
@@ -41,8 +41,8 @@ pub fn bake<'a>(buffer: &'a mut [u32], arc: &Arc<'_>, direction: Direction) -> P
     let request = Request {
         start,
         end,
-        slope_tolerance: 0.6e-3 / 437e6,
-        delay_tolerance: 1e-3 / 437e6,
+        slope_tolerance: 1e-3 / 437e6,
+        delay_tolerance: 0.015 / 437e6,
         lateness_partial: direction == Direction::Down,
     };
     console::must(bake_arc(buffer, arc, &geometry, &request), "the table")

@@ -7,14 +7,15 @@ program!(print);
 
 fn print() {
     console::text("instructions (not cycles) a call, net of an empty harness\n");
-    console::text("routine                                  mean       max  digest of outputs\n");
+    console::text("routine                                      mean       max  digest of outputs\n");
     routines::all(report);
 }
 
 fn report(name: &str, cost: &Cost) {
-    console::left(name, 36);
+    console::left(name, 40);
     console::tenths(cost.mean_tenths, 10);
-    console::decimal(cost.maximum, 10);
+    console::text(" ");
+    console::decimal(cost.maximum, 9);
     console::text("  ");
     console::hexadecimal(cost.digest, 16);
     console::text("\n");

@@ -2,14 +2,15 @@
 //! oscillator is told: the same on every core and on the host.
 #![cfg_attr(target_os = "none", no_std, no_main)]
 
+use shiftkeel::nco::Nco;
 use shiftkeel::pass::{Direction, PassTable};
+use shiftkeel::rapidity::{Motion, Rapidity};
 use shiftkeel::time::GpsTime;
+use shiftkeel::tuning::{Hold, Sweep};
+use shiftkeel_emulated::console::must;
 use shiftkeel_emulated::digest::Digest;
 use shiftkeel_emulated::pass::{ArcFile, TABLE_WORDS, bake};
-use shiftkeel_emulated::{console, program};
-
-/// An eighth of a second.
-const TICK: i64 = 1 << (GpsTime::FRACTION_BITS - 3);
+use shiftkeel_emulated::{console, plans, program};
 
 program!(walk);
 
@@ -22,27 +23,86 @@ fn walk() {
     console::hexadecimal(arc.digest().into(), 8);
     console::text("\n");
     let mut buffer = [0; TABLE_WORDS];
-    for (direction, name, file) in
-        [(Direction::Down, "down", c"down.table"), (Direction::Up, "up", c"up.table")]
-    {
-        let table = bake(&mut buffer, &arc, direction);
-        write_table(file, &table);
-        show_table(name, &table);
-        show("  motion", motion(&table));
-    }
+    let down = bake(&mut buffer, &arc, Direction::Down);
+    write_table(c"down.table", &down);
+    show_table("down", &down);
+    motions(&down);
+    receive(&down);
+    let up = bake(&mut buffer, &arc, Direction::Up);
+    write_table(c"up.table", &up);
+    show_table("up", &up);
+    motions(&up);
+    transmit(&up);
+}
+
+/// The motion at every tick of the table, the first tick at its start.
+fn ticks(table: &PassTable<'_>) -> impl Iterator<Item = Motion> {
+    /// A tick in 2^-62 s, rounded down.
+    const TICK: u128 = (1 << 62) / plans::RATE as u128;
+    let start = table.start().to_bits();
+    (0u32..).map_while(move |tick| {
+        let elapsed = u128::from(tick) * TICK;
+        table.at_fine(GpsTime::from_bits(start + (elapsed >> 32) as i64), elapsed as u32).ok()
+    })
 }
 
 /// Delay, rapidity and rate at every tick.
-fn motion(table: &PassTable<'_>) -> Digest {
+fn motions(table: &PassTable<'_>) {
     let mut digest = Digest::new();
-    let mut time = table.start();
-    while let Ok(motion) = table.at(time) {
+    let mut count = 0;
+    for motion in ticks(table) {
         digest.word(motion.delay.to_bits() as u64);
         digest.word(motion.rapidity.to_bits() as u64);
         digest.word(motion.rate.to_bits() as u64);
-        time = GpsTime::from_bits(time.to_bits() + TICK);
+        count += 1;
     }
-    digest
+    show("motion", count, digest);
+}
+
+/// A receiver whose software oscillator sweeps: steps, ramps and phases.
+fn receive(table: &PassTable<'_>) {
+    let crystal = Rapidity::from_bits(1_700_000_000_000);
+    let channel = must(plans::receiver(crystal), "the receiver");
+    let mut ticks = ticks(table);
+    let first = ticks.next().unwrap_or_default();
+    let mut sweep = must(Sweep::begin(&channel, &first), "the first sweep");
+    let mut oscillator = Nco::at_phase(0);
+    let (mut steps, mut phases) = (Digest::new(), Digest::new());
+    let mut count = 0;
+    for motion in ticks {
+        let swept = must(sweep.step(&channel, &motion), "a sweep");
+        steps.word(swept.first.to_bits());
+        steps.word(swept.ramp.to_bits() as u64);
+        oscillator.retune(swept.first, swept.ramp);
+        oscillator.advance((plans::RECEIVER_CLOCK / plans::RATE).into());
+        phases.word(oscillator.phase());
+        let output = oscillator.next_i32();
+        phases.word(u64::from(output.re as u32) << 32 | u64::from(output.im as u32));
+        count += 1;
+    }
+    show("steps and ramps", count, steps);
+    show("phases and outputs", count, phases);
+}
+
+/// A transmitter whose synthesiser holds a word of 32 bits: words and phases.
+fn transmit(table: &PassTable<'_>) {
+    let crystal = Rapidity::from_bits(-900_000_000_000);
+    let channel = must(plans::transmitter(crystal), "the transmitter");
+    let mut ticks = ticks(table);
+    let first = ticks.next().unwrap_or_default();
+    let mut hold = must(Hold::<32>::begin(&channel, &first, 0), "the first word");
+    let (mut words, mut phases) = (Digest::new(), Digest::new());
+    let (mut phase, mut count) = (0u64, 0);
+    for motion in ticks {
+        let held = must(hold.step(&channel, &motion, false), "a word");
+        words.word(held.word);
+        let clocks = plans::TRANSMITTER_CLOCK / plans::RATE;
+        phase = phase.wrapping_add(held.step.to_bits().wrapping_mul(clocks.into()));
+        phases.word(phase);
+        count += 1;
+    }
+    show("words", count, words);
+    show("phases", count, phases);
 }
 
 fn write_table(file: &core::ffi::CStr, table: &PassTable<'_>) {
@@ -64,7 +124,10 @@ fn show_table(name: &str, table: &PassTable<'_>) {
     console::text("\n");
 }
 
-fn show(what: &str, digest: Digest) {
+fn show(what: &str, count: u64, digest: Digest) {
+    console::text("  ");
+    console::decimal(count, 6);
+    console::text(" ");
     console::left(what, 24);
     console::hexadecimal(digest.value(), 16);
     console::text("\n");

@@ -1,7 +1,10 @@
 //! The routines in the table of costs: ours, and what a user would otherwise write.
 
+mod channel;
 mod general;
 mod oscillator;
+mod pass;
+mod rapidity;
 mod sample;
 
 use crate::count::{Cost, Opaque, cost};
@@ -11,7 +14,11 @@ pub type Report = fn(&str, &Cost);
 
 /// Counts every routine.
 pub fn all(report: Report) {
+    pass::table(report);
+    channel::channel(report);
+    rapidity::from_speeds(report);
     general::range_rate(report);
+    rapidity::narrow_conversions(report);
     general::functions(report);
     oscillator::cosine_and_sine(report);
     general::cosine_and_sine(report);

@@ -1,0 +1,82 @@
+//! The library's channel, and the whole tick of a firmware.
+
+use super::pass::instant;
+use super::{Report, line, sample};
+use crate::console::{self, must};
+use crate::count::in_memory;
+use crate::plans;
+use fixed::types::I16F16;
+use shiftkeel::nco::Nco;
+use shiftkeel::pass::PassTable;
+use shiftkeel::rapidity::{Delay, Motion, Rapidity, RapidityRate};
+use shiftkeel::time::GpsTime;
+use shiftkeel::tuning::{Hold, Sweep};
+
+/// From a motion to a step.
+pub fn channel(report: Report) {
+    let receiver = must(plans::receiver(Rapidity::from_bits(1_700_000_000_000)), "the receiver");
+    let transmitter = must(plans::transmitter(Rapidity::ZERO), "the transmitter");
+    let rapidity = |index| (sample::signed(index, 2.7e-5) * (1u64 << 60) as f64) as i64;
+    line(report, "Channel::step", rapidity, |rapidity| {
+        let mut channel = &receiver;
+        in_memory(&mut channel).step(Rapidity::from_bits(rapidity)).unwrap_or_default().to_bits()
+    });
+    line(report, "Channel::step,transmitting", rapidity, |rapidity| {
+        let mut channel = &transmitter;
+        in_memory(&mut channel).step(Rapidity::from_bits(rapidity)).unwrap_or_default().to_bits()
+    });
+    let rate = |index| (sample::range_rate(index) * 65536.0) as i32;
+    line(report, "Channel::step_for_range_rate", rate, |rate| {
+        let mut channel = &receiver;
+        in_memory(&mut channel).step_for_range_rate(I16F16::from_bits(rate)).unwrap_or_default().to_bits()
+    });
+}
+
+/// Steering from one motion to the next, and the tick of a firmware: table, channel, oscillator.
+pub fn steering(report: Report, table: &PassTable<'_>) {
+    let receiver = must(plans::receiver(Rapidity::from_bits(1_700_000_000_000)), "the receiver");
+    let transmitter = must(plans::transmitter(Rapidity::ZERO), "the transmitter");
+    // A motion within one interval of the next: a delay that creeps.
+    let motion = |(delay, rapidity): (i64, i64)| Motion {
+        delay: Delay::from_bits(delay),
+        rapidity: Rapidity::from_bits(rapidity),
+        rate: RapidityRate::from_bits(0),
+    };
+    let near = |index: u32| (i64::from(index) << 20, i64::from(index) << 30);
+    let mut sweep = must(Sweep::begin(&receiver, &motion(near(0))), "the first sweep");
+    line(report, "Sweep::step", near, |next| {
+        let mut channel = &receiver;
+        let swept = in_memory(&mut sweep).step(in_memory(&mut channel), &motion(next));
+        swept.map_or((0, 0), |swept| (swept.first.to_bits(), swept.ramp.to_bits()))
+    });
+    let mut hold = must(Hold::<32>::begin(&transmitter, &motion(near(0)), 0), "the first word");
+    line(report, "Hold::step", near, |next| {
+        let mut channel = &transmitter;
+        let held = in_memory(&mut hold).step(in_memory(&mut channel), &motion(next), false);
+        held.map_or(0, |held| held.word as u32)
+    });
+
+    // Repeats follow each other by one tick, as in a firmware, which also keeps the time.
+    const TICK: i64 = (1 << GpsTime::FRACTION_BITS) / plans::RATE as i64;
+    let mut time = instant(table, 0);
+    let first = table.at(GpsTime::from_bits(time)).unwrap_or_default();
+    let mut sweep = must(Sweep::begin(&receiver, &first), "the first sweep");
+    let mut oscillator = Nco::at_phase(0);
+    let mut missed = 0u32;
+    line(report, "tick=PassTable::at+Sweep::step+retune", |_| (), |()| {
+        let time = in_memory(&mut time);
+        *time += TICK;
+        let (mut table, mut channel) = (table, &receiver);
+        let swept = in_memory(&mut table)
+            .at(GpsTime::from_bits(*time))
+            .ok()
+            .and_then(|next| in_memory(&mut sweep).step(in_memory(&mut channel), &next).ok());
+        match swept {
+            Some(swept) => in_memory(&mut oscillator).retune(swept.first, swept.ramp),
+            None => missed += 1,
+        }
+    });
+    if missed != 0 {
+        console::fail("the ticks ran out of the pass: fewer repeats are needed");
+    }
+}
