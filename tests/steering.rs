@@ -57,10 +57,7 @@ fn software_oscillator() {
         let clock = 48_000;
         let clocks = 480;
         let channel = Channel::receive(
-            &RfPlan::direct(
-                Frequency::from_hertz(CARRIER).unwrap(),
-                Frequency::from_hertz(clock).unwrap(),
-            ),
+            &RfPlan::direct(Frequency::from_hertz(CARRIER).unwrap(), Frequency::from_hertz(clock).unwrap()),
             clocks,
         )
         .unwrap();
@@ -90,7 +87,9 @@ fn software_oscillator() {
             oscillator.retune(swept.first, swept.ramp);
             oscillator.advance(clocks.into());
             // The table's own phase: carrier times (time - delay).
-            let cycles_of_time = (u128::from(tick * u64::from(clocks)) * u128::from(CARRIER) % u128::from(clock)) as f64 / clock as f64;
+            let cycles_of_time = (u128::from(tick * u64::from(clocks)) * u128::from(CARRIER)
+                % u128::from(clock)) as f64
+                / clock as f64;
             let delay = (motion.delay.to_bits() - origin) as f64 * unit * CARRIER as f64;
             let phase = oscillator.phase() as f64 / 2f64.powi(64);
             let error = phase - (cycles_of_time - delay);
@@ -101,10 +100,14 @@ fn software_oscillator() {
             let _ = hertz;
             let end = PhaseStep::from_bits(sweep.end().to_bits());
             let own = channel.step(motion.rapidity).unwrap();
-            worst_frequency = worst_frequency
-                .max((end.to_bits().wrapping_sub(own.to_bits()) as i64 as f64 / 2f64.powi(64) * clock as f64).abs());
+            worst_frequency = worst_frequency.max(
+                (end.to_bits().wrapping_sub(own.to_bits()) as i64 as f64 / 2f64.powi(64) * clock as f64)
+                    .abs(),
+            );
         }
-        println!("ticks {ticks} phase {worst_phase:e} cycles, ends {worst_ends}, end step against own {worst_frequency:e} Hz");
+        println!(
+            "ticks {ticks} phase {worst_phase:e} cycles, ends {worst_ends}, end step against own {worst_frequency:e} Hz"
+        );
     });
 }
 
@@ -114,10 +117,7 @@ fn device() {
         let clock = 100_000_000;
         let clocks = 100_000;
         let channel = Channel::receive(
-            &RfPlan::direct(
-                Frequency::from_hertz(CARRIER).unwrap(),
-                Frequency::from_hertz(clock).unwrap(),
-            ),
+            &RfPlan::direct(Frequency::from_hertz(CARRIER).unwrap(), Frequency::from_hertz(clock).unwrap()),
             clocks,
         )
         .unwrap();
@@ -136,7 +136,9 @@ fn device() {
             let motion = table.at_fine(time, fraction).unwrap();
             let held = hold.step(&channel, &motion, false).unwrap();
             phase = phase.wrapping_add(held.step.to_bits().wrapping_mul(clocks.into()));
-            let cycles_of_time = (u128::from(tick * u64::from(clocks)) * u128::from(CARRIER) % u128::from(clock)) as f64 / clock as f64;
+            let cycles_of_time = (u128::from(tick * u64::from(clocks)) * u128::from(CARRIER)
+                % u128::from(clock)) as f64
+                / clock as f64;
             let delay = (motion.delay.to_bits() - origin) as f64 * 2f64.powi(-56) * CARRIER as f64;
             let error = phase as f64 / 2f64.powi(64) - (cycles_of_time - delay);
             worst_phase = worst_phase.max((error - error.round()).abs());

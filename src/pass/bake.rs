@@ -16,8 +16,8 @@ use super::chebyshev::{self, Cosines};
 use super::geometry::{Direction, Geometry, TaggedAt};
 use super::packing::checksum;
 use super::table::{
-    BASE_FRACTION, CELL_BITS, DEGREE, FIELDS, HEADER_WORDS, LAST_SHIFT, MAGIC, NOISE, PARTIAL_RECORD_WORDS,
-    PartialRecord, PassTable, RECORD_WORDS, SPAN_FRACTION, TableError, VERSION,
+    BASE_FRACTION, CELL_BITS, DEGREE, FIELDS, HEADER_WORDS, LEAST_FRACTION, LONGEST, MAGIC, MOST_FRACTION,
+    NOISE, PARTIAL_RECORD_WORDS, PartialRecord, PassTable, RECORD_WORDS, SPAN_FRACTION, TableError, VERSION,
 };
 use crate::time::GpsTime;
 
@@ -37,9 +37,8 @@ const STEEPEST: f64 = 1.0 / 8192.0;
 const LARGEST_ERROR: f64 = u32::MAX as f64 / (1u64 << 60) as f64;
 /// Most segments a table gets.
 const MOST_SEGMENTS: usize = 256;
-/// Least and most Q of the format.
-const LEAST_FRACTION: i32 = 24;
-const MOST_FRACTION: i32 = 46;
+/// Nodes stay below this.
+const LARGEST_NODE: f64 = (1u64 << 31) as f64;
 /// Values of Q that are tried, from the finest that holds the nodes.
 const FRACTION_TRIES: i32 = 3;
 
@@ -129,13 +128,13 @@ impl Units {
         libm::ldexp(1.0, self.cell as i32 - GpsTime::FRACTION_BITS as i32)
     }
 
-    /// A node in 2^-(Q-1) s over the base; `None` when it does not fit.
-    fn node(&self, delay: f64) -> Option<u32> {
+    /// A node in 2^-(Q-1) s from the base; `None` when it does not fit.
+    fn node(&self, delay: f64) -> Option<i32> {
         let scaled = libm::round(libm::ldexp(delay - self.base, self.fraction - 1));
-        (0.0..4_294_967_296.0).contains(&scaled).then_some(scaled as u32)
+        (scaled.abs() < LARGEST_NODE).then_some(scaled as i32)
     }
 
-    fn round(&self, series: &[f64; POINTS], nodes: [u32; 2]) -> Option<([i32; DEGREE + 1], [f64; POINTS])> {
+    fn round(&self, series: &[f64; POINTS], nodes: [i32; 2]) -> Option<([i32; DEGREE + 1], [f64; POINTS])> {
         let orders = FIELDS.map(|(coarser, width)| {
             (libm::ldexp(1.0, coarser - self.fraction), libm::ldexp(1.0, width as i32 - 1))
         });
@@ -196,7 +195,7 @@ fn cheapest(
     let finest = units_for(span, cell_for(span), delay)?;
     let mut best: Option<(Units, usize)> = None;
     let mut refusal = BakeError::TooManySegments;
-    let coarsest = (finest.fraction + 1 - FRACTION_TRIES).max(LEAST_FRACTION);
+    let coarsest = (finest.fraction + 1 - FRACTION_TRIES).max(LEAST_FRACTION as i32);
     for fraction in (coarsest..=finest.fraction).rev() {
         let units = Units { fraction, ..finest };
         match Layout::plan(&units, settings, span, delay, |_, _, _| Some(())) {
@@ -210,7 +209,7 @@ fn cheapest(
 
 /// log2, in 2^-30 s, of the smallest cell of which 1024 cover the span.
 fn cell_for(span: f64) -> u32 {
-    let mut cell = 20;
+    let mut cell = 21;
     while cell < 48 && libm::ldexp(1.0, cell as i32 - 30) * 1024.0 < span {
         cell += 1;
     }
@@ -229,11 +228,11 @@ fn units_for(span: f64, cell: u32, delay: &mut impl FnMut(f64) -> f64) -> Result
         least = least.min(value);
         most = most.max(value);
     }
-    let room = (most - least) * 0.02 + 1e-9;
-    let base =
-        libm::ldexp(libm::floor(libm::ldexp(least - room, BASE_FRACTION as i32)), -(BASE_FRACTION as i32));
-    let mut fraction = MOST_FRACTION;
-    while fraction > LEAST_FRACTION && libm::ldexp(most + room - base, fraction - 1) >= 4_294_967_295.0 {
+    let middle = libm::ldexp((least + most) / 2.0, BASE_FRACTION as i32);
+    let base = libm::ldexp(libm::floor(middle), -(BASE_FRACTION as i32));
+    let reach = (most - least) * 0.52 + 1e-7;
+    let mut fraction = MOST_FRACTION as i32;
+    while fraction > LEAST_FRACTION as i32 && libm::ldexp(reach, fraction - 1) >= LARGEST_NODE {
         fraction -= 1;
     }
     Ok(Units { fraction, base, cell })
@@ -250,17 +249,17 @@ impl Layout {
         settings: &BakeSettings,
         span: f64,
         delay: &mut impl FnMut(f64) -> f64,
-        mut keep: impl FnMut(u32, u32, &(Fit, [u32; 2])) -> Option<()>,
+        mut keep: impl FnMut(u32, u32, &(Fit, [i32; 2])) -> Option<()>,
     ) -> Result<(usize, Fit), BakeError> {
         // The last instant itself must lie inside a segment, not at its end.
         let cells = libm::floor(span / units.cell_seconds()) as u32 + 1;
         let mut first = 0;
-        let mut length: u32 = 15;
+        let mut length = LONGEST;
         let mut worst = Fit::default();
         for count in 1..=MOST_SEGMENTS {
             let left = cells - first;
             let covering = 32 - (left - 1).leading_zeros();
-            length = (length + 1).min(covering).min(15);
+            length = (length + 1).min(covering).min(LONGEST);
             let fitted = loop {
                 if let Some(fitted) = fit(units, settings, first, length, delay) {
                     break fitted;
@@ -291,7 +290,7 @@ fn fit(
     first: u32,
     length: u32,
     delay: &mut impl FnMut(f64) -> f64,
-) -> Option<(Fit, [u32; 2])> {
+) -> Option<(Fit, [i32; 2])> {
     let half = units.cell_seconds() * libm::ldexp(1.0, length as i32) / 2.0;
     let start = units.cell_seconds() * f64::from(first);
     let mut values = [0.0; POINTS];
@@ -312,7 +311,7 @@ fn fit(
         delay_error = delay_error.max(value.abs());
         slope_error = slope_error.max(slope.abs());
     }
-    let noise = libm::ldexp(f64::from(NOISE), -16 - units.fraction) + libm::ldexp(f64::from(LAST_SHIFT), -60);
+    let noise = libm::ldexp(f64::from(NOISE), -16 - units.fraction);
     let slope_error = (slope_error * factor + tail.1) / half;
     let delay_error = delay_error * factor + tail.0 + noise;
     let met = slope_error <= settings.slope_tolerance.min(LARGEST_ERROR)
@@ -411,9 +410,10 @@ fn fits(series: &[f64; POINTS], units: &Units, half: f64) -> bool {
         let square = (order * order) as f64;
         (slope + value.abs() * square, bend + value.abs() * square * (square - 1.0).max(0.0) / 3.0)
     });
-    // In the evaluation's argument, half as long: slope doubles, half the curvature doubles; a quarter is kept free.
+    // In the evaluation's argument, half as long: slope doubles, half the curvature doubles. Orders 1 and 0
+    // are held at twice and four times the resolution.
     let scale = libm::ldexp(1.0, units.fraction - 2);
-    bounds.0 < STEEPEST * half && bounds.0 * 2.0 * scale < 1.6e9 && bounds.1 * 2.0 * scale < 8.0e8
+    bounds.0 < STEEPEST * half && bounds.0 * 2.0 * scale < 1.0e9 && bounds.1 * 2.0 * scale < 8.0e8
 }
 
 /// Writes a whole table; returns its length in words.
@@ -443,8 +443,15 @@ fn write(
         let [start, end] = *nodes;
         let [_, _, c2, c3, c4, c5, c6, c7, c8, c9] = fit.coefficients;
         let joined = |high: i32, low: i32, bits: u32| (high as u32) << bits | low as u32 & ((1 << bits) - 1);
-        *record =
-            [start, c2 as u32, c3 as u32, joined(c4, c9, 10), joined(c5, c8, 12), joined(c6, c7, 15), end];
+        *record = [
+            start as u32,
+            c2 as u32,
+            c3 as u32,
+            joined(c4, c9, 10),
+            joined(c5, c8, 12),
+            joined(c6, c7, 15),
+            end as u32,
+        ];
         segment += 1;
         Some(())
     })?;

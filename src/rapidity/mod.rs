@@ -34,7 +34,7 @@ mod logarithm;
 mod motion;
 pub mod narrow;
 mod shift;
-mod wide_product;
+pub(crate) mod wide_product;
 
 pub use error::RapidityError;
 pub use from_speed::SPEED_OF_LIGHT;

@@ -39,7 +39,7 @@ impl Stored {
             ((words[13] & 0xFF) as i32, words[13] >> 8 & 0xFF, (words[13] >> 16) as usize);
         let directory = 15;
         let records = directory + count.next_power_of_two().max(2) / 2;
-        let node = |segment: usize| i128::from(words[records + 6 * segment]) << (1 + FINER);
+        let node = |segment: usize| i128::from(words[records + 6 * segment] as i32) << (1 + FINER);
         let segments = (0..count).map(|segment| {
             let entry = words[directory + segment / 2] >> (16 * (segment % 2)) & 0xFFFF;
             let record = &words[records + 6 * segment..];

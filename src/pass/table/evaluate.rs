@@ -2,34 +2,37 @@
 //!
 //! The local argument u runs from -1/2 to 1/2 over a segment. Its top 16 bits u0 go through three nested
 //! multiplications at once (value, slope, half the curvature); the rest d of the argument, below 2^-16, enters
-//! by Taylor: P(u0 + d) = P + d (P' + d P''/2), the next term being below 2^-63 s. A product with 16 bits is
-//! cheap on a core that has only a 32-bit multiplier.
+//! by Taylor: P(u0 + d) = P + d (P' + d P''/2), the next term being below 2^-59 s. A product with 16 bits is
+//! cheap on a core that has only a 32-bit multiplier, and one instruction on one with signal-processing ones.
 //!
-//! Units: orders 9 to 5 of the value in 2^-(Q+4) s in 32 bits (the fields' widths rule out overflow), orders
-//! 4 to 0 in 2^-(Q+14) s in 64 bits, slope and curvature in 2^-(Q-2) s in 32 bits.
+//! Units: orders 9 to 6 of the value in 2^-(Q+4) s (the fields' widths rule out overflow), orders 5 to 0 as a
+//! head in 2^-(Q-2) s and a tail in 2^-(Q+12) s, slope and curvature in 2^-(Q-2) s, all in 32 bits.
 
 use super::{CELL_BITS, HEADER_WORDS, RECORD_WORDS};
-use crate::rapidity::{Delay, Motion, Rapidity, RapidityRate, narrow};
+use crate::rapidity::{Delay, Motion, Rapidity, RapidityRate, narrow, wide_product::high_i32};
 
-/// Bound on what truncation adds to one evaluation, in 2^-(Q+16) s, beside [`LAST_SHIFT`].
+/// Bound on what truncation adds to one evaluation, in 2^-(Q+16) s.
 ///
 /// Every truncation makes its term smaller by less than one unit, and enters the result times u^k, |u| <= 1/2:
 ///
 /// | where | unit, in 2^-(Q+16) s | orders k | error for u > 0 | for u < 0 |
 /// |---|---|---|---|---|
-/// | 32-bit products | 2^12 | 8 to 5 | -240 to 0 | -80 to 160 |
-/// | 64-bit products | 4 | 4 to 0 | -8 to 0 | -6 to 3 |
+/// | products of the first part | 2^12 | 8 to 6 | -112 to 0 | -80 to 32 |
+/// | tail (2 units an order) | 16 | 5 to 0 | -63 to 0 | -42 to 21 |
 /// | slope (2 units an order, 3 in the bend) times d | 4 | | -28 to 2 | -22 to 8 |
-/// | product with d, Taylor's next term | 4, 2 | | -6 to 2 | -6 to 2 |
+/// | product with d, Taylor's next term | 18, 2 | | -20 to 2 | -20 to 2 |
 ///
-/// So one evaluation is off by -282 to 173 units, and two of them differ by at most the sum.
-pub(in crate::pass) const NOISE: u32 = 282;
+/// So one evaluation is off by -223 to 63 units, and two of them differ by at most the sum.
+pub(in crate::pass) const NOISE: u32 = 223;
 /// Bound on the difference of two evaluations' errors, in the same unit; see [`NOISE`].
-pub(super) const DIFFERENCE_NOISE: u32 = 455;
-/// What the last shift, to the delay's 2^-56 s, may cut off, in 2^-60 s.
-pub(in crate::pass) const LAST_SHIFT: u32 = 16;
-/// Least Q of the format.
-const LEAST_FRACTION: u32 = 24;
+const DIFFERENCE_NOISE: u32 = 286;
+/// Least and most Q of the format: the delay's units allow no other.
+pub(in crate::pass) const LEAST_FRACTION: u32 = 27;
+pub(in crate::pass) const MOST_FRACTION: u32 = 42;
+/// Fraction bits of the tail below the head.
+const TAIL: u32 = 14;
+/// Log2 of the longest segment in cells.
+pub(in crate::pass) const LONGEST: u32 = 12;
 
 /// What the header says about units, unpacked once.
 #[derive(Clone, Copy, Debug)]
@@ -61,8 +64,8 @@ impl Layout {
         let fraction = header[13] & 0xFF;
         let cell = header[13] >> 8 & 0xFF;
         let segments = header[13] >> 16;
-        let sane = (LEAST_FRACTION..=46).contains(&fraction)
-            && (20..=48).contains(&cell)
+        let sane = (LEAST_FRACTION..=MOST_FRACTION).contains(&fraction)
+            && (21..=48).contains(&cell)
             && (1..=1024).contains(&segments);
         // Down tagged at the ground, up tagged at the spacecraft and two-way read the receiver's time.
         let at_transmitter = matches!(header[0] & 7, 1 | 4);
@@ -85,47 +88,39 @@ impl Layout {
 
     /// Bound on the difference of two evaluations' errors in 2^-60 s.
     pub(super) fn difference_noise(&self) -> u32 {
-        let finest = DIFFERENCE_NOISE << (60 - 16 - LEAST_FRACTION);
-        (finest >> self.fraction().saturating_sub(LEAST_FRACTION)) + LAST_SHIFT
+        DIFFERENCE_NOISE << (44 - u32::from(self.fraction).min(44))
     }
 
     /// Bound on what the evaluation adds to a rapidity in 2^-60: 7 units of the slope a segment (see [`NOISE`]),
     /// `shortest` being the log2 of the shortest segment in cells, and the kernel's rounding to 2^-44.
     pub(super) fn rapidity_noise(&self, shortest: u32) -> u32 {
         let seconds = i32::from(self.cell) + shortest as i32;
-        let slope = shifted(7, 60 + 2 - i32::from(self.fraction) - seconds).min(i64::from(u32::MAX >> 1));
-        slope as u32 + (3 << 15)
+        let places = (60 + 2 - i32::from(self.fraction) - seconds).clamp(0, 28);
+        (7 << places) + (3 << 15)
     }
 
     /// Finds the segment of a time since the epoch, in 2^-30 s, by a search of fixed depth.
     #[inline]
     pub(super) fn locate(&self, directory: &[u32], elapsed: i64, fraction: u32) -> Place {
-        let aligned = (elapsed as u64) << self.align | (u64::from(fraction) << self.align) >> 32;
-        let key = ((aligned >> 48) as u32) | 0xF;
-        let entry = |index: u32| {
-            let word = directory.get((index / 2) as usize).copied().unwrap_or(u32::MAX);
-            word >> (16 * (index % 2)) & 0xFFFF
-        };
+        // The top 12 bits are the cell; the shift is below 32.
+        let aligned = shifted_left(elapsed as u64, self.align) | (u64::from(fraction) << self.align) >> 32;
+        let key = (aligned >> 32) as u32 | 0xF_FFFF;
         let mut segment = 0;
         let mut step = u32::from(self.entries / 2);
         while step != 0 {
-            // All ones when the entry is beyond the key.
-            let beyond = (key.wrapping_sub(entry(segment + step)) as i32 >> 31) as u32;
-            segment += step & !beyond;
+            segment += step & not_above(entry(directory, segment + step), key);
             step /= 2;
         }
-        let found = entry(segment);
-        let length = found & 0xF;
-        // A segment is never longer than a table; a damaged directory's longer ones wrap here.
-        let local = aligned
-            .wrapping_sub(u64::from(found >> 4) << (64 - CELL_BITS))
-            .wrapping_shl(CELL_BITS.wrapping_sub(length));
-        let argument = local ^ (1 << 63);
+        let found = entry(directory, segment);
+        let length = found >> 16 & 0xF;
+        let start = u64::from(found >> (32 - CELL_BITS)) << (64 - CELL_BITS);
+        let local = shifted_left(aligned.wrapping_sub(start), CELL_BITS.wrapping_sub(length) as u8);
+        let head = (local >> 32) as u32 ^ 1 << 31;
         Place {
             segment: segment as usize,
             length,
-            coarse: (argument >> 32) as i32 >> 16,
-            rest: (argument >> 16) as u32,
+            coarse: head as i32 >> 16,
+            rest: head << 16 | (local >> 16) as u16 as u32,
         }
     }
 
@@ -138,39 +133,76 @@ impl Layout {
         let (c6, c5, c4) = ((sixth as i32) >> 15, (fifth as i32) >> 12, (fourth as i32) >> 10);
         let (c3, c2) = (third as i32, second as i32);
 
-        // Orders 9 to 5: value a, slope b, half curvature c.
+        // Orders 9 to 6: value a, slope b, half curvature c.
         let mut a = c9 >> 3;
         let mut b = a >> 6;
         a = times(a, u).wrapping_add(c8 >> 3);
         let mut c = b;
         b = times(b, u).wrapping_add(a >> 6);
-        for coefficient in [c7 >> 1, c6 << 14, c5 << 11] {
+        for coefficient in [c7 >> 1, c6 << 14] {
             a = times(a, u).wrapping_add(coefficient);
             c = times(c, u).wrapping_add(b);
             b = times(b, u).wrapping_add(a >> 6);
         }
-        // Orders 4 to 2 in 64 bits.
-        let mut long = i64::from(a) << 10;
-        for coefficient in [i64::from(c4) << 20, i64::from(c3) << 17, i64::from(c2) << 16] {
-            long = times_long(long, u).wrapping_add(coefficient);
-            c = times(c, u).wrapping_add(b);
-            b = times(b, u).wrapping_add((long >> 16) as i32);
-        }
-        // Orders 1 and 0 from the nodes.
+        // Orders 1 and 0 from the nodes, so that neighbours meet.
         let odd = c3.wrapping_add((c5.wrapping_add((c7 >> 17) << 3).wrapping_add((c9 >> 22) << 4)) << 2);
         let even = c2.wrapping_add((c4.wrapping_add(c6 << 2).wrapping_add((c8 >> 20) << 3)) << 2);
-        let first = i64::from(end).wrapping_sub(i64::from(start)).wrapping_sub(i64::from(odd));
-        let zeroth = i64::from(end).wrapping_add(i64::from(start)).wrapping_sub(i64::from(even));
-        long = times_long(long, u).wrapping_add(first << 15);
+        let first = (end.wrapping_sub(start) as i32).wrapping_sub(odd);
+        let zeroth =
+            i64::from(end as i32).wrapping_add(i64::from(start as i32)).wrapping_sub(i64::from(even));
+        // Orders 5 to 0 as head and tail.
+        let mut long = Long { head: a >> 6, tail: (a & 63) << 8 };
+        for coefficient in [c5 << 5, c4 << 4, c3 << 1, c2] {
+            long = long.times(u);
+            long.head = long.head.wrapping_add(coefficient);
+            c = times(c, u).wrapping_add(b);
+            b = times(b, u).wrapping_add(long.head);
+        }
+        long = long.times(u);
+        long.head = long.head.wrapping_add(first >> 1);
+        long.tail = long.tail.wrapping_add((first & 1) << (TAIL - 1));
         c = times(c, u).wrapping_add(b);
-        b = times(b, u).wrapping_add((long >> 16) as i32);
-        long = times_long(long, u).wrapping_add(zeroth << 14);
+        b = times(b, u).wrapping_add(long.head);
+        long = long.times(u);
+        long.head = long.head.wrapping_add((zeroth >> 2) as i32);
+        long.tail = long.tail.wrapping_add((zeroth as i32 & 3) << (TAIL - 2));
 
-        // The rest of the argument.
-        let bend = (c >> 16).wrapping_mul((place.rest >> 16) as i32) >> 16;
-        long = long.wrapping_add(high_part(b.wrapping_add(bend), place.rest));
-        let slope = b.wrapping_add(bend).wrapping_add(bend);
+        // The rest of the argument, in 2^-48: below 2^-16.
+        let half_rest = (place.rest >> 1) as i32;
+        let bend = (c >> 16).wrapping_mul(half_rest >> 15) >> 16;
+        let taylor = high_i32(b.wrapping_add(bend), half_rest) >> 1;
+        long.tail = long.tail.wrapping_add(taylor);
+        let slope = b.wrapping_add(bend << 1);
         self.scale(long, slope, c, place.length, base)
+    }
+
+    /// From the segment's units to seconds and pure numbers.
+    #[inline]
+    fn scale(&self, value: Long, slope: i32, bend: i32, length: u32, base: i64) -> Motion {
+        let fraction = i32::from(self.fraction);
+        let seconds = i32::from(self.cell) + length as i32;
+        let tail_shift = (Delay::FRACTION_BITS - 12).wrapping_sub(u32::from(self.fraction));
+        let delay = widened(value.head, tail_shift.wrapping_add(TAIL))
+            .wrapping_add(widened(value.tail, tail_shift))
+            .wrapping_add(base);
+        // Slope in 2^-44, which is what the narrow logarithm takes.
+        let narrow_slope = shifted(slope, 44 + 2 - fraction - seconds);
+        let signed = (narrow_slope ^ self.negate).wrapping_sub(self.negate);
+        let rapidity = narrow::rapidity_of_slope(signed);
+        let rapidity = (rapidity ^ self.negate).wrapping_sub(self.negate);
+        // Rate in 2^-48 per second: two for the whole curvature, and the segment's length squared.
+        let rate = shifted(bend, 48 + 1 + 2 - fraction - 2 * seconds).wrapping_neg();
+        Motion {
+            delay: Delay::from_bits(delay),
+            rapidity: Rapidity::from_bits(i64::from(rapidity) << 16),
+            rate: RapidityRate::from_bits(i64::from(rate) << 12),
+        }
+    }
+
+    /// A slope per segment, per second.
+    pub(super) fn per_second(&self, slope: i64, length: u32) -> i64 {
+        let seconds = i32::from(self.cell) + length as i32;
+        if seconds < 0 { slope << -seconds } else { slope >> seconds }
     }
 
     /// Half of a segment's length in seconds.
@@ -188,54 +220,83 @@ impl Layout {
         let unit = libm::ldexp(1.0, 2 - i32::from(self.fraction));
         (unit / (2.0 * self.half_length(shortest))).max(libm::ldexp(1.0, -44))
     }
+}
 
-    /// A slope per segment, per second.
-    pub(super) fn per_second(&self, slope: i64, length: u32) -> i64 {
-        shifted(slope, -(i32::from(self.cell) + length as i32))
-    }
+/// A number in two parts: head in 2^-(Q-2), tail in 2^-14 of that, not normalised (within 2^16 until the end).
+#[derive(Clone, Copy)]
+struct Long {
+    head: i32,
+    tail: i32,
+}
 
-    /// From the segment's units to seconds and pure numbers.
-    #[inline]
-    fn scale(&self, value: i64, slope: i32, bend: i32, length: u32, base: i64) -> Motion {
-        let fraction = i32::from(self.fraction);
-        let seconds = i32::from(self.cell) + length as i32;
-        let delay = shifted(value, Delay::FRACTION_BITS as i32 - 14 - fraction).wrapping_add(base);
-        // Slope in 2^-44.
-        let narrow_slope = shifted(i64::from(slope) << 24, 44 - 24 + 2 - fraction - seconds) as i32;
-        let signed = (narrow_slope ^ self.negate).wrapping_sub(self.negate);
-        let rapidity = narrow::rapidity_of_slope(signed);
-        let rapidity = (rapidity ^ self.negate).wrapping_sub(self.negate);
-        let rate = shifted(i64::from(bend), 60 + 1 + 2 - fraction - 2 * seconds).wrapping_neg();
-        Motion {
-            delay: Delay::from_bits(delay),
-            rapidity: Rapidity::from_bits(i64::from(rapidity) << 16),
-            rate: RapidityRate::from_bits(rate),
-        }
+impl Long {
+    /// Times a 16-bit fraction.
+    #[inline(always)]
+    fn times(self, u: i32) -> Self {
+        let (head, rest) = times_with_rest(self.head, u);
+        Self { head, tail: (rest >> (16 - TAIL)).wrapping_add(self.tail.wrapping_mul(u) >> 16) }
     }
 }
+
+/// An entry of the directory in its upper half word; the lower half is whatever stands beside it.
+#[inline(always)]
+fn entry(directory: &[u32], index: u32) -> u32 {
+    let word = directory.get((index >> 1) as usize).copied().unwrap_or(u32::MAX);
+    word << (16 * (!index & 1))
+}
+
+/// All ones when `entry` is not above `key`, else zero.
+#[inline(always)]
+fn not_above(entry: u32, key: u32) -> u32 {
+    !((u64::from(key).wrapping_sub(u64::from(entry)) >> 32) as u32)
+}
+
+/// Whether the target multiplies 32 by 32 bits to 32 only (Armv6-M, told here by its lack of atomics).
+const SHORT_PRODUCTS: bool = cfg!(all(target_arch = "arm", not(target_has_atomic = "32")));
 
 /// `value` times a 16-bit fraction: floor(value u / 2^16).
 #[inline(always)]
 fn times(value: i32, u: i32) -> i32 {
-    ((i64::from(value) * i64::from(u)) >> 16) as i32
+    times_with_rest(value, u).0
 }
 
-/// The same for 64 bits; |value| < 2^48.
+/// The same, and the 16 bits below.
+#[inline(always)]
+fn times_with_rest(value: i32, u: i32) -> (i32, i32) {
+    if SHORT_PRODUCTS {
+        let low = (value & 0xFFFF).wrapping_mul(u);
+        return ((value >> 16).wrapping_mul(u).wrapping_add(low >> 16), low & 0xFFFF);
+    }
+    (((i64::from(value) * i64::from(u)) >> 16) as i32, value.wrapping_mul(u) & 0xFFFF)
+}
+
+/// `value` times a 16-bit fraction in 64 bits; |value| < 2^48.
 #[inline(always)]
 pub(super) fn times_long(value: i64, u: i32) -> i64 {
     value.wrapping_mul(i64::from(u)) >> 16
 }
 
-/// floor(value rest / 2^32).
+/// Shifted left by `places`, 0 to 31.
 #[inline(always)]
-fn high_part(value: i32, rest: u32) -> i64 {
-    (i64::from(value) * i64::from(rest)) >> 32
+fn shifted_left(value: u64, places: u8) -> u64 {
+    let places = u32::from(places) & 31;
+    let (high, low) = ((value >> 32) as u32, value as u32);
+    let carried = (low >> 1) >> (31 - places);
+    u64::from(high << places | carried) << 32 | u64::from(low << places)
 }
 
-/// Shifted left by `places`, or right when negative; within +-63.
+/// A 32-bit number shifted left into 64 bits by `places`, 1 to 31.
 #[inline(always)]
-fn shifted(value: i64, places: i32) -> i64 {
+fn widened(value: i32, places: u32) -> i64 {
+    let places = places & 31;
+    let high = (value >> 1) >> (31 - places);
+    i64::from(high) << 32 | i64::from((value as u32) << places)
+}
+
+/// Shifted left by `places`, or right when negative; within +-31.
+#[inline(always)]
+fn shifted(value: i32, places: i32) -> i32 {
     let left = places & !(places >> 31);
     let right = places.wrapping_neg() & (places >> 31);
-    (value << left) >> right
+    (value << (left & 31)) >> (right & 31)
 }

@@ -74,8 +74,9 @@ impl PassTable<'_> {
             }
         }
         let [even, odd] = sums;
-        series[0] = (f64::from(start) + f64::from(end)) * unit - even;
-        series[1] = (f64::from(end) - f64::from(start)) * unit - odd;
+        let (start, end) = (f64::from(start as i32), f64::from(end as i32));
+        series[0] = (start + end) * unit - even;
+        series[1] = (end - start) * unit - odd;
         let entry = self.directory.get(segment / 2).map_or(0, |word| word >> (16 * (segment % 2)));
         (series, self.layout.half_length(entry & 0xF))
     }

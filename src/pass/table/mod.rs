@@ -20,7 +20,7 @@
 //! | partial | optional, see `lateness` |
 //! | last | CRC-32 of all before |
 //!
-//! A segment's record is a node (delay at its start over the base, in 2^-(Q-1) s) and the coefficients 2 to 9
+//! A segment's record is a node (delay at its start from the base, signed, in 2^-(Q-1) s) and the coefficients 2 to 9
 //! of the polynomial in v from -1 to 1; the coefficients 0 and 1 follow from the two nodes, so neighbours meet
 //! exactly. Coefficient k is stored in 2^(s-Q) s with s and the field's width from [`FIELDS`].
 
@@ -35,7 +35,7 @@ use crate::time::GpsTime;
 
 pub use extremes::MotionExtremes;
 
-pub(super) use evaluate::{LAST_SHIFT, NOISE};
+pub(super) use evaluate::{LEAST_FRACTION, LONGEST, MOST_FRACTION, NOISE};
 pub(super) use lateness::{PARTIAL_RECORD_WORDS, PartialRecord};
 
 pub(super) const MAGIC: u32 = 0x4B54;
