@@ -81,7 +81,7 @@ fn software_oscillator() {
             let motion = table.at_fine(time, fraction).unwrap();
             let swept = sweep.step(&channel, &motion).unwrap();
             if let Some(end) = last_end {
-                worst_ends = worst_ends.max(swept.start.to_bits().abs_diff(end));
+                worst_ends = worst_ends.max(swept.start().to_bits().abs_diff(end));
             }
             last_end = Some(sweep.end().to_bits());
             oscillator.retune(swept.first, swept.ramp);
@@ -95,7 +95,7 @@ fn software_oscillator() {
             let error = phase - (cycles_of_time - delay);
             let error = error - error.round();
             worst_phase = worst_phase.max(error.abs());
-            let offset = swept.start.to_bits().wrapping_sub(channel.nominal_step().to_bits()) as i64;
+            let offset = swept.start().to_bits().wrapping_sub(channel.nominal_step().to_bits()) as i64;
             let hertz = offset as f64 / 2f64.powi(64) * clock as f64;
             let _ = hertz;
             let end = PhaseStep::from_bits(sweep.end().to_bits());

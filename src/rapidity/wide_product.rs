@@ -47,6 +47,34 @@ pub(crate) const fn product_i32(a: i32, b: i32) -> i64 {
     (high_i32(a, b) as i64) << 32 | a.wrapping_mul(b) as u32 as i64
 }
 
+/// a b of an unsigned and a signed word.
+#[inline(always)]
+pub(crate) const fn product_u32_i32(a: u32, b: i32) -> i64 {
+    (high_u32_i32(a, b) as i64) << 32 | a.wrapping_mul(b as u32) as i64
+}
+
+/// floor(a b / 2^32) of a signed double word and an unsigned word.
+#[inline(always)]
+pub(crate) const fn high_i64_u32(a: i64, b: u32) -> i64 {
+    product_u32_i32(b, (a >> 32) as i32).wrapping_add(high_u32(a as u32, b) as i64)
+}
+
+/// floor(a / 2^places), `places` from 0 to 31, without the compiler's routine for any number of places.
+#[inline(always)]
+pub(crate) const fn shifted_right(a: i64, places: u32) -> i64 {
+    let places = places & 31;
+    let carried = ((a >> 32) as u32) << 1 << (31 - places);
+    (((a >> 32) as i32 >> places) as i64) << 32 | (a as u32 >> places | carried) as i64
+}
+
+/// a 2^places modulo 2^64, `places` from 0 to 31.
+#[inline(always)]
+pub(crate) const fn shifted_left(a: u64, places: u32) -> u64 {
+    let places = places & 31;
+    let carried = (a as u32 >> 1) >> (31 - places);
+    ((((a >> 32) as u32) << places | carried) as u64) << 32 | ((a as u32) << places) as u64
+}
+
 /// floor(a b / 2^32) of a signed double word and a signed word.
 pub(crate) const fn high_i64_i32(a: i64, b: i32) -> i64 {
     product_i32((a >> 32) as i32, b).wrapping_add(high_u32_i32(a as u32, b) as i64)

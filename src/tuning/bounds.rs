@@ -167,7 +167,8 @@ impl Proven {
         let interval = steering.interval();
         // A chord misses a curve by h^2/8 of its second derivative, and the phase of a trapezoid by h^3/12.
         let bend = steering.carrier * extremes.jerk * interval * interval;
-        let unit = steering.clock * channel.ramp_resolution();
+        let change = steering.carrier * extremes.rate * interval / steering.clock;
+        let unit = steering.clock * channel.ramp_resolution(change);
         let ramp =
             Bound { hertz: bend * (1.0 / 8.0 + 1.0 / 12.0) + unit, cycles: (bend / 12.0 + unit) * interval };
         Self::of_table(channel, table, steering, &extremes).with(ProvenPart::Ramp, ramp)

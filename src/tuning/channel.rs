@@ -7,10 +7,8 @@ use super::plan::Folded;
 use super::{Injection, Permission, RfPlan, TuningError};
 use crate::frequency::{ClockRatio, Frequency, PhaseStep, divide_nearest};
 use crate::rapidity::narrow::{first_order_range_rate, offset_of_rapidity};
+use crate::rapidity::wide_product::{high_i64_u32, product_u32, shifted_right};
 use crate::rapidity::{Delay, Rapidity};
-
-/// log2 of the steepest rapidity rate that a ramp follows, per second: 7.6e-6/s, ten times a low orbit's.
-const STEEPEST: i32 = -17;
 
 /// A channel that is steered every so many clocks: receiving (`RADIATES` false) or transmitting (true).
 ///
@@ -42,40 +40,28 @@ pub struct Channel<const RADIATES: bool> {
 #[derive(Clone, Copy, Debug)]
 pub(super) struct RampUnits {
     pub(super) clocks: u32,
-    /// 2^(32 + drop - unit) / clocks.
+    /// 2^(31 + shift) / clocks, rounded down: above 2^30.
     reciprocal: u32,
-    /// Bits of the change that are dropped.
-    drop: u8,
-    /// log2 of the ramp's unit.
-    unit: u8,
+    /// floor(log2 clocks).
+    shift: u8,
 }
 
 impl RampUnits {
-    fn new(clocks: u32, wanted_bits: i32) -> Self {
-        let drop = (wanted_bits - 30).clamp(0, 40);
-        let log_clocks = clocks.ilog2() as i32;
-        let unit = (drop - log_clocks).max(1);
-        let (reciprocal, _) = divide_nearest(1 << (32 + drop - unit), u64::from(clocks));
-        Self {
-            clocks,
-            reciprocal: u32::try_from(reciprocal).unwrap_or(u32::MAX),
-            drop: drop as u8,
-            unit: unit as u8,
-        }
+    fn new(clocks: u32) -> Self {
+        let shift = clocks.ilog2();
+        let (reciprocal, _) = divide_nearest(1 << (31 + shift), u64::from(clocks));
+        Self { clocks, reciprocal: reciprocal as u32, shift: shift as u8 }
     }
 
-    /// The even ramp per clock closest to `change` over an interval, and the change that it really makes;
-    /// `None` when the change is beyond what a ramp follows.
+    /// An even ramp per clock that makes `change` over an interval, and the change that it really makes: less by
+    /// up to two units a clock and 2^-30 of it.
     #[inline]
-    pub(super) fn ramp(&self, change: i64) -> Option<(i64, i64)> {
-        let dropped = change >> self.drop;
-        let narrow = dropped as i32;
-        if i64::from(narrow) != dropped {
-            return None;
-        }
-        let count = (i64::from(narrow).wrapping_mul(i64::from(self.reciprocal)) >> 32) as i32;
-        let made = i64::from(count).wrapping_mul(i64::from(self.clocks)) << self.unit;
-        Some((i64::from(count) << self.unit, made))
+    pub(super) fn ramp(&self, change: i64) -> (i64, i64) {
+        let half = shifted_right(high_i64_u32(change, self.reciprocal), u32::from(self.shift));
+        let ramp = half << 1;
+        let made = product_u32(self.clocks, ramp as u32)
+            .wrapping_add(u64::from(self.clocks.wrapping_mul((ramp >> 32) as u32)) << 32);
+        (ramp, made as i64)
     }
 }
 
@@ -137,29 +123,28 @@ impl Channel<true> {
 impl<const RADIATES: bool> Channel<RADIATES> {
     fn new(plan: &RfPlan<'_>, folded: &Folded, clocks: u32, fraction_bits: i32) -> Result<Self, TuningError> {
         let clock = plan.clock.to_bits();
-        let (seconds, fraction) = divide_nearest(u128::from(clocks) << 24, clock);
-        if clocks == 0 || seconds >= 60 || (seconds == 0 && fraction == 0) {
+        let (seconds, rest) = divide_nearest(u128::from(clocks) << 24, clock);
+        // The interval in 2^-64 s, and the power of two of a second that it is below.
+        let interval = seconds << 64 | u128::from(rest);
+        if clocks == 0 || seconds >= 60 || interval == 0 {
             return Err(TuningError::IntervalNotUsable);
         }
-        // The interval is below 2^log_interval seconds.
-        let log_interval = 64 - (seconds << 64 | u128::from(fraction)).leading_zeros() as i32;
+        let log_interval = 64 - interval.leading_zeros() as i32;
         let delay_shift = (log_interval + 13).clamp(0, 30);
-        let (whole, fraction) = divide_nearest(folded.carrier as u128, clock);
-        let by_offset = Gain::new(whole, fraction, fraction_bits - 44 - 56);
-        let log_gain = 128 - whole.leading_zeros() as i32 - 56;
-        let (per_metre, _) = divide_nearest(folded.carrier as u128, 299_792_458);
-        let (whole, fraction) = divide_nearest(per_metre, clock);
-        let by_range_rate = Gain::new(whole, fraction, fraction_bits - 16 - 56);
-        let (whole, fraction) = divide_nearest(folded.true_carrier as u128, u64::from(clocks));
-        let delay_exponent = fraction_bits - Delay::FRACTION_BITS as i32 + delay_shift - 80;
+        let by_delay = divide_nearest(folded.true_carrier as u128, u64::from(clocks));
+        let by_offset = divide_nearest(folded.carrier as u128, clock);
+        let per_metre = divide_nearest(folded.carrier as u128, 299_792_458).0;
+        let by_range_rate = divide_nearest(per_metre, clock);
+        let delay_units = Delay::FRACTION_BITS as i32 - delay_shift;
         Ok(Self {
             nominal: nominal(folded, clock, fraction_bits)?,
-            by_offset,
-            by_range_rate,
-            by_delay: Gain::new(whole, fraction, delay_exponent),
+            // The quotients are in 2^-56 cycle per clock, by the delay in 2^-80 Hz.
+            by_offset: Gain::new(by_offset, fraction_bits - 44 - 56),
+            by_range_rate: Gain::new(by_range_rate, fraction_bits - 16 - 56),
+            by_delay: Gain::new(by_delay, fraction_bits - delay_units - 80),
             delay_shift: delay_shift as u8,
             mirror: -i64::from(plan.injection == Injection::HighSide),
-            ramp: RampUnits::new(clocks, fraction_bits + STEEPEST + log_gain + log_interval),
+            ramp: RampUnits::new(clocks),
             fence: (0, 0),
             clock_hertz: clock >> 24,
         })
@@ -176,7 +161,7 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     /// The step that a rapidity asks for: W0 + Wf expm1(L), with -L for a transmitter.
     ///
     /// # Accuracy
-    /// 0.6 units of 2^-44 of the carrier (0.015 mHz at 437 MHz) and 2^-31 of the shift (`tests/channel.rs`).
+    /// 1.6 units of 2^-44 of the carrier (0.04 mHz at 437 MHz) and 2^-31 of the shift (`tests/channel.rs`).
     ///
     /// # Errors
     /// [`TuningError::TooFast`] beyond 2^-13 or saturated; [`TuningError::OutsideFence`] for a transmitter.
@@ -209,7 +194,7 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     /// A delay without the bits that the channel does not use; differences of these never accumulate.
     #[inline]
     pub(super) fn truncated(&self, delay: Delay) -> i32 {
-        (delay.to_bits() >> self.delay_shift) as i32
+        shifted_right(delay.to_bits(), u32::from(self.delay_shift)) as i32
     }
 
     /// What dropping bits of the delay can add to a difference, in seconds.
@@ -217,10 +202,10 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         libm::ldexp(1.0, i32::from(self.delay_shift) - Delay::FRACTION_BITS as i32)
     }
 
-    /// What rounding the ramp can add to the step within an interval, in cycles per clock.
-    pub(super) fn ramp_resolution(&self) -> f64 {
-        libm::ldexp(f64::from(self.ramp.clocks), i32::from(self.ramp.unit) - 64)
-            + libm::ldexp(1.0, i32::from(self.ramp.drop) - 64)
+    /// What rounding the ramp can add to the step within an interval, in cycles per clock, when the step changes
+    /// by `change` cycles per clock.
+    pub(super) fn ramp_resolution(&self, change: f64) -> f64 {
+        libm::ldexp(f64::from(self.ramp.clocks), 1 - 64) + libm::ldexp(change, -29)
     }
 
     /// The mean step over an interval between two truncated delays: exact in phase.
@@ -260,12 +245,12 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     }
 }
 
-/// To 44 fraction bits, rounded to the nearest.
+/// To 44 fraction bits, rounded down.
 #[inline]
-pub(super) fn narrowed(rapidity: Rapidity) -> Result<i32, TuningError> {
-    let rounded = rapidity.to_bits().saturating_add(1 << 15) >> 16;
-    let narrow = rounded as i32;
-    if i64::from(narrow) == rounded { Ok(narrow) } else { Err(TuningError::TooFast) }
+fn narrowed(rapidity: Rapidity) -> Result<i32, TuningError> {
+    let narrow = (rapidity.to_bits() >> 16) as i32;
+    let above = (rapidity.to_bits() >> 47) as i32;
+    if above == narrow >> 31 { Ok(narrow) } else { Err(TuningError::TooFast) }
 }
 
 /// W0, modulo one cycle for a phase step, range-checked for a ratio.

@@ -4,7 +4,6 @@
 //! the word for its start, and none on average. What rounding to the device's bits leaves over is carried into
 //! the next interval, so even a coarse device has the exact mean frequency and the exact phase.
 
-use super::channel::narrowed;
 use super::{Channel, TuningError};
 use crate::frequency::PhaseStep;
 use crate::rapidity::Motion;
@@ -72,7 +71,9 @@ impl<const BITS: u32> Hold<BITS> {
         next: &Motion,
         quiet: bool,
     ) -> Result<Held, TuningError> {
-        narrowed(next.rapidity)?;
+        if next.rapidity.is_saturated() {
+            return Err(TuningError::TooFast);
+        }
         let delay = channel.truncated(next.delay);
         let mean = channel.mean(self.delay, delay);
         let away = mean.wrapping_sub(self.current().to_bits()) as i64;

@@ -7,9 +7,9 @@
 //! `s1 = m + e + (w - s0) / 2`
 //!
 //! is the mean of the end that lands exactly on the model's phase and the model's own end. The first alone
-//! rings for ever, the second alone drifts; together they forget an error after two intervals (the recursion's
-//! matrix is nilpotent), and the phase at an interval's end is off by half of what a straight line cannot
-//! follow of the model inside that one interval.
+//! rings for ever, the second alone drifts; together they give s1 = w + 2 e' with an e' that depends on this
+//! interval only: the phase at its end is off by half of what a straight line between the model's own ends
+//! cannot follow of the model inside it, and an error is forgotten after two intervals.
 
 use super::{Channel, TuningError};
 use crate::frequency::{PhaseRamp, PhaseStep};
@@ -49,14 +49,17 @@ pub struct Sweep {
 /// What an interval's oscillator is given.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Swept {
-    /// Step at the interval's start: where the last one ended.
-    pub start: PhaseStep,
     /// Step of the first clock (half a clock's ramp on), for an accumulator that adds, then ramps.
     pub first: PhaseStep,
     /// Change of the step at every clock.
     pub ramp: PhaseRamp,
-    /// Change of the step over the interval, in 2^-64 cycle per clock: for a device that sweeps by step and dwell.
-    pub change: i64,
+}
+
+impl Swept {
+    /// Step at the interval's start: where the last one ended.
+    pub const fn start(&self) -> PhaseStep {
+        PhaseStep::from_bits(self.first.to_bits().wrapping_sub((self.ramp.to_bits() >> 1) as u64))
+    }
 }
 
 impl Sweep {
@@ -100,16 +103,15 @@ impl Sweep {
         let wanted = mean.wrapping_add(self.remainder as u64);
         let half = (own.wrapping_sub(start) as i64) >> 1;
         let change = wanted.wrapping_add(half as u64).wrapping_sub(start) as i64;
-        let (ramp, made) = channel.ramp.ramp(change).ok_or(TuningError::TooFast)?;
-        channel.permitted(start.wrapping_add(made as u64))?;
-        self.end = start.wrapping_add(made as u64);
+        let (ramp, made) = channel.ramp.ramp(change);
+        let end = start.wrapping_add(made as u64);
+        channel.permitted(end)?;
+        self.end = end;
         self.remainder = wanted.wrapping_sub(start).wrapping_sub((made >> 1) as u64) as i64;
         self.delay = delay;
         Ok(Swept {
-            start: PhaseStep::from_bits(start),
             first: PhaseStep::from_bits(start.wrapping_add((ramp >> 1) as u64)),
             ramp: PhaseRamp::from_bits(ramp),
-            change: made,
         })
     }
 }

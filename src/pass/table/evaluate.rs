@@ -9,7 +9,10 @@
 //! head in 2^-(Q-2) s and a tail in 2^-(Q+12) s, slope and curvature in 2^-(Q-2) s, all in 32 bits.
 
 use super::{CELL_BITS, HEADER_WORDS, RECORD_WORDS};
-use crate::rapidity::{Delay, Motion, Rapidity, RapidityRate, narrow, wide_product::high_i32};
+use crate::rapidity::{
+    Delay, Motion, Rapidity, RapidityRate, narrow,
+    wide_product::{high_i32, shifted_left},
+};
 
 /// Bound on what truncation adds to one evaluation, in 2^-(Q+16) s.
 ///
@@ -28,7 +31,7 @@ pub(in crate::pass) const NOISE: u32 = 223;
 const DIFFERENCE_NOISE: u32 = 286;
 /// Least and most Q of the format: the delay's units allow no other.
 pub(in crate::pass) const LEAST_FRACTION: u32 = 27;
-pub(in crate::pass) const MOST_FRACTION: u32 = 42;
+pub(in crate::pass) const MOST_FRACTION: u32 = 44;
 /// Fraction bits of the tail below the head.
 const TAIL: u32 = 14;
 /// Log2 of the longest segment in cells.
@@ -103,7 +106,8 @@ impl Layout {
     #[inline]
     pub(super) fn locate(&self, directory: &[u32], elapsed: i64, fraction: u32) -> Place {
         // The top 12 bits are the cell; the shift is below 32.
-        let aligned = shifted_left(elapsed as u64, self.align) | (u64::from(fraction) << self.align) >> 32;
+        let aligned =
+            shifted_left(elapsed as u64, u32::from(self.align)) | (u64::from(fraction) << self.align) >> 32;
         let key = (aligned >> 32) as u32 | 0xF_FFFF;
         let mut segment = 0;
         let mut step = u32::from(self.entries / 2);
@@ -114,7 +118,7 @@ impl Layout {
         let found = entry(directory, segment);
         let length = found >> 16 & 0xF;
         let start = u64::from(found >> (32 - CELL_BITS)) << (64 - CELL_BITS);
-        let local = shifted_left(aligned.wrapping_sub(start), CELL_BITS.wrapping_sub(length) as u8);
+        let local = shifted_left(aligned.wrapping_sub(start), CELL_BITS.wrapping_sub(length));
         let head = (local >> 32) as u32 ^ 1 << 31;
         Place {
             segment: segment as usize,
@@ -181,10 +185,9 @@ impl Layout {
     fn scale(&self, value: Long, slope: i32, bend: i32, length: u32, base: i64) -> Motion {
         let fraction = i32::from(self.fraction);
         let seconds = i32::from(self.cell) + length as i32;
-        let tail_shift = (Delay::FRACTION_BITS - 12).wrapping_sub(u32::from(self.fraction));
-        let delay = widened(value.head, tail_shift.wrapping_add(TAIL))
-            .wrapping_add(widened(value.tail, tail_shift))
-            .wrapping_add(base);
+        let joined = (i64::from(value.head) << TAIL).wrapping_add(i64::from(value.tail));
+        let finer = (Delay::FRACTION_BITS - 12).wrapping_sub(u32::from(self.fraction));
+        let delay = (shifted_left(joined as u64, finer) as i64).wrapping_add(base);
         // Slope in 2^-44, which is what the narrow logarithm takes.
         let narrow_slope = shifted(slope, 44 + 2 - fraction - seconds);
         let signed = (narrow_slope ^ self.negate).wrapping_sub(self.negate);
@@ -274,23 +277,6 @@ fn times_with_rest(value: i32, u: i32) -> (i32, i32) {
 #[inline(always)]
 pub(super) fn times_long(value: i64, u: i32) -> i64 {
     value.wrapping_mul(i64::from(u)) >> 16
-}
-
-/// Shifted left by `places`, 0 to 31.
-#[inline(always)]
-fn shifted_left(value: u64, places: u8) -> u64 {
-    let places = u32::from(places) & 31;
-    let (high, low) = ((value >> 32) as u32, value as u32);
-    let carried = (low >> 1) >> (31 - places);
-    u64::from(high << places | carried) << 32 | u64::from(low << places)
-}
-
-/// A 32-bit number shifted left into 64 bits by `places`, 1 to 31.
-#[inline(always)]
-fn widened(value: i32, places: u32) -> i64 {
-    let places = places & 31;
-    let high = (value >> 1) >> (31 - places);
-    i64::from(high) << 32 | i64::from((value as u32) << places)
 }
 
 /// Shifted left by `places`, or right when negative; within +-31.
