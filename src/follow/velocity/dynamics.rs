@@ -85,7 +85,8 @@ impl Track {
         let (v, a, k) = (self.speed(), self.acceleration, self.third * MEGA);
         let nn = pass.orbit_rate * pass.orbit_rate;
         let ntt = nn * t * t;
-        let sine = t * (1.0 - ntt * (1.0 / 6.0 - ntt * (1.0 / 120.0)));
+        let short = t * ntt * (1.0 / 6.0 - ntt * (1.0 / 120.0));
+        let sine = t - short;
         let turn = t * t * (0.5 - ntt * (1.0 / 24.0 - ntt * (1.0 / 720.0)));
         let cosine = 1.0 - nn * turn;
         let along = v * k * sine;
@@ -96,7 +97,7 @@ impl Track {
         let fall = (nn * wide * wide + 2.0 * a * k * turn) / at_least(cosine + along + ratio, LEAST);
         let range = 1.0 / k;
         let gone = 2.0 * (v * sine + bend * turn) / (ratio + 1.0);
-        let beyond = 2.0 * (v * (sine - t) + bend * turn) - v * t * (k * gone);
+        let beyond = 2.0 * (bend * turn - v * short) - v * t * (k * gone);
         let bent = a + 0.25 * nn * range * (1.0 - square * square);
         Advance {
             speed: (a * sine - v * fall) / ratio,

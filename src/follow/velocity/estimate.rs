@@ -29,11 +29,13 @@ impl Estimate {
     /// # Accuracy
     /// The rapidity is within 3e-18 of `-atanh(v/c)`: `v/c + (v/c)^3/3`, the next term is below 4e-21.
     pub fn from_range_rate(time: GpsTime, range_rate: I16F16) -> Self {
-        let bits = range_rate.to_bits();
-        let first = mul_shift(i64::from(bits), BITS_PER_BIT, 32);
-        let ratio = bits as f32 * (1.0 / (65_536.0 * LIGHT));
+        let bits = i64::from(range_rate.to_bits());
+        let size = bits.saturating_abs();
+        let ratio = size as f32 * (1.0 / (65_536.0 * LIGHT));
         let third = (ratio * ratio * ratio * (1.0 / 3.0) * super::units::RAPIDITY_ONE) as i64;
-        Self::from_rapidity(time, Rapidity::from_bits(first.saturating_add(third).saturating_neg()))
+        let sum = mul_shift(size, BITS_PER_BIT, 32).saturating_add(third);
+        let signed = if bits < 0 { sum } else { sum.saturating_neg() };
+        Self::from_rapidity(time, Rapidity::from_bits(signed))
     }
 
     /// From a range rate in m/s, positive = receding, `f32`, magnitude below 32 768 m/s.

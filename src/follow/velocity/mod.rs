@@ -147,25 +147,26 @@ impl VelocityFilter {
         };
         self.coast(settings, tick.now);
         // The delay goes on from where it was; only its slope follows the new level.
-        self.steered = self.track.at(&settings.dynamics, tick.now);
+        let unknown = Track { time: tick.now, ..Track::default() };
+        self.steered = if self.known { self.track.at(&settings.dynamics, tick.now) } else { unknown };
         self.delay = delay;
         self.ahead = tick.ahead.to_bits();
         self.stepped = true;
         Ok(outcome)
     }
 
-    /// The motion at `at`, not before the last step; `None` before the first confirmed level and once
-    /// the longest coast has passed.
+    /// The motion at `at`; `None` before the first confirmed level, before the last step, and once the
+    /// longest coast has passed.
     ///
     /// The delay is the integral of the rapidity from the first level on, without jumps: where a step
     /// corrects the level, only the slope changes.
     pub fn predict(&self, settings: &VelocitySettings, at: GpsTime) -> Option<Motion> {
-        if !self.known || steps(self.last_used, at) > settings.longest_coast {
+        let from = &self.steered;
+        if !self.serves(settings, at) {
             return None;
         }
-        let from = &self.steered;
         let advance = from.advance(&settings.dynamics, seconds(from.time, at));
-        let gone = delay_of_level(from.level, self.ahead, steps(from.time, at));
+        let gone = delay_of_level(from.level, advance.speed, self.ahead, steps(from.time, at));
         let bent = delay_from_metres(advance.distance);
         Some(Motion {
             delay: Delay::from_bits(self.delay.wrapping_add(gone).wrapping_add(bent)),
@@ -176,7 +177,7 @@ impl VelocityFilter {
 
     /// The stated uncertainty of the prediction at `at`; `None` where there is no prediction.
     pub fn uncertainty(&self, settings: &VelocitySettings, at: GpsTime) -> Option<Uncertainty> {
-        if !self.known || steps(self.last_used, at) > settings.longest_coast {
+        if !self.serves(settings, at) {
             return None;
         }
         let later = self.covariance.advanced(settings, &self.track, seconds(self.track.time, at));
@@ -192,6 +193,12 @@ impl VelocityFilter {
         // Posterior covariance over the measurement's variance is the gain.
         let (p, t) = (&self.covariance, settings.interval);
         [p.vv / settings.variance, p.va / settings.variance * t, p.vx / settings.variance * t * t]
+    }
+
+    /// Whether there is a level to predict from, and `at` is neither before the last step nor after
+    /// the longest coast.
+    fn serves(&self, settings: &VelocitySettings, at: GpsTime) -> bool {
+        self.known && at >= self.steered.time && steps(self.last_used, at) <= settings.longest_coast
     }
 
     fn check(&self, settings: &VelocitySettings, tick: &Tick) -> Result<(), FollowError> {

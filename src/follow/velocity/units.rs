@@ -34,12 +34,12 @@ pub(super) fn seconds(from: GpsTime, to: GpsTime) -> f32 {
 
 /// Receding speed of a rapidity difference, m/s (differences are small: c times the rapidity).
 pub(super) fn speed_from_rapidity(bits: i64) -> f32 {
-    -(bits as f32 * SPEED_PER_RAPIDITY)
+    bits as f32 * -SPEED_PER_RAPIDITY
 }
 
 /// Rapidity, or its rate, of a receding speed or acceleration.
 pub(super) fn rapidity_from_speed(speed: f32) -> i64 {
-    -((speed * RAPIDITY_PER_SPEED) as i64)
+    (speed * -RAPIDITY_PER_SPEED) as i64
 }
 
 /// Delay of a distance.
@@ -47,13 +47,17 @@ pub(super) fn delay_from_metres(metres: f32) -> i64 {
     (metres * DELAY_PER_METRE) as i64
 }
 
-/// Delay gathered over a time at a constant rapidity `level`, behind a table of rapidity `ahead`:
-/// the slope is exp(ahead) (1 - exp(level)) = -level - level^2/2 - level^3/6 - level ahead + ...
-/// First term exact, the others (below 1e-4 of it) in f32.
-pub(super) fn delay_of_level(level: i64, ahead: i64, steps: i64) -> i64 {
-    let small = level as f32 * (1.0 / RAPIDITY_ONE);
-    let bend = small * (small * (0.5 + small * (1.0 / 6.0)) + ahead as f32 * (1.0 / RAPIDITY_ONE));
+/// Delay gathered over a time by a rapidity that starts at `level` and grows by that of `growth` (m/s),
+/// behind a table of rapidity `ahead`. The slope is exp(ahead) (1 - exp(level)) = -level - level^2/2 -
+/// level^3/6 - level ahead + ...: the first term exact and without the growth (its distance is added
+/// by the caller), the others (below 1e-4 of it) in f32, as means over a straight growth.
+pub(super) fn delay_of_level(level: i64, growth: f32, ahead: i64, steps: i64) -> i64 {
+    let start = level as f32 * (1.0 / RAPIDITY_ONE);
+    let grown = growth * (-1.0 / 299_792_458.0);
+    let mean = start + 0.5 * grown;
+    let square = start * (start + grown) + grown * grown * (1.0 / 3.0);
+    let rest = square * (0.5 + mean * (1.0 / 6.0)) + mean * (ahead as f32 * (1.0 / RAPIDITY_ONE));
     // 2^60 rapidity times 2^30 s is 2^90; delay has 56 fraction bits.
-    let slope = level.saturating_add((bend * RAPIDITY_ONE) as i64);
+    let slope = level.saturating_add((rest * RAPIDITY_ONE) as i64);
     mul_shift(slope, steps, 34).saturating_neg()
 }
