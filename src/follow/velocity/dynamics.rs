@@ -93,23 +93,31 @@ impl Track {
         let bend = v * v * k + a;
         let square = at_least(1.0 + 2.0 * along + 2.0 * bend * k * turn, LEAST);
         let ratio = sqrtf(square);
+        let shrink = 1.0 / ratio;
         let wide = sine + v * k * turn;
         let fall = (nn * wide * wide + 2.0 * a * k * turn) / at_least(cosine + along + ratio, LEAST);
-        let range = 1.0 / k;
-        let gone = 2.0 * (v * sine + bend * turn) / (ratio + 1.0);
-        let beyond = 2.0 * (bend * turn - v * short) - v * t * (k * gone);
-        let bent = a + 0.25 * nn * range * (1.0 - square * square);
+        let half = 2.0 / (ratio + 1.0);
+        let gone = half * (v * sine + bend * turn);
+        let beyond = half * (bend * turn - v * short - 0.5 * v * t * (k * gone));
+        // n^2 (r^4 - s^2) / (4 r^3), with r^4 - s^2 = -(s - r^2) (s + r^2) and s - r^2 = gone (s^1/2 + r).
+        let bent = a - 0.25 * nn * gone * (ratio + 1.0) * (1.0 + square);
         Advance {
-            speed: (a * sine - v * fall) / ratio,
-            distance: beyond / (ratio + 1.0),
-            acceleration: bent / (ratio * square),
-            third: self.third / ratio,
+            speed: (a * sine - v * fall) * shrink,
+            distance: beyond,
+            acceleration: bent * shrink * (shrink * shrink),
+            third: self.third * shrink,
         }
     }
 
     /// The same track at another instant.
     pub(super) fn at(&self, dynamics: &Dynamics, time: GpsTime) -> Self {
-        let advance = self.advance(dynamics, seconds(self.time, time));
+        if time == self.time {
+            return *self;
+        }
+        self.after(dynamics, time, &self.advance(dynamics, seconds(self.time, time)))
+    }
+
+    fn after(&self, dynamics: &Dynamics, time: GpsTime, advance: &Advance) -> Self {
         let moved = Self {
             time,
             level: self.level.saturating_add(rapidity_from_speed(advance.speed)),
@@ -165,17 +173,32 @@ impl Track {
 }
 
 impl Covariance {
-    /// The covariance after the track has moved from `track` for `t` seconds.
-    pub(super) fn advanced(&self, settings: &VelocitySettings, track: &Track, t: f32) -> Self {
+    /// A track and its covariance at another instant.
+    pub(super) fn advanced(
+        &self,
+        settings: &VelocitySettings,
+        track: &Track,
+        time: GpsTime,
+    ) -> (Track, Self) {
+        let t = seconds(track.time, time);
+        let advance = track.advance(&settings.dynamics, t);
         let moved = match &settings.dynamics {
-            Dynamics::Pass(pass) => self.carried(&pass_transition(track, pass, t)),
-            _ => self.carried_straight(t),
+            Dynamics::AlphaBeta => self.carried_line(t),
+            Dynamics::AlphaBetaGamma => self.carried_bend(t),
+            Dynamics::Pass(_) => self.carried(&pass_transition(track, &advance, t)),
         };
-        moved.with_noise(settings, track, t)
+        let later = track.after(&settings.dynamics, time, &advance);
+        (later, moved.with_noise(settings, track, t))
     }
 
-    /// Carried by level' = level + a t + x t^2 / 2 and so on (x is zero for alpha-beta).
-    fn carried_straight(&self, t: f32) -> Self {
+    /// Carried by level' = level + a t.
+    fn carried_line(&self, t: f32) -> Self {
+        let va = self.va + t * self.aa;
+        Self { vv: self.vv + t * (self.va + va), va, ..*self }
+    }
+
+    /// Carried by level' = level + a t + x t^2 / 2 and so on.
+    fn carried_bend(&self, t: f32) -> Self {
         let h = 0.5 * t * t;
         // Product of the transition with the covariance, then with its transpose.
         let va = self.va + t * self.aa + h * self.ax;
@@ -260,8 +283,22 @@ impl Covariance {
         self.xx += walk;
     }
 
-    /// After an estimate of variance `noise` was used with gain `gain`, any gain (Joseph's form).
+    /// After an estimate of variance `noise` was used with the best gain, vv, va and vx over vv + noise.
     pub(super) fn updated(&self, gain: [f32; 3], noise: f32) -> Self {
+        let [p, q, r] = gain;
+        let left = 1.0 - p;
+        Self {
+            vv: p * noise,
+            va: left * self.va,
+            vx: left * self.vx,
+            aa: at_least(self.aa - q * self.va, 0.0),
+            ax: self.ax - q * self.vx,
+            xx: at_least(self.xx - r * self.vx, 0.0),
+        }
+    }
+
+    /// After an estimate of variance `noise` was used with any gain (Joseph's form).
+    pub(super) fn updated_by_any(&self, gain: [f32; 3], noise: f32) -> Self {
         let [p, q, r] = gain;
         let sum = self.vv + noise;
         let left = 1.0 - p;
@@ -278,9 +315,8 @@ impl Covariance {
 
 /// Partials of speed, acceleration and inverse range after `t` by the same before. The turning of
 /// the path (n) is left out: its part is below 1e-3 over a minute.
-fn pass_transition(track: &Track, pass: &PassDynamics, t: f32) -> [[f32; 3]; 3] {
+fn pass_transition(track: &Track, moved: &Advance, t: f32) -> [[f32; 3]; 3] {
     let (v, a, k) = (track.speed(), track.acceleration, track.third * MEGA);
-    let moved = track.pass(pass, t);
     let along = v * k * t;
     let square = at_least(1.0 + 2.0 * along + k * t * t * (v * v * k + a), LEAST);
     let ratio = sqrtf(square);

@@ -48,6 +48,9 @@ use dynamics::{Covariance, Track};
 use libm::sqrtf;
 use units::{delay_from_metres, delay_of_level, rapidity_from_speed, seconds, steps};
 
+/// Bits of the largest rapidity that is followed: 2^-10, 293 km/s.
+const WIDEST: u32 = 50;
+
 /// One step's input.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Tick {
@@ -166,11 +169,12 @@ impl VelocityFilter {
             return None;
         }
         let advance = from.advance(&settings.dynamics, seconds(from.time, at));
-        let gone = delay_of_level(from.level, advance.speed, self.ahead, steps(from.time, at));
+        let growth = rapidity_from_speed(advance.speed);
+        let gone = delay_of_level(from.level, growth, self.ahead, steps(from.time, at));
         let bent = delay_from_metres(advance.distance);
         Some(Motion {
             delay: Delay::from_bits(self.delay.wrapping_add(gone).wrapping_add(bent)),
-            rapidity: Rapidity::from_bits(from.level.saturating_add(rapidity_from_speed(advance.speed))),
+            rapidity: Rapidity::from_bits(from.level.saturating_add(growth)),
             rate: RapidityRate::from_bits(rapidity_from_speed(advance.acceleration)),
         })
     }
@@ -180,7 +184,7 @@ impl VelocityFilter {
         if !self.serves(settings, at) {
             return None;
         }
-        let later = self.covariance.advanced(settings, &self.track, seconds(self.track.time, at));
+        let (_, later) = self.covariance.advanced(settings, &self.track, at);
         Some(Uncertainty { metres_per_second: 2.0 * sqrtf(later.vv) })
     }
 
@@ -213,6 +217,9 @@ impl VelocityFilter {
         if age > settings.latency {
             return Err(FollowError::LateEstimate);
         }
+        if estimate.rapidity().to_bits().unsigned_abs() >> WIDEST != 0 {
+            return Err(FollowError::BeyondFormat);
+        }
         if self.measured {
             after(self.last_estimate, estimate.time(), FollowError::EstimateBackwards)?;
         }
@@ -222,10 +229,8 @@ impl VelocityFilter {
     fn observe(&mut self, settings: &VelocitySettings, estimate: Estimate) -> Outcome {
         self.last_estimate = estimate.time();
         self.measured = true;
-        let t = seconds(self.track.time, estimate.time());
         let (track, covariance) = if self.known {
-            let covariance = self.covariance.advanced(settings, &self.track, t);
-            (self.track.at(&settings.dynamics, estimate.time()), covariance)
+            self.covariance.advanced(settings, &self.track, estimate.time())
         } else {
             Track::start(settings, estimate.time(), Rapidity::ZERO)
         };
@@ -250,20 +255,21 @@ impl VelocityFilter {
 
     /// Uses an estimate that is `residual` from a prediction.
     fn take(&mut self, settings: &VelocitySettings, track: Track, covariance: Covariance, residual: f32) {
-        let gain = match settings.gains {
+        let (gain, covariance) = match settings.gains {
             Gains::TrackingIndex(_) => {
                 let inverse = 1.0 / (covariance.vv + settings.variance);
-                [covariance.vv * inverse, covariance.va * inverse, covariance.vx * inverse]
+                let gain = [covariance.vv * inverse, covariance.va * inverse, covariance.vx * inverse];
+                (gain, covariance.updated(gain, settings.variance))
             }
             Gains::Fixed { alpha, beta, gamma } => {
                 let passed = seconds(self.last_used, track.time);
-                let t = if passed > settings.interval { passed } else { settings.interval };
-                let rate = 1.0 / t;
-                [alpha, beta * rate, gamma * rate * rate]
+                let rate = 1.0 / if passed > settings.interval { passed } else { settings.interval };
+                let gain = [alpha, beta * rate, gamma * rate * rate];
+                (gain, covariance.updated_by_any(gain, settings.variance))
             }
         };
         self.track = track.corrected(&settings.dynamics, gain.map(|part| part * residual));
-        self.covariance = covariance.updated(gain, settings.variance);
+        self.covariance = covariance;
         self.last_used = track.time;
         self.known = true;
     }
@@ -278,9 +284,7 @@ impl VelocityFilter {
                 self.last_used = candidate.time;
                 continue;
             }
-            let t = seconds(self.track.time, candidate.time);
-            let covariance = self.covariance.advanced(settings, &self.track, t);
-            let track = self.track.at(&settings.dynamics, candidate.time);
+            let (track, covariance) = self.covariance.advanced(settings, &self.track, candidate.time);
             let residual = candidate.estimate().residual(Rapidity::from_bits(track.level));
             self.take(settings, track, covariance, residual);
         }
@@ -298,10 +302,8 @@ impl VelocityFilter {
             due.to_bits().saturating_sub((span * (1u32 << 30) as f32) as i64),
         ));
         let to = self.candidates.oldest_waiting(due);
-        let t = seconds(self.track.time, to);
-        if self.known && t >= settings.interval {
-            self.covariance = self.covariance.advanced(settings, &self.track, t);
-            self.track = self.track.at(&settings.dynamics, to);
+        if self.known && seconds(self.track.time, to) >= settings.interval {
+            (self.track, self.covariance) = self.covariance.advanced(settings, &self.track, to);
         }
     }
 }
