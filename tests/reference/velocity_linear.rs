@@ -16,7 +16,7 @@ pub struct Run {
 
 /// Root mean square error of a filter with `gains` over runs at intervals of one.
 pub fn rms<const N: usize>(runs: &[Run], gains: &[f64; N]) -> f64 {
-    let (mut sum, mut count) = (0.0, 0.0);
+    let (mut sum, mut count) = (0.0f64, 0.0);
     for run in runs {
         let mut state = [0.0; N];
         state[0] = run.truth[0];
@@ -44,7 +44,7 @@ pub fn rms<const N: usize>(runs: &[Run], gains: &[f64; N]) -> f64 {
             }
         }
     }
-    let rms = (sum / count as f64).sqrt();
+    let rms = (sum / count).sqrt();
     if rms.is_finite() { rms } else { 1e300 }
 }
 
@@ -63,14 +63,14 @@ pub fn best<const N: usize>(runs: &[Run], start: [f64; N]) -> (f64, [f64; N]) {
         let worst = corners[N];
         let mut centre = [0.0; N];
         for corner in &corners[..N] {
-            for axis in 0..N {
-                centre[axis] += corner.1[axis] / N as f64;
+            for (middle, part) in centre.iter_mut().zip(corner.1) {
+                *middle += part / N as f64;
             }
         }
         let along = |factor: f64| {
             let mut point = centre;
-            for axis in 0..N {
-                point[axis] += factor * (worst.1[axis] - centre[axis]);
+            for (part, far) in point.iter_mut().zip(worst.1) {
+                *part += factor * (far - *part);
             }
             (value(&point), point)
         };
@@ -88,8 +88,8 @@ pub fn best<const N: usize>(runs: &[Run], start: [f64; N]) -> (f64, [f64; N]) {
         } else {
             let best = corners[0].1;
             for corner in &mut corners[1..] {
-                for axis in 0..N {
-                    corner.1[axis] = 0.5 * (corner.1[axis] + best[axis]);
+                for (part, near) in corner.1.iter_mut().zip(best) {
+                    *part = 0.5 * (*part + near);
                 }
                 corner.0 = value(&corner.1);
             }

@@ -59,7 +59,7 @@ pub fn hash() -> u64 {
         (Dynamics::Pass(PassDynamics::LOW_ORBIT), Gains::TrackingIndex(1e-3)),
     ] {
         let settings = VelocitySettings::new(0.1, 0.125, dynamics, gains);
-        if let Some(settings) = settings.and_then(|settings| settings.with_latency(0.1)).ok() {
+        if let Ok(settings) = settings.and_then(|settings| settings.with_latency(0.1)) {
             hash = run(&settings, Rapidity::ZERO, hash);
             hash = run(&settings, Rapidity::from_bits(1 << 42), hash);
         }

@@ -122,8 +122,8 @@ impl Candidates {
     pub(super) fn confirms(&self, settings: &VelocitySettings, agreement: &Agreement) -> bool {
         let newest = self.newest();
         let last = self.0.iter().take(usize::from(settings.confirm_of));
-        let count = last.fold(0, |count, one| count + u8::from(one.agrees(&newest, agreement)));
-        count >= settings.confirm
+        let count = last.filter(|one| one.agrees(&newest, agreement)).count();
+        count >= usize::from(settings.confirm)
     }
 
     /// A line through the newest and one of the older half on which enough agree.
@@ -156,15 +156,19 @@ impl Candidates {
         *newest = Candidate { residual: 0.0, state: Use::Used, ..*newest };
     }
 
-    /// Marks as used those that were, drops the others that waited.
+    /// Marks as used those that agree, drops the others that waited; after a line, which is a new start,
+    /// drops those used before as well.
     pub(super) fn settle(&mut self, of: u8, agreement: Agreement) {
         let newest = self.newest();
-        let mut age = 0;
-        self.0 = self.0.map(|one| {
-            age += 1;
-            let used = one.state == Use::Used || (age <= of && one.agrees(&newest, &agreement));
-            if used { Candidate { residual: 0.0, state: Use::Used, ..one } } else { Candidate::default() }
-        });
+        for (age, one) in self.0.iter_mut().enumerate() {
+            let agreed = age < usize::from(of) && one.agrees(&newest, &agreement);
+            let kept = matches!(agreement.shape, Shape::Predicted) && one.state == Use::Used;
+            *one = if agreed || kept {
+                Candidate { residual: 0.0, state: Use::Used, ..*one }
+            } else {
+                Candidate::default()
+            };
+        }
     }
 
     /// Forgets what came before `time`.

@@ -209,16 +209,15 @@ impl VelocityFilter {
         if self.stepped {
             after(self.steered.time, tick.now, FollowError::TimeBackwards)?;
         }
+        followed(tick.ahead)?;
         let Some(estimate) = tick.estimate else { return Ok(()) };
+        followed(estimate.rapidity())?;
         let age = steps(estimate.time(), tick.now);
         if age < 0 {
             return Err(FollowError::FutureEstimate);
         }
         if age > settings.latency {
             return Err(FollowError::LateEstimate);
-        }
-        if estimate.rapidity().to_bits().unsigned_abs() >> WIDEST != 0 {
-            return Err(FollowError::BeyondFormat);
         }
         if self.measured {
             after(self.last_estimate, estimate.time(), FollowError::EstimateBackwards)?;
@@ -298,14 +297,18 @@ impl VelocityFilter {
         let due = GpsTime::from_bits(now.to_bits().saturating_sub(settings.latency));
         // Estimates that have waited four times as long as N take cannot be confirmed any more.
         let span = settings.interval * f32::from(settings.confirm_of) * 4.0;
-        self.candidates.forget_before(GpsTime::from_bits(
-            due.to_bits().saturating_sub((span * (1u32 << 30) as f32) as i64),
-        ));
+        self.candidates
+            .forget_before(GpsTime::from_bits(due.to_bits().saturating_sub(settings::time_steps(span))));
         let to = self.candidates.oldest_waiting(due);
         if self.known && seconds(self.track.time, to) >= settings.interval {
             (self.track, self.covariance) = self.covariance.advanced(settings, &self.track, to);
         }
     }
+}
+
+/// Refuses a rapidity beyond the format that the delay is worked out in.
+fn followed(rapidity: Rapidity) -> Result<(), FollowError> {
+    if rapidity.to_bits().unsigned_abs() >> WIDEST != 0 { Err(FollowError::BeyondFormat) } else { Ok(()) }
 }
 
 /// Refuses a time that is not after an earlier one, or further from it than the format.
