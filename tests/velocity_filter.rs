@@ -180,10 +180,10 @@ fn nonsense_settings_are_refused() {
     assert_eq!(pass(PassDynamics { range_wander: f32::NAN, ..low }).unwrap_err(), NotFinite);
 
     let good = new(0.1, 0.1, ab, index).unwrap();
-    for (m, n) in [(4, 8), (0, 0), (5, 4), (5, 9), (255, 255)] {
+    for (m, n) in [(4, 8), (0, 0), (1, 1), (5, 4), (5, 9), (255, 255)] {
         assert_eq!(good.with_confirmation(m, n).unwrap_err(), Confirmation);
     }
-    assert!(good.with_confirmation(5, 8).is_ok() && good.with_confirmation(1, 1).is_ok());
+    assert!(good.with_confirmation(5, 8).is_ok() && good.with_confirmation(2, 2).is_ok());
     assert_eq!(good.with_gate(0.5).unwrap_err(), Setting);
     assert_eq!(good.with_gate(f32::NAN).unwrap_err(), NotFinite);
     assert_eq!(good.with_latency(-1.0).unwrap_err(), Setting);
@@ -718,7 +718,7 @@ fn a_table_goes_ahead_and_the_filter_takes_the_rest() {
     let settings =
         VelocitySettings::new(0.1, 0.1, Dynamics::AlphaBeta, Gains::TrackingIndex(4.5e-3)).unwrap();
     let settings = settings.with_acceleration_limit(5.0).unwrap();
-    let (mut covered, mut gaps, mut errors) = (0.0, 0.0, 0.0f64);
+    let (mut covered, mut gaps, mut errors, mut ends) = (0.0, 0.0, 0.0f64, Vec::new());
     let (mut sum, mut count) = (0.0, 0.0);
     for seed in 0..20 {
         let (mut noise, mut filter) = (Noise(seed), VelocityFilter::new());
@@ -752,6 +752,7 @@ fn a_table_goes_ahead_and_the_filter_takes_the_rest() {
                 let total = -LIGHT * ((table(end).to_bits() + rest) as f64 / RAPIDITY).tanh();
                 let (error, stated) = ((total - actual(end)).abs(), stated(&coasting, &settings, end));
                 gaps += 1.0;
+                ends.push(error);
                 covered += f64::from(u8::from(error <= stated));
                 errors += (error / stated).powi(2);
             }
@@ -759,6 +760,10 @@ fn a_table_goes_ahead_and_the_filter_takes_the_rest() {
     }
     let rms = f64::sqrt(sum / count);
     let share = covered / gaps;
+    ends.sort_by(f64::total_cmp);
+    let end = ends[ends.len() * 95 / 100];
+    println!("with a table: after a gap 95 % within {end:.2} m/s");
+    assert!(end < 2.0, "{end}");
     let ratio = 2.0 * f64::sqrt(errors / gaps);
     println!(
         "with a table: rms {rms:.4} m/s; gaps of 20 s: covered {share:.3}, rms error over stated sigma {ratio:.2}"
@@ -823,7 +828,7 @@ fn nothing_breaks_the_filter() {
             .unwrap(),
         VelocitySettings::for_pass(1e4, 1e-3, PassDynamics { nearest_range: 1e4, ..PassDynamics::LOW_ORBIT })
             .unwrap(),
-        VelocitySettings::for_table(1e-6, 1.0).unwrap().with_confirmation(1, 1).unwrap(),
+        VelocitySettings::for_table(1e-4, 1.0).unwrap().with_confirmation(2, 2).unwrap(),
         VelocitySettings::new(0.1, 0.1, Dynamics::AlphaBetaGamma, Gains::TrackingIndex(0.5)).unwrap(),
         VelocitySettings::new(
             0.1,
@@ -861,6 +866,21 @@ fn nothing_breaks_the_filter() {
         println!("settings {which}: {served} predictions");
         assert!(served > 1000, "settings {which} hardly ever had a level: {served}");
     }
+}
+
+/// After 20 s of silence near closest approach alpha-beta-gamma is off by tens of m/s, more than it
+/// states: what the pass's geometry is for.
+#[test]
+fn a_gap_needs_the_geometry_of_the_pass() {
+    let third =
+        VelocitySettings::new(0.1, 0.1, Dynamics::AlphaBetaGamma, Gains::TrackingIndex(1e-3)).unwrap();
+    let ends = [third, pass_settings()]
+        .map(|settings| gap_ends(&settings, &Synthetic::load(), 352.0, &[712.0], 100));
+    let [(covered, stated, kept), (_, _, with_geometry)] = ends.map(|end| end[0]);
+    println!(
+        "alpha-beta-gamma: covered {covered}, stated {stated:.1}, 95 % within {kept:.1}; pass {with_geometry:.2} m/s"
+    );
+    assert!(covered < 0.5 && kept > 50.0 * with_geometry);
 }
 
 /// What one channel costs in memory.

@@ -237,7 +237,19 @@ impl Covariance {
                 sum.add_wander(wander * wander * t, jerk, t);
             }
         }
+        sum.vv = at_least(sum.vv, 0.0);
         sum
+    }
+
+    /// Keeps what rounding may spoil when a very uncertain state is measured well: variances are not
+    /// negative, and no covariance is larger than its two variances allow.
+    fn sound(mut self) -> Self {
+        (self.aa, self.xx) = (at_least(self.aa, 0.0), at_least(self.xx, 0.0));
+        let kept = |cross: f32, one: f32, two: f32| if cross * cross <= one * two { cross } else { 0.0 };
+        self.va = kept(self.va, self.vv, self.aa);
+        self.vx = kept(self.vx, self.vv, self.xx);
+        self.ax = kept(self.ax, self.aa, self.xx);
+        self
     }
 
     /// Jerks, each constant over one interval T: over n intervals the sum of g g^T, g = ((m - 1/2) T^2, T)
@@ -291,10 +303,11 @@ impl Covariance {
             vv: p * noise,
             va: left * self.va,
             vx: left * self.vx,
-            aa: at_least(self.aa - q * self.va, 0.0),
+            aa: self.aa - q * self.va,
             ax: self.ax - q * self.vx,
-            xx: at_least(self.xx - r * self.vx, 0.0),
+            xx: self.xx - r * self.vx,
         }
+        .sound()
     }
 
     /// After an estimate of variance `noise` was used with any gain (Joseph's form).
@@ -306,10 +319,11 @@ impl Covariance {
             vv: left * left * self.vv + p * p * noise,
             va: left * self.va - q * self.vv + p * q * sum,
             vx: left * self.vx - r * self.vv + p * r * sum,
-            aa: at_least(self.aa - 2.0 * q * self.va + q * q * sum, 0.0),
+            aa: self.aa - 2.0 * q * self.va + q * q * sum,
             ax: self.ax - q * self.vx - r * self.va + q * r * sum,
-            xx: at_least(self.xx - 2.0 * r * self.vx + r * r * sum, 0.0),
+            xx: self.xx - 2.0 * r * self.vx + r * r * sum,
         }
+        .sound()
     }
 }
 

@@ -10,6 +10,16 @@
 //! as well as it is measured. After a gap or a jump, M of the last N must agree with one another. So
 //! a lone outlier is never followed.
 //!
+//! | [`Dynamics`] | for | rms while estimates come | error after 20 s of silence |
+//! |---|---|---|---|
+//! | `AlphaBeta` ([`VelocitySettings::for_table`]) | what a table leaves over | 0.027 m/s | 1.6 m/s |
+//! | `AlphaBetaGamma` | motion of no known kind | 0.042 m/s | 77 m/s at the worst place |
+//! | `Pass` ([`VelocitySettings::for_pass`]) | a pass without a table | 0.023 m/s | 1.7 m/s at the worst place |
+//!
+//! (Estimates of 0.1 m/s at 10 Hz, one in twenty off by 100 m/s, a pass at 579 km, the table 0.2 s early:
+//! `tests/velocity_filter.rs`. Only `Pass` states an uncertainty of silence that is right at every place of
+//! a pass: the error of the others there is the motion's own next derivative, which they do not know.)
+//!
 //! With a table ahead, filter what the table leaves: give [`Estimate::beyond`] the table's rapidity at
 //! the estimate's time, set [`Tick::ahead`] to the table's rapidity at the tick, and add the table's
 //! motion to the prediction ([`VelocityFilter::predict`] integrates the delay so that the sum fits).
@@ -106,7 +116,7 @@ impl Uncertainty {
     }
 }
 
-/// State of a velocity filter: small, `Copy`, for settings of any kind.
+/// State of a velocity filter: 304 bytes, `Copy`, for settings of any kind.
 #[derive(Clone, Copy, Debug, PartialEq, Default)]
 pub struct VelocityFilter {
     /// At the last estimate that was used, or later while coasting.
@@ -131,12 +141,19 @@ impl VelocityFilter {
         Self::default()
     }
 
-    /// Advances to `tick.now`, taking in its estimate.
+    /// Advances to `tick.now`, taking in its estimate. While nothing comes, step at least once an
+    /// interval: the uncertainty of a pass is worked out in such steps.
     ///
     /// # Errors
     /// The state stays as it was: [`FollowError::TimeBackwards`], [`FollowError::ZeroInterval`],
     /// [`FollowError::FutureEstimate`], [`FollowError::EstimateBackwards`],
-    /// [`FollowError::LateEstimate`], [`FollowError::BeyondFormat`].
+    /// [`FollowError::LateEstimate`], [`FollowError::BeyondFormat`] (a rapidity of 2^-10, 293 km/s, or
+    /// more; 2^31 s or more since the last step).
+    ///
+    /// # Cost
+    /// Instructions with an estimate, alpha-beta / alpha-beta-gamma / pass: 1600 / 1700 / 2400 on a
+    /// Cortex-M4F, 11 000 / 17 000 / 49 000 on a Cortex-M0; half of it or less without one. A restart or
+    /// confirmation replays up to eight estimates once.
     pub fn step(&mut self, settings: &VelocitySettings, tick: Tick) -> Result<Outcome, FollowError> {
         self.check(settings, &tick)?;
         let delay = self.predict(settings, tick.now).map_or(self.delay, |motion| motion.delay.to_bits());
@@ -163,6 +180,14 @@ impl VelocityFilter {
     ///
     /// The delay is the integral of the rapidity from the first level on, without jumps: where a step
     /// corrects the level, only the slope changes.
+    ///
+    /// # Accuracy
+    /// Delay against the integral of the rapidity: 1e-4 cycles at 437 MHz over 20 s in ticks of 10 ms, 0.02
+    /// cycles over 20 s in one prediction (`tests/velocity_filter.rs`).
+    ///
+    /// # Cost
+    /// Instructions, alpha-beta / alpha-beta-gamma / pass: 340 / 350 / 530 on a Cortex-M4F, 2200 / 3000 /
+    /// 10 400 on a Cortex-M0.
     pub fn predict(&self, settings: &VelocitySettings, at: GpsTime) -> Option<Motion> {
         let from = &self.steered;
         if !self.serves(settings, at) {
@@ -180,6 +205,14 @@ impl VelocityFilter {
     }
 
     /// The stated uncertainty of the prediction at `at`; `None` where there is no prediction.
+    ///
+    /// # Accuracy
+    /// At the end of a silence of 20 s anywhere in the published pass it covers the error in more than 95 %
+    /// of the runs and is at most 3 times what 95 % of them keep within (`tests/velocity_filter.rs`).
+    ///
+    /// # Cost
+    /// Instructions, alpha-beta / alpha-beta-gamma / pass: 300 / 340 / 780 on a Cortex-M4F, 3900 / 7900 /
+    /// 30 000 on a Cortex-M0.
     pub fn uncertainty(&self, settings: &VelocitySettings, at: GpsTime) -> Option<Uncertainty> {
         if !self.serves(settings, at) {
             return None;

@@ -181,12 +181,12 @@ impl VelocitySettings {
     }
 
     /// With a new level accepted when `confirm` of the last `of` estimates agree with one another
-    /// (a majority, `of` at most 8).
+    /// (a majority, at least 2, `of` at most 8).
     ///
     /// # Errors
     /// [`FollowError::Confirmation`].
     pub fn with_confirmation(self, confirm: u8, of: u8) -> Result<Self, FollowError> {
-        if of > LONGEST_CONFIRMATION || confirm > of || confirm <= of / 2 {
+        if of > LONGEST_CONFIRMATION || confirm > of || confirm <= of / 2 || confirm < 2 {
             return Err(FollowError::Confirmation);
         }
         Ok(Self { confirm, confirm_of: of, ..self })
