@@ -17,7 +17,7 @@ pub enum FollowError {
     Setting,
     /// Gains or tracking index that cannot follow stably, or fixed gains for dynamics that have none.
     Gains,
-    /// M of N without a majority, or N above what the state can hold.
+    /// M of N without a majority, with M below 2, or with N above what the state can hold.
     Confirmation,
     /// The tick is before the last one.
     TimeBackwards,
@@ -41,7 +41,7 @@ impl fmt::Display for FollowError {
             }
             Self::Setting => "setting of the velocity filter is out of range: see its documentation",
             Self::Gains => "gains or tracking index are not stable, or do not suit the dynamics",
-            Self::Confirmation => "confirmation M of N needs N/2 < M <= N <= 8",
+            Self::Confirmation => "confirmation M of N needs N/2 < M, 2 <= M <= N <= 8",
             Self::TimeBackwards => "tick is before the last one: pass times that grow, or start a new state",
             Self::ZeroInterval => "tick or estimate has the time of the one before: pass times that grow",
             Self::FutureEstimate => "estimate is tagged later than the tick: check the clock that tags it",

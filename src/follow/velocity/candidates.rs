@@ -38,7 +38,13 @@ impl Candidate {
     fn agrees(&self, newest: &Self, agreement: &Agreement) -> bool {
         let t = seconds(newest.time, self.time);
         let apart = self.apart(newest, agreement.shape) - agreement.rate * t;
-        self.state != Use::Empty && apart.abs() <= agreement.level + agreement.bend * t.abs()
+        let allowed = agreement.level + t * t * agreement.bend + t.abs() * agreement.spread;
+        let counts = match agreement.shape {
+            Shape::Predicted => self.state != Use::Empty,
+            // What was used agrees with the prediction, so it cannot speak for a new level.
+            Shape::Line => self.state == Use::Waiting,
+        };
+        counts && apart.abs() <= allowed
     }
 
     /// How far this estimate is above another, m/s.
@@ -68,23 +74,27 @@ pub(super) struct Agreement {
     /// m/s.
     level: f32,
     /// m/s more per second away from the newest.
+    spread: f32,
+    /// m/s more per second squared away from the newest.
     bend: f32,
 }
 
 impl Agreement {
     /// Along the prediction: both estimates are noisy, and the predicted rate may be off.
     pub(super) fn predicted(settings: &VelocitySettings, covariance: &Covariance) -> Self {
-        let bend = sqrtf(settings.gate_squared * covariance.aa);
+        let spread = sqrtf(settings.gate_squared * covariance.aa);
         let limit = settings.acceleration_limit;
-        let bend = if bend < limit { bend } else { limit };
-        Self { shape: Shape::Predicted, rate: 0.0, level: level(settings), bend }
+        let spread = if spread < limit { spread } else { limit };
+        Self { shape: Shape::Predicted, rate: 0.0, level: level(settings), spread, bend: 0.0 }
     }
 
-    /// Along a line of any slope up to the acceleration limit, which may turn by a sixteenth of it.
+    /// Along a line of any slope up to the acceleration limit, which may change by a fiftieth of
+    /// it per second.
     fn line(settings: &VelocitySettings, rate: f32) -> Option<Self> {
         let limit = settings.acceleration_limit;
-        let bend = limit * (1.0 / 16.0);
-        (rate.abs() <= limit).then_some(Self { shape: Shape::Line, rate, level: level(settings), bend })
+        let bend = limit * (1.0 / 100.0);
+        let line = Self { shape: Shape::Line, rate, level: level(settings), spread: 0.0, bend };
+        (rate.abs() <= limit).then_some(line)
     }
 }
 
@@ -112,15 +122,15 @@ impl Candidates {
     pub(super) fn confirms(&self, settings: &VelocitySettings, agreement: &Agreement) -> bool {
         let newest = self.newest();
         let last = self.0.iter().take(usize::from(settings.confirm_of));
-        let count = last.fold(0, |count, one| count + u8::from(one.agrees(&newest, agreement)));
-        count >= settings.confirm
+        let count = last.filter(|one| one.agrees(&newest, agreement)).count();
+        count >= usize::from(settings.confirm)
     }
 
     /// A line through the newest and one of the older half on which enough agree.
     pub(super) fn line(&self, settings: &VelocitySettings) -> Option<Agreement> {
         let newest = self.newest();
         let of = usize::from(settings.confirm_of);
-        let older = self.0.iter().take(of).skip(of / 2).filter(|one| one.state != Use::Empty);
+        let older = self.0.iter().take(of).skip(of / 2).filter(|one| one.state == Use::Waiting);
         older
             .filter_map(|one| {
                 let t = seconds(newest.time, one.time);
@@ -146,15 +156,19 @@ impl Candidates {
         *newest = Candidate { residual: 0.0, state: Use::Used, ..*newest };
     }
 
-    /// Marks as used those that were, drops the others that waited.
+    /// Marks as used those that agree, drops the others that waited; after a line, which is a new start,
+    /// drops those used before as well.
     pub(super) fn settle(&mut self, of: u8, agreement: Agreement) {
         let newest = self.newest();
-        let mut age = 0;
-        self.0 = self.0.map(|one| {
-            age += 1;
-            let used = one.state == Use::Used || (age <= of && one.agrees(&newest, &agreement));
-            if used { Candidate { residual: 0.0, state: Use::Used, ..one } } else { Candidate::default() }
-        });
+        for (age, one) in self.0.iter_mut().enumerate() {
+            let agreed = age < usize::from(of) && one.agrees(&newest, &agreement);
+            let kept = matches!(agreement.shape, Shape::Predicted) && one.state == Use::Used;
+            *one = if agreed || kept {
+                Candidate { residual: 0.0, state: Use::Used, ..*one }
+            } else {
+                Candidate::default()
+            };
+        }
     }
 
     /// Forgets what came before `time`.

@@ -85,30 +85,39 @@ impl Track {
         let (v, a, k) = (self.speed(), self.acceleration, self.third * MEGA);
         let nn = pass.orbit_rate * pass.orbit_rate;
         let ntt = nn * t * t;
-        let sine = t * (1.0 - ntt * (1.0 / 6.0 - ntt * (1.0 / 120.0)));
+        let short = t * ntt * (1.0 / 6.0 - ntt * (1.0 / 120.0));
+        let sine = t - short;
         let turn = t * t * (0.5 - ntt * (1.0 / 24.0 - ntt * (1.0 / 720.0)));
         let cosine = 1.0 - nn * turn;
         let along = v * k * sine;
         let bend = v * v * k + a;
         let square = at_least(1.0 + 2.0 * along + 2.0 * bend * k * turn, LEAST);
         let ratio = sqrtf(square);
+        let shrink = 1.0 / ratio;
         let wide = sine + v * k * turn;
         let fall = (nn * wide * wide + 2.0 * a * k * turn) / at_least(cosine + along + ratio, LEAST);
-        let range = 1.0 / k;
-        let gone = 2.0 * (v * sine + bend * turn) / (ratio + 1.0);
-        let beyond = 2.0 * (v * (sine - t) + bend * turn) - v * t * (k * gone);
-        let bent = a + 0.25 * nn * range * (1.0 - square * square);
+        let half = 2.0 / (ratio + 1.0);
+        let gone = half * (v * sine + bend * turn);
+        let beyond = half * (bend * turn - v * short - 0.5 * v * t * (k * gone));
+        // n^2 (r^4 - s^2) / (4 r^3), with r^4 - s^2 = -(s - r^2) (s + r^2) and s - r^2 = gone (s^1/2 + r).
+        let bent = a - 0.25 * nn * gone * (ratio + 1.0) * (1.0 + square);
         Advance {
-            speed: (a * sine - v * fall) / ratio,
-            distance: beyond / (ratio + 1.0),
-            acceleration: bent / (ratio * square),
-            third: self.third / ratio,
+            speed: (a * sine - v * fall) * shrink,
+            distance: beyond,
+            acceleration: bent * shrink * (shrink * shrink),
+            third: self.third * shrink,
         }
     }
 
     /// The same track at another instant.
     pub(super) fn at(&self, dynamics: &Dynamics, time: GpsTime) -> Self {
-        let advance = self.advance(dynamics, seconds(self.time, time));
+        if time == self.time {
+            return *self;
+        }
+        self.after(dynamics, time, &self.advance(dynamics, seconds(self.time, time)))
+    }
+
+    fn after(&self, dynamics: &Dynamics, time: GpsTime, advance: &Advance) -> Self {
         let moved = Self {
             time,
             level: self.level.saturating_add(rapidity_from_speed(advance.speed)),
@@ -164,17 +173,32 @@ impl Track {
 }
 
 impl Covariance {
-    /// The covariance after the track has moved from `track` for `t` seconds.
-    pub(super) fn advanced(&self, settings: &VelocitySettings, track: &Track, t: f32) -> Self {
+    /// A track and its covariance at another instant.
+    pub(super) fn advanced(
+        &self,
+        settings: &VelocitySettings,
+        track: &Track,
+        time: GpsTime,
+    ) -> (Track, Self) {
+        let t = seconds(track.time, time);
+        let advance = track.advance(&settings.dynamics, t);
         let moved = match &settings.dynamics {
-            Dynamics::Pass(pass) => self.carried(&pass_transition(track, pass, t)),
-            _ => self.carried_straight(t),
+            Dynamics::AlphaBeta => self.carried_line(t),
+            Dynamics::AlphaBetaGamma => self.carried_bend(t),
+            Dynamics::Pass(_) => self.carried(&pass_transition(track, &advance, t)),
         };
-        moved.with_noise(settings, track, t)
+        let later = track.after(&settings.dynamics, time, &advance);
+        (later, moved.with_noise(settings, track, t))
     }
 
-    /// Carried by level' = level + a t + x t^2 / 2 and so on (x is zero for alpha-beta).
-    fn carried_straight(&self, t: f32) -> Self {
+    /// Carried by level' = level + a t.
+    fn carried_line(&self, t: f32) -> Self {
+        let va = self.va + t * self.aa;
+        Self { vv: self.vv + t * (self.va + va), va, ..*self }
+    }
+
+    /// Carried by level' = level + a t + x t^2 / 2 and so on.
+    fn carried_bend(&self, t: f32) -> Self {
         let h = 0.5 * t * t;
         // Product of the transition with the covariance, then with its transpose.
         let va = self.va + t * self.aa + h * self.ax;
@@ -213,7 +237,19 @@ impl Covariance {
                 sum.add_wander(wander * wander * t, jerk, t);
             }
         }
+        sum.vv = at_least(sum.vv, 0.0);
         sum
+    }
+
+    /// Keeps what rounding may spoil when a very uncertain state is measured well: variances are not
+    /// negative, and no covariance is larger than its two variances allow.
+    fn sound(mut self) -> Self {
+        (self.aa, self.xx) = (at_least(self.aa, 0.0), at_least(self.xx, 0.0));
+        let kept = |cross: f32, one: f32, two: f32| if cross * cross <= one * two { cross } else { 0.0 };
+        self.va = kept(self.va, self.vv, self.aa);
+        self.vx = kept(self.vx, self.vv, self.xx);
+        self.ax = kept(self.ax, self.aa, self.xx);
+        self
     }
 
     /// Jerks, each constant over one interval T: over n intervals the sum of g g^T, g = ((m - 1/2) T^2, T)
@@ -259,8 +295,23 @@ impl Covariance {
         self.xx += walk;
     }
 
-    /// After an estimate of variance `noise` was used with gain `gain`, any gain (Joseph's form).
+    /// After an estimate of variance `noise` was used with the best gain, vv, va and vx over vv + noise.
     pub(super) fn updated(&self, gain: [f32; 3], noise: f32) -> Self {
+        let [p, q, r] = gain;
+        let left = 1.0 - p;
+        Self {
+            vv: p * noise,
+            va: left * self.va,
+            vx: left * self.vx,
+            aa: self.aa - q * self.va,
+            ax: self.ax - q * self.vx,
+            xx: self.xx - r * self.vx,
+        }
+        .sound()
+    }
+
+    /// After an estimate of variance `noise` was used with any gain (Joseph's form).
+    pub(super) fn updated_by_any(&self, gain: [f32; 3], noise: f32) -> Self {
         let [p, q, r] = gain;
         let sum = self.vv + noise;
         let left = 1.0 - p;
@@ -268,18 +319,18 @@ impl Covariance {
             vv: left * left * self.vv + p * p * noise,
             va: left * self.va - q * self.vv + p * q * sum,
             vx: left * self.vx - r * self.vv + p * r * sum,
-            aa: at_least(self.aa - 2.0 * q * self.va + q * q * sum, 0.0),
+            aa: self.aa - 2.0 * q * self.va + q * q * sum,
             ax: self.ax - q * self.vx - r * self.va + q * r * sum,
-            xx: at_least(self.xx - 2.0 * r * self.vx + r * r * sum, 0.0),
+            xx: self.xx - 2.0 * r * self.vx + r * r * sum,
         }
+        .sound()
     }
 }
 
 /// Partials of speed, acceleration and inverse range after `t` by the same before. The turning of
 /// the path (n) is left out: its part is below 1e-3 over a minute.
-fn pass_transition(track: &Track, pass: &PassDynamics, t: f32) -> [[f32; 3]; 3] {
+fn pass_transition(track: &Track, moved: &Advance, t: f32) -> [[f32; 3]; 3] {
     let (v, a, k) = (track.speed(), track.acceleration, track.third * MEGA);
-    let moved = track.pass(pass, t);
     let along = v * k * t;
     let square = at_least(1.0 + 2.0 * along + k * t * t * (v * v * k + a), LEAST);
     let ratio = sqrtf(square);

@@ -1,6 +1,6 @@
 //! A measured range rate with its own time.
 
-use super::units::{mul_shift, speed_from_rapidity};
+use super::units::speed_from_rapidity;
 use crate::follow::FollowError;
 use crate::rapidity::Rapidity;
 use crate::time::GpsTime;
@@ -8,8 +8,6 @@ use fixed::types::I16F16;
 
 /// Speed of light, m/s.
 const LIGHT: f32 = 299_792_458.0;
-/// 2^44 / c with 32 more fraction bits: from bits of I16F16 m/s to bits of I4F60 rapidity.
-const BITS_PER_BIT: i64 = ((1u128 << 76) / 299_792_458) as i64;
 
 /// A range rate, held as rapidity, and the instant at which it was true.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -24,16 +22,10 @@ impl Estimate {
         Self { time, rapidity }
     }
 
-    /// From a range rate in m/s, positive = receding, I16F16 (to 32.7 km/s, steps of 15 um/s).
-    ///
-    /// # Accuracy
-    /// The rapidity is within 3e-18 of `-atanh(v/c)`: `v/c + (v/c)^3/3`, the next term is below 4e-21.
-    pub fn from_range_rate(time: GpsTime, range_rate: I16F16) -> Self {
-        let bits = range_rate.to_bits();
-        let first = mul_shift(i64::from(bits), BITS_PER_BIT, 32);
-        let ratio = bits as f32 * (1.0 / (65_536.0 * LIGHT));
-        let third = (ratio * ratio * ratio * (1.0 / 3.0) * super::units::RAPIDITY_ONE) as i64;
-        Self::from_rapidity(time, Rapidity::from_bits(first.saturating_add(third).saturating_neg()))
+    /// From a range rate in m/s, positive = receding, I16F16 (to 32.7 km/s, steps of 15 um/s);
+    /// [`Rapidity`] has constructors from other forms.
+    pub const fn from_range_rate(time: GpsTime, range_rate: I16F16) -> Self {
+        Self::from_rapidity(time, Rapidity::from_range_rate(range_rate))
     }
 
     /// From a range rate in m/s, positive = receding, `f32`, magnitude below 32 768 m/s.

@@ -7,7 +7,7 @@
 use crate::time::GpsTime;
 
 /// One, in I4F60 rapidity.
-pub(super) const RAPIDITY_ONE: f32 = (1u64 << 60) as f32;
+const RAPIDITY_ONE: f32 = (1u64 << 60) as f32;
 /// 2^60 / c: I4F60 rapidity per m/s.
 const RAPIDITY_PER_SPEED: f32 = RAPIDITY_ONE / 299_792_458.0;
 /// c / 2^60: m/s per step of I4F60 rapidity.
@@ -16,11 +16,6 @@ const SPEED_PER_RAPIDITY: f32 = 299_792_458.0 / RAPIDITY_ONE;
 const DELAY_PER_METRE: f32 = (1u64 << 56) as f32 / 299_792_458.0;
 /// Seconds per step of time.
 const SECONDS_PER_STEP: f32 = 1.0 / (1u64 << GpsTime::FRACTION_BITS) as f32;
-
-/// Product of two i64 shifted right, rounded down, wrapping.
-pub(super) const fn mul_shift(a: i64, b: i64, shift: u32) -> i64 {
-    ((a as i128 * b as i128) >> shift) as i64
-}
 
 /// Steps of time from one instant to another, saturating.
 pub(super) const fn steps(from: GpsTime, to: GpsTime) -> i64 {
@@ -34,26 +29,40 @@ pub(super) fn seconds(from: GpsTime, to: GpsTime) -> f32 {
 
 /// Receding speed of a rapidity difference, m/s (differences are small: c times the rapidity).
 pub(super) fn speed_from_rapidity(bits: i64) -> f32 {
-    -(bits as f32 * SPEED_PER_RAPIDITY)
+    bits as f32 * -SPEED_PER_RAPIDITY
 }
 
 /// Rapidity, or its rate, of a receding speed or acceleration.
+#[allow(clippy::cast_possible_truncation)] // a float becomes the nearest integer in range
 pub(super) fn rapidity_from_speed(speed: f32) -> i64 {
-    -((speed * RAPIDITY_PER_SPEED) as i64)
+    (speed * -RAPIDITY_PER_SPEED) as i64
 }
 
 /// Delay of a distance.
+#[allow(clippy::cast_possible_truncation)] // a float becomes the nearest integer in range
 pub(super) fn delay_from_metres(metres: f32) -> i64 {
     (metres * DELAY_PER_METRE) as i64
 }
 
-/// Delay gathered over a time at a constant rapidity `level`, behind a table of rapidity `ahead`:
-/// the slope is exp(ahead) (1 - exp(level)) = -level - level^2/2 - level^3/6 - level ahead + ...
-/// First term exact, the others (below 1e-4 of it) in f32.
-pub(super) fn delay_of_level(level: i64, ahead: i64, steps: i64) -> i64 {
-    let small = level as f32 * (1.0 / RAPIDITY_ONE);
-    let bend = small * (small * (0.5 + small * (1.0 / 6.0)) + ahead as f32 * (1.0 / RAPIDITY_ONE));
-    // 2^60 rapidity times 2^30 s is 2^90; delay has 56 fraction bits.
-    let slope = level.saturating_add((bend * RAPIDITY_ONE) as i64);
-    mul_shift(slope, steps, 34).saturating_neg()
+/// Delay gathered over a time by a rapidity that starts at `level` and grows by `growth`, behind a
+/// table of rapidity `ahead`. The slope is exp(ahead) (1 - exp(level)) = -level - level^2/2 - level^3/6 -
+/// level ahead + ...; the first term is without the growth (its distance is added by the caller), the
+/// others are means over a straight growth: mean(level^2) = middle^2 + growth^2/12.
+#[allow(clippy::cast_possible_truncation)] // below 2^-10, which `step` checks, they fit
+pub(super) fn delay_of_level(level: i64, growth: i64, ahead: i64, steps: i64) -> i64 {
+    // With 41 fraction bits rapidities below 2^-10 fit 32; a product of two has 82, then 60.
+    let product = |a: i32, b: i32| i64::from(a).wrapping_mul(i64::from(b)) >> 22;
+    let middle = (level.wrapping_add(growth >> 1) >> 19) as i32;
+    let grown = (growth >> 19) as i32;
+    let square = product(middle, middle);
+    let cube = product(middle, (square >> 19) as i32);
+    // (middle^2 + growth^2/12)/2 + middle^3/6 + middle ahead; 1/6 and 1/24 with 16 fraction bits.
+    let cross = product(middle, (ahead >> 19) as i32).wrapping_add(square >> 1);
+    let small = cube.wrapping_mul(10_923).wrapping_add(product(grown, grown).wrapping_mul(2_731)) >> 16;
+    let slope = level.wrapping_add(cross).wrapping_add(small);
+    // 2^60 rapidity times 2^30 s is 2^90; delay has 56 fraction bits. The product in three parts.
+    let (low, high) = (steps & 0xffff_ffff, steps >> 32);
+    let below = (slope & 0xffff_ffff).cast_unsigned().wrapping_mul(low.cast_unsigned()) >> 32;
+    let above = (slope >> 32).wrapping_mul(low).wrapping_add(slope.wrapping_mul(high));
+    (above.wrapping_add(below.cast_signed()) >> 2).wrapping_neg()
 }
