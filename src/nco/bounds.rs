@@ -7,11 +7,11 @@
 pub const FULL_SCALE: i32 = 0x7FFF_0000;
 
 /// Worst error of [`cosine_sine_quick`](super::cosine_sine_quick), in full scales, over all phases.
-pub const QUICK_ERROR: f64 = 3.0e-6;
+pub const QUICK_ERROR: f64 = 3.2e-7;
 
 /// Worst error of [`cosine_sine_quick_i16`](super::cosine_sine_quick_i16), in units of the last place of an
 /// amplitude of 32767, over all phases.
-pub const QUICK_I16_ERROR: f64 = 0.60;
+pub const QUICK_I16_ERROR: f64 = 0.511;
 
 /// Worst error of [`cosine_sine_fine`](super::cosine_sine_fine), in full scales, over all phases: below 2^-28.7.
 pub const FINE_ERROR: f64 = 2.2e-9;
