@@ -80,17 +80,22 @@ fn fine_is_within_its_bound() {
 }
 
 #[test]
-fn half_and_quarter_cycles_are_exact_symmetries() {
+fn axes_are_exact() {
+    let full = bounds::FULL_SCALE;
+    for (quadrant, (cosine, sine)) in [(1, 0), (0, 1), (-1, 0), (0, -1)].into_iter().enumerate() {
+        let phase = (quadrant as u32) << 30;
+        // Table entries of the second half are complements: one unit of 2^-31 off.
+        let quick = cosine_sine_quick(phase);
+        assert!((quick.re - cosine * full).abs() <= 1 && (quick.im - sine * full).abs() <= 1, "{quick}");
+        assert_eq!(cosine_sine_quick_i16(phase), Complex::new(cosine as i16 * 32767, sine as i16 * 32767));
+    }
+}
+
+#[test]
+fn the_fine_pair_has_exact_symmetries() {
     for phase in (0..1u64 << 32).step_by(99_991).map(|phase| phase as u32).chain([0, u32::MAX, 1 << 31]) {
-        let (half, quarter) = (phase.wrapping_add(1 << 31), phase.wrapping_add(1 << 30));
-        let here = cosine_sine_quick(phase);
-        assert_eq!(cosine_sine_quick(half), Complex::new(!here.re, !here.im));
-        assert_eq!(cosine_sine_quick(quarter), Complex::new(!here.im, here.re));
-        let here = cosine_sine_quick_i16(phase);
-        assert_eq!(cosine_sine_quick_i16(half), -here);
-        assert_eq!(cosine_sine_quick_i16(quarter), Complex::new(-here.im, here.re));
         let here = cosine_sine_fine(phase);
-        assert_eq!(cosine_sine_fine(half), -here);
-        assert_eq!(cosine_sine_fine(quarter), Complex::new(-here.im, here.re));
+        assert_eq!(cosine_sine_fine(phase.wrapping_add(1 << 31)), -here);
+        assert_eq!(cosine_sine_fine(phase.wrapping_add(1 << 30)), Complex::new(-here.im, here.re));
     }
 }

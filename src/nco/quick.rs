@@ -1,26 +1,25 @@
-//! Cosine and sine by a quarter-wave table of straight lines: the cheap pair.
+//! Cosine and sine by a table and a turn of second order: the cheap pair.
 
 use num_complex::Complex;
 
-use super::tables::QUARTER_WAVE;
+use super::tables::HALF_WAVE;
 
 /// Cosine (`re`) and sine (`im`) of a phase, quickly.
 ///
 /// `phase` is in 2^-32 cycle, wrapping. Both results are in units of
-/// [`FULL_SCALE`](super::bounds::FULL_SCALE) (32767 * 2^16), so they lie within +-(2^31 - 1). Half a cycle later
-/// both are exactly the bitwise complement, and a quarter later the cosine is exactly what the sine was, so
-/// there is no offset and no even harmonic, and both rails are equally strong.
+/// [`FULL_SCALE`](super::bounds::FULL_SCALE) (32767 * 2^16), and within +-(2^31 - 1).
 ///
 /// # Accuracy
 /// Within [`QUICK_ERROR`](super::bounds::QUICK_ERROR) of full scale over all 2^32 phases (`tests/nco_sine.rs`).
 ///
 /// # Cost
-/// About 25 instructions on a Cortex-M4F and 40 on a Cortex-M0, independent of the phase; 1 KiB of table.
-/// 32-bit products only.
+/// 32 instructions on a Cortex-M4F and 44 on a Cortex-M0, call included, the same for every phase; 1 KiB of
+/// table. Products of 32 bits only.
 ///
 /// # Source
-/// Each of the 256 segments of the quarter wave is the straight line of least worst error, (pi/512)^2 / 4
-/// off; value and slope share one word.
+/// From the nearest of 512 steps of the circle, where cosine and sine are C and S, the rest d of the angle turns
+/// the pair to (C - d (S + C d/2), S + d (C - S d/2)). |d| is below pi/512, so what is left out is below
+/// d^3/6 = 3.9e-8; the rest of the error is that of C and S to 17 bits in the brackets, and of d to 2^-22.
 ///
 /// ```
 /// use shiftkeel::nco::{bounds, cosine_sine_quick};
@@ -28,29 +27,38 @@ use super::tables::QUARTER_WAVE;
 /// let pair = cosine_sine_quick(1 << 29);
 /// let cosine = f64::from(pair.re) / f64::from(bounds::FULL_SCALE);
 /// assert!((cosine - 0.5_f64.sqrt()).abs() < bounds::QUICK_ERROR);
-/// assert_eq!(cosine_sine_quick((1 << 29) + (1 << 31)).re, !pair.re);
 /// ```
 #[inline]
 pub const fn cosine_sine_quick(phase: u32) -> Complex<i32> {
-    // All ones in the second and fourth quadrant, where the quarter wave runs backwards.
-    let backwards = ((phase << 1) as i32 >> 31) as u32;
-    let sine_is_negative = phase as i32 >> 31;
-    let quarter = (phase << 2) ^ backwards;
+    // What the rest of the angle loses by rounding down, on average: 64/2 for its own bits, the rest for d's.
+    let phase = phase.wrapping_add(113);
+    let sine_place = phase.wrapping_add(1 << 22);
+    let cosine_place = sine_place.wrapping_add(1 << 30);
+    let (sine, cosine) = (from_table(sine_place), from_table(cosine_place));
+    // The rest of the angle in 2^-17 of a step, then in 2^-22 rad: 25736 / 2^15 is pi / 4.
+    let rest = ((phase << 9) as i32 >> 15).wrapping_mul(25_736) >> 16;
+    // 16 bits and the sign; with a rest below 25736 the products fit.
+    let (short_sine, short_cosine) = (sine >> 15, cosine >> 15);
+    let sine_slope = short_cosine.wrapping_sub(short_sine.wrapping_mul(rest) >> 23);
+    // The sign inside makes the rounding down of both shifts cancel, as it does above.
+    let cosine_slope = short_sine.wrapping_sub(0i32.wrapping_sub(short_cosine.wrapping_mul(rest)) >> 23);
     Complex {
-        re: magnitude(!quarter) ^ sine_is_negative ^ backwards as i32,
-        im: magnitude(quarter) ^ sine_is_negative,
+        re: cosine.wrapping_sub(rest.wrapping_mul(cosine_slope) >> 7),
+        im: sine.wrapping_add(rest.wrapping_mul(sine_slope) >> 7),
     }
 }
 
 /// The same pair rounded to 16 bits: within +-32767.
 ///
-/// `phase` is in 2^-32 cycle, wrapping. Half a cycle later both are exactly the negative.
+/// `phase` is in 2^-32 cycle, wrapping.
 ///
 /// # Accuracy
-/// Within [`QUICK_I16_ERROR`](super::bounds::QUICK_I16_ERROR) of the last place over all 2^32 phases (`tests/nco_sine.rs`).
+/// Within [`QUICK_I16_ERROR`](super::bounds::QUICK_I16_ERROR) of the last place over all 2^32 phases
+/// (`tests/nco_sine.rs`); its strongest spur is that of exact values rounded, within 1 dB
+/// (`tests/nco_spectrum.rs`).
 ///
 /// # Cost
-/// Four instructions more than [`cosine_sine_quick`].
+/// Four instructions more than [`cosine_sine_quick`], and what it takes to return two halves.
 ///
 /// ```
 /// use num_complex::Complex;
@@ -64,16 +72,12 @@ pub const fn cosine_sine_quick_i16(phase: u32) -> Complex<i16> {
     Complex { re: round_to_i16(pair.re), im: round_to_i16(pair.im) }
 }
 
-/// Sine of a quarter wave; `quarter` in 2^-32 of the quarter; result 0 to 2^31 - 1.
+/// Sine at the step of the circle that `place` lies in; in the second half the complement, half a unit of 2^-31
+/// from the negative.
 #[inline(always)]
 #[allow(clippy::indexing_slicing)] // Eight bits index 256 entries.
-const fn magnitude(quarter: u32) -> i32 {
-    let entry = QUARTER_WAVE[(quarter >> 24) as usize];
-    let offset = quarter << 8 >> 12;
-    // 12 by 20 bits: the product fits. The slope's bits are left in the word as part of the value; the table's
-    // generator has counted them in.
-    let rise = (entry & 0xFFF).wrapping_mul(offset) >> 7;
-    (entry.wrapping_add(rise) >> 1) as i32
+const fn from_table(place: u32) -> i32 {
+    HALF_WAVE[(place << 1 >> 24) as usize] as i32 ^ (place as i32 >> 31)
 }
 
 /// The upper half, rounded to nearest. The pair never comes closer than 2^15 to the end of its range.

@@ -3,69 +3,15 @@
 //! The only transcendental functions used are those of the `libm` crate, which is plain Rust and gives the
 //! same bits on every host, so the text does not depend on the machine that makes it.
 
-use core::f64::consts::{FRAC_PI_2, PI};
+use core::f64::consts::PI;
 use std::fmt::Write as _;
 
 /// Full scale of every 32-bit output: 32767 * 2^16, so that rounding to 16 bits gives exactly +-32767.
 pub const FULL_SCALE: f64 = 2_147_418_112.0;
 
-/// Segments of the quick routine's quarter wave.
-const SEGMENTS: usize = 256;
-
-/// One segment of the quick routine as the firmware evaluates it: magnitude in 2^-32 for a 20-bit offset.
-fn quick_magnitude(entry: u32, offset: u32) -> u32 {
-    entry + (((entry & 0xFFF) * offset) >> 7)
-}
-
-/// Worst error of `entry` over its segment, in units of full scale.
-///
-/// The error of a straight line against a sine is largest at an end or where the slopes agree; the ends and
-/// the neighbourhood of that point are evaluated exactly as the firmware does.
-fn quick_worst(segment: usize, entry: u32) -> f64 {
-    let angle = |offset: u32| (segment as f64 + (f64::from(offset) + 0.5) / 1_048_576.0) / 256.0 * FRAC_PI_2;
-    let error = |offset: u32| {
-        let value = f64::from(quick_magnitude(entry, offset) >> 1) + 0.5;
-        (value / FULL_SCALE - libm::sin(angle(offset))).abs()
-    };
-    // The slope of the line per radian, in units of full scale; the sine's slope is the cosine.
-    let slope = f64::from(entry & 0xFFF) * 1_048_576.0 / 128.0 / 2.0 / FULL_SCALE / (FRAC_PI_2 / 256.0);
-    let mut worst = error(0).max(error(0xF_FFFF));
-    if slope < 1.0 {
-        let touch = (libm::acos(slope) / FRAC_PI_2 * 256.0 - segment as f64) * 1_048_576.0;
-        if touch > 0.0 && touch < 1_048_575.0 {
-            worst = worst.max(error(touch as u32));
-        }
-    }
-    worst
-}
-
-/// The quick routine's quarter wave: 256 entries, each a 20-bit value above a 12-bit slope.
-///
-/// Value and slope are chosen together: every pair near the best straight line is tried and the one with the
-/// smallest worst error is kept (the first of equals). The slope's bits stay in the word when the value is
-/// read, which saves the firmware a mask; the search takes them into account.
-pub fn quick_table() -> Vec<u32> {
-    let step = FRAC_PI_2 / SEGMENTS as f64;
-    (0..SEGMENTS)
-        .map(|segment| {
-            let (start, end) = (segment as f64 * step, (segment + 1) as f64 * step);
-            let rise = libm::sin(end) - libm::sin(start);
-            // 2 * FULL_SCALE: the table holds magnitudes in 2^-32, the output is half of that.
-            let slope = (rise * 2.0 * FULL_SCALE * 128.0 / 1_048_576.0) as i64;
-            let value = (libm::sin(start) * 2.0 * FULL_SCALE / 4096.0) as i64;
-            let mut best = (f64::INFINITY, 0);
-            for slope in (slope - 4).max(0)..=(slope + 5).min(0xFFF) {
-                for value in (value - 4).max(0)..=(value + 5).min(0xF_FFFF) {
-                    let entry = (value << 12 | slope) as u32;
-                    let worst = quick_worst(segment, entry);
-                    if worst < best.0 {
-                        best = (worst, entry);
-                    }
-                }
-            }
-            best.1
-        })
-        .collect()
+/// The quick routine's half wave: sines of 256 equal steps from 0 to half a cycle, in units of 2^-31.
+pub fn half_wave() -> Vec<u32> {
+    (0..256).map(|step| (FULL_SCALE * libm::sin(f64::from(step) / 256.0 * PI)).round() as u32).collect()
 }
 
 /// Coefficients of the polynomial of degree `N - 2` that comes nearest to `target` over -1..1 when the error is
@@ -246,11 +192,7 @@ pub fn text() -> String {
         "//! Made by `tests/reference/nco_tables.rs`; `tests/nco_tables.rs` compares. Do not edit.\n",
     );
     for (what, name, entries) in [
-        (
-            "Sine of a quarter wave in 256 straight lines: a 20-bit value above a 12-bit slope",
-            "QUARTER_WAVE",
-            quick_table(),
-        ),
+        ("Sine of half a cycle in 256 steps", "HALF_WAVE", half_wave()),
         ("The mixer's circle in 256 cells: a 16-bit sine above a 16-bit cosine", "MIXER_WAVE", mixer_table()),
     ] {
         writeln!(out, "\n/// {what}.\n#[rustfmt::skip]\npub(super) static {name}: [u32; 256] = [").unwrap();
