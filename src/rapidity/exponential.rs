@@ -4,7 +4,7 @@
 //! |r| < 2^-8.5. The table holds 71 bits of 2^(j/128), and sums carry 8 bits below the word, so that what
 //! is left of a difference from one still has 60 good bits.
 
-use super::coefficients::{EXPONENTIAL_RESTS, EXPONENTIALS, LOGARITHM_RECIPROCALS};
+use super::coefficients::{EXPONENTIAL_RESTS, EXPONENTIALS, RECIPROCALS};
 use super::wide_product::{about_high_i64, high_i32, high_i64_i32, high_u64};
 
 /// 128 / ln 2 with 18 fraction bits.
@@ -154,21 +154,22 @@ pub(crate) const fn tanh_magnitude(x: i64) -> u64 {
     let shift = power.exponent.unsigned_abs();
     let below = power.high & (1_u64 << shift).wrapping_sub(1);
     let fraction = (below << 8 | power.low) >> shift.wrapping_add(1);
-    // 1 + X, which only x = 0 takes to 2.
+    // 1 + X, which only x = 0 takes to 2, where the word ends.
     let sum = (1_u64 << 63).saturating_add(power.high >> shift);
-    let reciprocal = LOGARITHM_RECIPROCALS[((sum >> 56) & 0x7f) as usize] as u64;
-    let z = ((sum >> 32).wrapping_mul(reciprocal) << 24)
-        .wrapping_add((sum as u32 as u64).wrapping_mul(reciprocal) >> 8)
-        .wrapping_add(fraction.wrapping_mul(reciprocal) >> 15) as i64;
+    let reciprocal = RECIPROCALS[((sum >> 56) & 0x7f) as usize] as u64;
+    let z = ((sum >> 32).wrapping_mul(reciprocal) << 23)
+        .wrapping_add((sum as u32 as u64).wrapping_mul(reciprocal) >> 9)
+        .wrapping_add(fraction.wrapping_mul(reciprocal) >> 16) as i64;
     let y = reciprocal_offset(z);
-    // r (1 + y) with 64 fraction bits; r has 15, y has 70.
-    let high = (y >> 32).wrapping_mul(reciprocal as i64) << 11;
-    let low = (y as u32 as i64).wrapping_mul(reciprocal as i64).wrapping_add(1 << 20) >> 21;
+    // r (1 + y) with 64 fraction bits; r has 16, y has 70.
+    let high = (y >> 32).wrapping_mul(reciprocal as i64) << 10;
+    let low = (y as u32 as i64).wrapping_mul(reciprocal as i64).wrapping_add(1 << 21) >> 22;
     let bend = high.wrapping_add(low);
-    (reciprocal << 49).wrapping_add(bend as u64).wrapping_sub(1 << 63)
+    let tanh = (reciprocal << 48).wrapping_add(bend as u64).wrapping_sub(1 << 63);
+    if x == 0 { 0 } else { tanh }
 }
 
-/// 1/(1 + z) - 1 with 70 fraction bits, |z| < 2^-7.99; error below 2^-67.
+/// 1/(1 + z) - 1 with 70 fraction bits, |z| < 2^-7.9; error below 2^-67.
 ///
 /// -z + z^2 (1 - z (1 - z (1 - z (1 - z (1 - z (1 - z))))))
 const fn reciprocal_offset(z: i64) -> i64 {

@@ -1,9 +1,9 @@
 //! Natural logarithm in 64 bits: the core of every constructor that starts from a ratio.
 //!
 //! ln(m) = -ln(r) + ln(1 + z) with z = m r - 1, where r is one of 128 reciprocals that keeps |z| below
-//! 2^-7.99, and ln(1 + z) is the power series. No division.
+//! 2^-7.9, and ln(1 + z) is the power series. No division.
 
-use super::coefficients::{LOGARITHM_RECIPROCALS, LOGARITHMS};
+use super::coefficients::{LOGARITHMS, RECIPROCALS};
 use super::wide_product::{about_high_i64, high_i32, high_i64_i32};
 
 /// ln 2 with 60 fraction bits, cut to an even number ...
@@ -28,10 +28,10 @@ pub(crate) const fn logarithm(x: u64) -> Logarithm {
     let shift = x.leading_zeros();
     let mantissa = x << shift;
     let index = ((mantissa >> 56) & 0x7f) as usize;
-    let reciprocal = LOGARITHM_RECIPROCALS[index] as u64;
-    // z with 70 fraction bits: m r 2^-(63 + 15) - 1, where the one lies beyond the word and falls off.
-    let high = (mantissa >> 32).wrapping_mul(reciprocal) << 24;
-    let low = (mantissa as u32 as u64).wrapping_mul(reciprocal) >> 8;
+    let reciprocal = RECIPROCALS[index] as u64;
+    // z with 70 fraction bits: m r 2^-(63 + 16) - 1, where the one lies beyond the word and falls off.
+    let high = (mantissa >> 32).wrapping_mul(reciprocal) << 23;
+    let low = (mantissa as u32 as u64).wrapping_mul(reciprocal) >> 9;
     let z = high.wrapping_add(low) as i64;
     let series = logarithm_of_one_plus(z).wrapping_add(1 << 6) >> 7;
     Logarithm {
@@ -40,7 +40,7 @@ pub(crate) const fn logarithm(x: u64) -> Logarithm {
     }
 }
 
-/// ln(1 + z), both with 70 fraction bits, |z| < 2^-7.99; error below 2^-64.
+/// ln(1 + z), both with 70 fraction bits, |z| < 2^-7.9; error below 2^-64.
 ///
 /// z - z^2 (1/2 - z (1/3 - z (1/4 - z (1/5 - z (1/6 - z/7))))); the first left out, z^8/8, is under 2^-66.
 const fn logarithm_of_one_plus(z: i64) -> i64 {
