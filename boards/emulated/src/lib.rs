@@ -11,7 +11,6 @@ pub mod count;
 pub mod digest;
 #[cfg(feature = "harness")]
 pub mod pass;
-#[cfg(feature = "harness")]
 pub mod plans;
 #[cfg(feature = "costs")]
 pub mod routines;

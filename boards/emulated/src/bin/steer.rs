@@ -1,5 +1,6 @@
-//! The least firmware that steers, for measuring flash: at every tick it reads the time, asks the table,
-//! and writes the oscillator's word. Without the feature `library` it writes a word of the table instead.
+//! The least firmware that steers, for measuring flash: it checks an uploaded table, makes its channel, and at
+//! every tick asks the table for the motion and gives the oscillator its step and ramp. Without the feature
+//! `library` the same firmware hands the oscillator words of the upload instead.
 #![cfg_attr(target_os = "none", no_std, no_main)]
 
 #[cfg(not(target_os = "none"))]
@@ -11,41 +12,102 @@ fn main() {
 mod firmware {
     use core::ptr::{addr_of, addr_of_mut};
 
-    /// Stands for a table that was uploaded.
-    #[unsafe(no_mangle)]
-    static mut TABLE: [u32; 64] = [0; 64];
-    /// Stands for a timer's register.
-    #[unsafe(no_mangle)]
-    static mut TIMER: u32 = 0;
-    /// Stands for an oscillator's register.
-    #[unsafe(no_mangle)]
-    static mut WORD: u64 = 0;
+    const TABLE_WORDS: usize = 256;
 
-    fn steer() -> ! {
-        loop {
-            // SAFETY: single reads and writes of what stands for registers.
-            let timer = unsafe { addr_of!(TIMER).read_volatile() };
-            let word = word(timer);
-            unsafe { addr_of_mut!(WORD).write_volatile(word) };
+    /// Stands for what the outside world writes: where a table was uploaded, a crystal's offset, the time.
+    #[repr(C)]
+    struct Inputs {
+        table: Option<&'static [u32; TABLE_WORDS]>,
+        crystal: i64,
+        time: i64,
+    }
+
+    /// Stands for the registers of an oscillator.
+    #[repr(C)]
+    struct Outputs {
+        step: u64,
+        ramp: i64,
+        stopped: u32,
+    }
+
+    #[unsafe(no_mangle)]
+    static mut INPUTS: Inputs = Inputs { table: None, crystal: 0, time: 0 };
+    #[unsafe(no_mangle)]
+    static mut OUTPUTS: Outputs = Outputs { step: 0, ramp: 0, stopped: 0 };
+
+    fn crystal() -> i64 {
+        // SAFETY: a single read of what stands for a register.
+        unsafe { addr_of!(INPUTS.crystal).read_volatile() }
+    }
+
+    fn time() -> i64 {
+        // SAFETY: a single read of what stands for a register.
+        unsafe { addr_of!(INPUTS.time).read_volatile() }
+    }
+
+    fn table() -> Option<&'static [u32; TABLE_WORDS]> {
+        // SAFETY: a single read of what stands for a register; an upload stays where it is.
+        unsafe { addr_of!(INPUTS.table).read_volatile() }
+    }
+
+    fn tune(step: u64, ramp: i64) {
+        // SAFETY: single writes of what stands for registers.
+        unsafe {
+            addr_of_mut!(OUTPUTS.step).write_volatile(step);
+            addr_of_mut!(OUTPUTS.ramp).write_volatile(ramp);
         }
     }
 
-    fn word(timer: u32) -> u64 {
-        let entry = timer as usize % 64;
-        // SAFETY: the entry is inside the table.
-        unsafe { addr_of!(TABLE).cast::<u32>().add(entry).read_volatile().into() }
+    fn stop(reason: u32) {
+        // SAFETY: a single write of what stands for a register.
+        unsafe { addr_of_mut!(OUTPUTS.stopped).write_volatile(reason) };
+    }
+
+    #[cfg(feature = "library")]
+    fn steer() {
+        use shiftkeel::pass::PassTable;
+        use shiftkeel::rapidity::Rapidity;
+        use shiftkeel::time::GpsTime;
+        use shiftkeel::tuning::Sweep;
+        use shiftkeel_emulated::plans;
+
+        let Some(words) = table() else { return stop(1) };
+        let Ok(table) = PassTable::new(words) else { return stop(1) };
+        let Ok(channel) = plans::receiver(Rapidity::from_bits(crystal())) else { return stop(2) };
+        let Ok(first) = table.at(GpsTime::from_bits(time())) else { return stop(3) };
+        let Ok(mut sweep) = Sweep::begin(&channel, &first) else { return stop(4) };
+        loop {
+            let Ok(motion) = table.at(GpsTime::from_bits(time())) else { return stop(3) };
+            let Ok(swept) = sweep.step(&channel, &motion) else { return stop(4) };
+            tune(swept.first.to_bits(), swept.ramp.to_bits());
+        }
+    }
+
+    #[cfg(not(feature = "library"))]
+    fn steer() {
+        let Some(words) = table() else { return stop(1) };
+        let offset = crystal();
+        loop {
+            let now = time();
+            let Some(word) = words.get(now as usize) else { return stop(3) };
+            tune((*word).into(), offset);
+        }
     }
 
     #[cfg(target_arch = "arm")]
     #[cortex_m_rt::entry]
     fn start() -> ! {
-        steer()
+        loop {
+            steer();
+        }
     }
 
     #[cfg(target_arch = "riscv32")]
     #[riscv_rt::entry]
     fn start() -> ! {
-        steer()
+        loop {
+            steer();
+        }
     }
 
     #[panic_handler]

@@ -33,3 +33,13 @@ fn line<I: Opaque, O: Opaque>(
 ) {
     report(name, &cost(input, routine));
 }
+
+/// Bytes of RAM that each state takes.
+pub fn states(report: fn(&str, usize)) {
+    use core::mem::size_of;
+    report("PassTable", size_of::<shiftkeel::pass::PassTable<'_>>());
+    report("Channel", size_of::<shiftkeel::tuning::Channel<false>>());
+    report("Sweep", size_of::<shiftkeel::tuning::Sweep>());
+    report("Hold", size_of::<shiftkeel::tuning::Hold<32>>());
+    report("Nco", size_of::<shiftkeel::nco::Nco>());
+}
