@@ -30,7 +30,8 @@ impl Gain {
         }
     }
 
-    /// The factor times `x`, rounded down, modulo 2^64: relative error 2^-63.
+    /// The factor times `x`, modulo 2^64, rounded down by at most [`Self::resolution`]; the factor itself is good
+    /// to 2^-63.
     #[inline]
     pub(super) fn times(&self, x: i32) -> u64 {
         let x = i64::from(x);
@@ -43,6 +44,11 @@ impl Gain {
     #[inline]
     pub(super) fn times_coarse(&self, x: i32) -> u64 {
         self.shift(i64::from(x).wrapping_mul(i64::from(self.high)))
+    }
+
+    /// Units of 2^-64 by which [`Self::times`] may round down before its last place.
+    pub(super) fn resolution(&self) -> f64 {
+        libm::ldexp(1.0, i32::from(self.left) - i32::from(self.right))
     }
 
     #[inline]

@@ -7,8 +7,8 @@
 //! `s1 = m + e + (w - s0) / 2`
 //!
 //! is the mean of the end that lands exactly on the model's phase and the model's own end. The first alone
-//! rings for ever, the second alone drifts; together they forget an error after two intervals (the recursion's
-//! matrix is nilpotent), and the phase at an interval's end is off by half of what a straight line cannot
+//! rings for ever, the second alone drifts; together they forget an error after two intervals (the recursion of
+//! (s1 - w, e) is the matrix (-1/2, 1; -1/4, 1/2), whose square is zero), and the phase at an interval's end is off by half of what a straight line cannot
 //! follow of the model inside that one interval.
 
 use super::{Channel, TuningError};
@@ -60,7 +60,7 @@ pub struct Swept {
 }
 
 impl Sweep {
-    /// Starts (or starts again, after a gap or another table) at the motion of the first interval's start.
+    /// Starts (or starts again, after a gap, a refusal or another table) at the motion of the first interval's start.
     ///
     /// # Errors
     /// As [`Channel::step`].
@@ -84,9 +84,16 @@ impl Sweep {
 
     /// Steers the coming interval, given the motion at its end.
     ///
+    /// The motion is compared with that of the last call, one interval before: after a missed instant
+    /// [`Self::begin`] again (a shift of two intervals in one is beyond what a ramp follows, and refused).
+    ///
+    /// # Accuracy
+    /// Frequency and phase within [`Proven::of_sweep`](super::Proven::of_sweep) (`tests/steering.rs`).
+    ///
     /// # Errors
     /// [`TuningError::TooFast`], [`TuningError::OutsideFence`]: the state is as before; the oscillator shall keep
-    /// [`Self::end`], and a transmitter shall stop radiating. After a gap, [`Self::begin`] again.
+    /// [`Self::end`] without a ramp, and a transmitter shall stop radiating. [`Self::begin`] again at the next
+    /// good motion.
     #[inline]
     pub fn step<const RADIATES: bool>(
         &mut self,
@@ -101,6 +108,8 @@ impl Sweep {
         let half = (own.wrapping_sub(start) as i64) >> 1;
         let change = wanted.wrapping_add(half as u64).wrapping_sub(start) as i64;
         let (ramp, made) = channel.ramp.ramp(change).ok_or(TuningError::TooFast)?;
+        // Both ends: the start may come from before a change of the channel.
+        channel.permitted(start)?;
         channel.permitted(start.wrapping_add(made as u64))?;
         self.end = start.wrapping_add(made as u64);
         self.remainder = wanted.wrapping_sub(start).wrapping_sub((made >> 1) as u64) as i64;
