@@ -135,21 +135,14 @@ impl Proven {
             hertz: carrier * (2.0 * delay_shift / interval + extremes.rate * steering.time_error),
             cycles: carrier * delay_shift,
         };
-        // Noise of the evaluation's difference, and the delay's dropped bits; eight units of the slope's own.
-        let noise = f64::from(table.evaluation_noise()) * unit + channel.delay_resolution();
-        let arithmetic = Bound {
-            hertz: carrier * (noise / interval + 8.0 * table.slope_resolution()),
-            cycles: carrier * noise,
-        };
-        // W0 to half of 2^-64 over the whole table, the gains to 2^-31 and 2^-63 of the shift.
+        let noise = Self::noise(channel, table);
+        let arithmetic = Bound { hertz: carrier * noise / interval, cycles: carrier * noise };
+        // W0 and the gain's places over the whole table, the gain itself to 2^-62 of the shift. The crystals'
+        // exponentials (2^-60) belong to the crystals' own uncertainty.
         let span = table.end().seconds_since(table.start());
-        let nominal = steering.clock * libm::ldexp(1.0, -64);
-        let constants = Bound {
-            hertz: nominal
-                + carrier * extremes.slope * libm::ldexp(1.0, -31)
-                + carrier * libm::ldexp(1.0, -44),
-            cycles: nominal * span + carrier * extremes.slope * span * libm::ldexp(1.0, -62),
-        };
+        let places = steering.clock * channel.mean_resolution();
+        let gain = carrier * extremes.slope * libm::ldexp(1.0, -62);
+        let constants = Bound { hertz: places + gain, cycles: (places + gain) * span };
         Self::default()
             .with(ProvenPart::Table, table_part)
             .with(ProvenPart::TimeGrid, time_grid)
@@ -157,7 +150,22 @@ impl Proven {
             .with(ProvenPart::Constants, constants)
     }
 
+    /// What evaluation and the delay's dropped bits add to the difference of two delays, in seconds.
+    fn noise<const RADIATES: bool>(channel: &Channel<RADIATES>, table: &PassTable<'_>) -> f64 {
+        f64::from(table.evaluation_noise()) * libm::ldexp(1.0, -60) + channel.delay_resolution()
+    }
+
+    fn adding(self, part: ProvenPart, more: Bound) -> Self {
+        self.with(part, self.part(part).plus(more))
+    }
+
     /// Of a [`Sweep`](super::Sweep) fed from a table, arc not included.
+    ///
+    /// # Source
+    /// An error x of what goes into `s1 = m + e + (w - s0) / 2` leaves (s1 - w, e) off by x (1, 1/2) when it is in
+    /// the mean, by x (1/2, -1/4) then x (-1/2, -1/4) in the own step, by x (-1, 1/2) then x (1, 1/2) in the ramp's
+    /// rounding, and nothing later. A phase between two ends is off by those at the ends and an eighth of the
+    /// interval times the difference of the steps' errors.
     pub fn of_sweep<const RADIATES: bool>(
         channel: &Channel<RADIATES>,
         table: &PassTable<'_>,
@@ -169,9 +177,20 @@ impl Proven {
         let bend = steering.carrier * extremes.jerk * interval * interval;
         let change = steering.carrier * extremes.rate * interval / steering.clock;
         let unit = steering.clock * channel.ramp_resolution(change);
-        let ramp =
-            Bound { hertz: bend * (1.0 / 8.0 + 1.0 / 12.0) + unit, cycles: (bend / 12.0 + unit) * interval };
-        Self::of_table(channel, table, steering, &extremes).with(ProvenPart::Ramp, ramp)
+        let ramp = Bound {
+            hertz: bend * (1.0 / 8.0 + 1.0 / 12.0) + 2.0 * unit,
+            cycles: (bend / 12.0 + 1.5 * unit) * interval,
+        };
+        // Eight units of the slope's own evaluation, and one of 2^-44 for logarithm and offset.
+        let own = steering.carrier * (8.0 * table.slope_resolution() + libm::ldexp(1.0, -44));
+        let coarse_gain = steering.carrier * extremes.slope * libm::ldexp(1.0, -31);
+        let of_own = |hertz: f64| Bound { hertz, cycles: 0.75 * hertz * interval };
+        let of_means = Bound { hertz: 0.0, cycles: 0.75 * steering.carrier * Self::noise(channel, table) };
+        Self::of_table(channel, table, steering, &extremes)
+            .adding(ProvenPart::Arithmetic, of_own(own))
+            .adding(ProvenPart::Arithmetic, of_means)
+            .adding(ProvenPart::Constants, of_own(coarse_gain))
+            .with(ProvenPart::Ramp, ramp)
     }
 
     /// Of a [`Hold`](super::Hold) with words of `bits` bits fed from a table, arc not included. `deadband` in
@@ -189,7 +208,10 @@ impl Proven {
         let place = steering.clock * libm::ldexp(1.0, -(bits as i32));
         let steered = deadband == 0.0 && quiet == 0.0;
         // Half a place of rounding, and half a place carried from the last interval.
-        let word = Bound { hertz: if steered { place } else { place / 2.0 }, cycles: place / 2.0 * interval };
+        let word = Bound {
+            hertz: if deadband == 0.0 { place } else { place / 2.0 },
+            cycles: place / 2.0 * interval,
+        };
         let drift = steering.carrier * extremes.rate;
         let bend = steering.carrier * extremes.jerk * interval * interval;
         let hold = Bound {

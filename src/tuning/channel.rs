@@ -3,7 +3,7 @@
 use fixed::types::I16F16;
 
 use super::gain::Gain;
-use super::plan::Folded;
+use super::plan::{Folded, scaled};
 use super::{Injection, Permission, RfPlan, TuningError};
 use crate::frequency::{ClockRatio, Frequency, PhaseStep, divide_nearest};
 use crate::rapidity::narrow::{first_order_range_rate, offset_of_rapidity};
@@ -13,8 +13,11 @@ use crate::rapidity::{Delay, Rapidity};
 /// A channel that is steered every so many clocks: receiving (`RADIATES` false) or transmitting (true).
 ///
 /// Immutable and `Copy`: one serves several oscillators. When a crystal offset changes, build it again
-/// (set-up cost) and go on with the same [`Sweep`](super::Sweep) or [`Hold`](super::Hold): the phase stays
-/// continuous.
+/// (set-up cost) with as many clocks an interval and go on with the same [`Sweep`](super::Sweep) or
+/// [`Hold`](super::Hold): the phase stays continuous.
+///
+/// An interval lasts as long as its clocks really take: with the clock's crystal fast by Kc,
+/// `clocks / (clock exp(Kc))` seconds. Ask the table for the motion at those instants.
 #[derive(Clone, Copy, Debug)]
 pub struct Channel<const RADIATES: bool> {
     /// W0 in 2^-64 cycle per clock.
@@ -66,7 +69,7 @@ impl RampUnits {
 }
 
 impl Channel<false> {
-    /// A receiving channel, steered every `clocks` clocks (up to a minute).
+    /// A receiving channel, steered every `clocks` clocks (under a minute).
     ///
     /// # Errors
     /// See [`TuningError`].
@@ -96,27 +99,26 @@ impl Channel<true> {
         folded: &Folded,
         permission: &Permission,
     ) -> Result<(i64, i64), TuningError> {
+        let below = (i128::from(permission.lowest().to_bits()) << 56) - folded.true_carrier;
+        let above = folded.true_carrier - (i128::from(permission.highest().to_bits()) << 56);
+        let outside = below.max(above);
+        if outside > 0 {
+            let hertz = u32::try_from(outside >> 80).unwrap_or(u32::MAX).saturating_add(1);
+            return Err(TuningError::OutsideFence { hertz });
+        }
         let half_clock = i128::from(plan.clock.to_bits()) << 55;
         let edge = |frequency: Frequency| {
-            let away = (i128::from(frequency.to_bits()) << 56) - folded.true_carrier;
+            // In hertz of the oscillator's own clock: a fast clock radiates further off for the same step.
+            let away = scaled(frequency, plan.clock_crystal.to_bits().saturating_neg())? - folded.carrier;
             if away.abs() >= half_clock {
                 return Err(TuningError::FenceNotUsable);
             }
-            // Within half a clock: below 2^63 of the word.
+            // Within half a clock: below 2^63 of the word. Rounded inwards.
             let (whole, fraction) = divide_nearest(away.unsigned_abs(), plan.clock.to_bits());
             let size = ((whole << 8) as i64).saturating_add((fraction >> 56) as i64);
             Ok(if away < 0 { -size } else { size })
         };
-        let band = (edge(permission.lowest())?, edge(permission.highest())?);
-        if band.0 > 0 || band.1 < 0 {
-            let away = if band.0 > 0 {
-                (i128::from(permission.lowest().to_bits()) << 56) - folded.true_carrier
-            } else {
-                folded.true_carrier - (i128::from(permission.highest().to_bits()) << 56)
-            };
-            return Err(TuningError::OutsideFence { hertz: (away >> 80) as u32 + 1 });
-        }
-        Ok(band)
+        Ok((edge(permission.lowest())?, edge(permission.highest())?))
     }
 }
 
@@ -161,10 +163,11 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     /// The step that a rapidity asks for: W0 + Wf expm1(L), with -L for a transmitter.
     ///
     /// # Accuracy
-    /// 1.6 units of 2^-44 of the carrier (0.04 mHz at 437 MHz) and 2^-31 of the shift (`tests/channel.rs`).
+    /// 2^-44 of the carrier (0.025 mHz at 437 MHz), half of that for a rapidity that has 44 bits (a table's), and
+    /// 2^-31 of the shift (`tests/channel.rs`).
     ///
     /// # Errors
-    /// [`TuningError::TooFast`] beyond 2^-13 or saturated; [`TuningError::OutsideFence`] for a transmitter.
+    /// [`TuningError::TooFast`] beyond 2^-13 (less 2^-27) or saturated; [`TuningError::OutsideFence`] for a transmitter.
     #[inline]
     pub fn step(&self, rapidity: Rapidity) -> Result<PhaseStep, TuningError> {
         let narrow = narrowed(rapidity)?;
@@ -176,11 +179,12 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     /// The step for a range rate in m/s, positive = receding: the cheapest way from an estimate to the
     /// oscillator.
     ///
+    /// # Accuracy
+    /// 1.2 units of 2^-16 m/s (0.027 mHz at 437 MHz), 0.65 below 8 km/s, and 2^-31 of the shift
+    /// (`tests/channel.rs`). Within 1.8 m/s of -32768 m/s the step stays.
+    ///
     /// # Errors
     /// [`TuningError::OutsideFence`] for a transmitter; a receiver's step always exists.
-    ///
-    /// # Accuracy
-    /// 2.5 units of 2^-16 m/s (0.055 mHz at 437 MHz), 0.8 below 8 km/s, and 2^-31 of the shift.
     ///
     /// # Cost
     /// About 30 instructions on a Cortex-M4, 80 on a Cortex-M0; see README.md.
@@ -195,6 +199,11 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     #[inline]
     pub(super) fn truncated(&self, delay: Delay) -> i32 {
         shifted_right(delay.to_bits(), u32::from(self.delay_shift)) as i32
+    }
+
+    /// Largest error of [`Self::mean`] beyond the delays' own, in cycles per clock: W0 and two roundings down.
+    pub(super) fn mean_resolution(&self) -> f64 {
+        libm::ldexp(2.5, -64)
     }
 
     /// What dropping bits of the delay can add to a difference, in seconds.
@@ -240,17 +249,25 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     fn refusal(&self, away: i64) -> TuningError {
         let (lowest, highest) = self.fence;
         let beyond = if away < lowest { lowest.abs_diff(away) } else { away.abs_diff(highest) };
-        let hertz = ((beyond >> 32) * (self.clock_hertz >> 8)) >> 24;
+        // Rounded up; a clock has up to 40 bits, so its two halves are multiplied apart.
+        let beyond = (beyond >> 32) + 1;
+        let low = (beyond * (self.clock_hertz & 0xFFFF_FFFF)) >> 32;
+        let hertz = low + beyond * (self.clock_hertz >> 32);
         TuningError::OutsideFence { hertz: u32::try_from(hertz).unwrap_or(u32::MAX).saturating_add(1) }
     }
 }
 
-/// To 44 fraction bits, rounded down.
+/// Bound on the upper word of a rapidity: 2^-13 less 2^-27, so that the offset, larger by its square, still fits.
+const FASTEST: i32 = 32_766;
+
+/// To 44 fraction bits, rounded to the nearest.
 #[inline]
-fn narrowed(rapidity: Rapidity) -> Result<i32, TuningError> {
-    let narrow = (rapidity.to_bits() >> 16) as i32;
-    let above = (rapidity.to_bits() >> 47) as i32;
-    if above == narrow >> 31 { Ok(narrow) } else { Err(TuningError::TooFast) }
+pub(super) fn narrowed(rapidity: Rapidity) -> Result<i32, TuningError> {
+    let above = (rapidity.to_bits() >> 32) as i32;
+    if above.wrapping_add(FASTEST) as u32 >= 2 * FASTEST as u32 {
+        return Err(TuningError::TooFast);
+    }
+    Ok((rapidity.to_bits().wrapping_add(1 << 15) >> 16) as i32)
 }
 
 /// W0, modulo one cycle for a phase step, range-checked for a ratio.
@@ -277,19 +294,41 @@ impl RatioChannel {
     /// # Errors
     /// See [`TuningError`]; [`TuningError::NegativeOutput`] and [`TuningError::RatioTooHigh`].
     pub fn receive(plan: &RfPlan<'_>, clocks: u32) -> Result<Self, TuningError> {
-        Channel::new(plan, &plan.fold()?, clocks, 48).map(Self)
+        let folded = plan.fold()?;
+        // A shift of 2^-13 of the carrier must not wrap the ratio's 64 bits.
+        if folded.carrier >> 84 >= i128::from(plan.clock.to_bits()) {
+            return Err(TuningError::RatioTooHigh);
+        }
+        Channel::new(plan, &folded, clocks, 48).map(Self)
     }
 
     /// The ratio that a rapidity asks for.
     ///
+    /// # Accuracy
+    /// As [`Channel::step`], and 2.5 units of 2^-48 (W0 and two roundings down) (`tests/channel.rs`).
+    ///
     /// # Errors
-    /// [`TuningError::TooFast`].
+    /// [`TuningError::TooFast`]; [`TuningError::NegativeOutput`] and [`TuningError::RatioTooHigh`] when the shift
+    /// takes the output there.
     pub fn ratio(&self, rapidity: Rapidity) -> Result<ClockRatio, TuningError> {
-        self.0.step(rapidity).map(|step| ClockRatio::from_bits(step.to_bits()))
+        self.in_format(self.0.step(rapidity)?.to_bits())
     }
 
     /// The mean ratio over an interval between two delays: exact in phase.
-    pub fn mean_ratio(&self, before: Delay, after: Delay) -> ClockRatio {
-        ClockRatio::from_bits(self.0.mean(self.0.truncated(before), self.0.truncated(after)))
+    ///
+    /// # Errors
+    /// As [`Self::ratio`].
+    pub fn mean_ratio(&self, before: Delay, after: Delay) -> Result<ClockRatio, TuningError> {
+        self.in_format(self.0.mean(self.0.truncated(before), self.0.truncated(after)))
+    }
+
+    /// The ratio, unless its distance from the nominal one has carried it round an end of the format.
+    fn in_format(&self, ratio: u64) -> Result<ClockRatio, TuningError> {
+        let away = ratio.wrapping_sub(self.0.nominal) as i64;
+        match self.0.nominal.checked_add_signed(away) {
+            Some(ratio) => Ok(ClockRatio::from_bits(ratio)),
+            None if away < 0 => Err(TuningError::NegativeOutput),
+            None => Err(TuningError::RatioTooHigh),
+        }
     }
 }

@@ -9,16 +9,16 @@ pub enum TuningError {
     ClockZero,
     /// The carrier is zero, or above 1.09 THz after translation.
     CarrierNotUsable,
-    /// A crystal's offset is beyond 2^-10 (976 parts per million).
+    /// A crystal's offset, or its difference to the clock's, is beyond 2^-10 (976 parts per million).
     CrystalTooFar,
-    /// An interval of no clocks, or of more than a minute.
+    /// An interval of no clocks, or of a minute or more.
     IntervalNotUsable,
     /// A synthesiser was asked for a frequency below zero: the conversions exceed the carrier, or the injection
     /// side is wrong.
     NegativeOutput,
     /// A synthesiser was asked for 65536 times its reference or more.
     RatioTooHigh,
-    /// The permitted band is empty, or wider than half the oscillator clock.
+    /// The permitted band is empty, or an edge of it is half the oscillator clock or more away from the carrier.
     FenceNotUsable,
     /// The emitted frequency lies outside the permitted band, by this many hertz (rounded up).
     OutsideFence {
@@ -40,7 +40,7 @@ impl core::fmt::Display for TuningError {
                 "the synthesiser would have to make a negative frequency: check the conversions and the injection side"
             }
             Self::RatioTooHigh => "output 65536 times the reference or more: check the clock",
-            Self::FenceNotUsable => "permitted band empty or wider than half the oscillator clock: narrow it",
+            Self::FenceNotUsable => "permitted band empty, or an edge half the oscillator clock or more from the carrier: narrow it",
             Self::OutsideFence { hertz } => {
                 return write!(formatter, "emission {hertz} Hz outside the permitted band: not radiated");
             }

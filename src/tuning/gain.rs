@@ -43,7 +43,8 @@ impl Gain {
         }
     }
 
-    /// The factor times `x`, rounded down, modulo 2^64: relative error 2^-62.
+    /// The factor times `x`, modulo 2^64, rounded down by at most two units of the last place; the factor itself
+    /// is good to 2^-63.
     #[inline]
     pub(super) fn times(&self, x: i32) -> u64 {
         self.shifted(self.product(x).wrapping_add(i64::from(high_u32_i32(self.low, x))))

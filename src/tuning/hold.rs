@@ -32,10 +32,11 @@ pub struct Held {
 }
 
 impl<const BITS: u32> Hold<BITS> {
-    /// Starts (or starts again, after a gap or another table) at the motion of the first interval's start.
+    /// Starts (or starts again, after a gap, a refusal or another table) at the motion of the first interval's
+    /// start. Write [`Self::word`] to the device: the first [`Self::step`] compares with it.
     ///
-    /// `deadband`: change in 2^-64 cycle per clock below which the word stays; 0 steers phase-exactly. With a
-    /// deadband the frequency is bounded, the phase is not steered.
+    /// `deadband`: distance of the word from the wanted mean step, in 2^-64 cycle per clock, below which it stays;
+    /// 0 steers phase-exactly. With a deadband the frequency is bounded, the phase is not steered.
     ///
     /// # Errors
     /// As [`Channel::step`].
@@ -48,12 +49,18 @@ impl<const BITS: u32> Hold<BITS> {
         Ok(Self { word, remainder: 0, delay: channel.truncated(motion.delay), deadband })
     }
 
+    /// The word that the device should hold now.
+    pub fn word(&self) -> u64 {
+        self.word
+    }
+
     /// The step that the device makes now.
     pub fn current(&self) -> PhaseStep {
         PhaseStep::from_word::<BITS>(self.word)
     }
 
-    /// What the phase at the last interval's end lacks to the model's, per clock of the interval, in 2^-64 cycle.
+    /// What the phase at the last interval's end lacks to the model's, per clock of the interval, in 2^-64 cycle;
+    /// zero while a deadband or a quiet window keeps the word, when the phase is not steered.
     pub fn remainder(&self) -> i64 {
         self.remainder
     }
@@ -61,9 +68,16 @@ impl<const BITS: u32> Hold<BITS> {
     /// Steers the coming interval, given the motion at its end. `quiet`: the device must not be retuned now (a
     /// packet is on the air); the word stays and the phase is taken up afresh afterwards.
     ///
+    /// The motion is compared with that of the last call, one interval before: after a missed instant
+    /// [`Self::begin`] again, else the shift of two intervals would go into one.
+    ///
+    /// # Accuracy
+    /// The frequency within [`Proven::of_hold`](super::Proven::of_hold); the phase at every interval's end, without
+    /// deadband or quiet window, half a place of the word for one interval (`tests/steering.rs`).
+    ///
     /// # Errors
     /// [`TuningError::TooFast`], [`TuningError::OutsideFence`]: the state is as before and the word stays; a
-    /// transmitter shall stop radiating.
+    /// transmitter shall stop radiating. [`Self::begin`] again at the next good motion.
     #[inline]
     pub fn step<const RADIATES: bool>(
         &mut self,

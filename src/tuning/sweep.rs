@@ -63,7 +63,7 @@ impl Swept {
 }
 
 impl Sweep {
-    /// Starts (or starts again, after a gap or another table) at the motion of the first interval's start.
+    /// Starts (or starts again, after a gap, a refusal or another table) at the motion of the first interval's start.
     ///
     /// # Errors
     /// As [`Channel::step`].
@@ -87,9 +87,16 @@ impl Sweep {
 
     /// Steers the coming interval, given the motion at its end.
     ///
+    /// The motion is compared with that of the last call, one interval before: after a missed instant
+    /// [`Self::begin`] again (a shift of two intervals in one is beyond what a ramp follows, and refused).
+    ///
+    /// # Accuracy
+    /// Frequency and phase within [`Proven::of_sweep`](super::Proven::of_sweep) (`tests/steering.rs`).
+    ///
     /// # Errors
     /// [`TuningError::TooFast`], [`TuningError::OutsideFence`]: the state is as before; the oscillator shall keep
-    /// [`Self::end`], and a transmitter shall stop radiating. After a gap, [`Self::begin`] again.
+    /// [`Self::end`] without a ramp, and a transmitter shall stop radiating. [`Self::begin`] again at the next
+    /// good motion.
     #[inline]
     pub fn step<const RADIATES: bool>(
         &mut self,
@@ -105,6 +112,8 @@ impl Sweep {
         let change = wanted.wrapping_add(half as u64).wrapping_sub(start) as i64;
         let (ramp, made) = channel.ramp.ramp(change);
         let end = start.wrapping_add(made as u64);
+        // Both ends: the start may come from before a change of the channel.
+        channel.permitted(start)?;
         channel.permitted(end)?;
         self.end = end;
         self.remainder = wanted.wrapping_sub(start).wrapping_sub((made >> 1) as u64) as i64;

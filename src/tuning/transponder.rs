@@ -1,6 +1,7 @@
 //! A linear transponder: one passband, two channels that must move together.
 
 use super::TuningError;
+use super::channel::narrowed;
 use crate::frequency::{Frequency, divide_nearest};
 use crate::rapidity::Rapidity;
 use crate::rapidity::narrow::{offset_of_rapidity, rapidity_of_offset};
@@ -39,9 +40,9 @@ pub struct TransponderPair {
     pub up: Frequency,
     /// Downlink carrier at the spacecraft.
     pub down: Frequency,
-    /// down / up and up / down in 2^-16, signed with the passband's sense.
-    down_over_up: i64,
-    up_over_down: i64,
+    /// down / up and up / down in 2^-28, signed with the passband's sense.
+    down_over_up: i32,
+    up_over_down: i32,
     still: Still,
 }
 
@@ -60,12 +61,13 @@ impl LinearTransponder {
             (false, true) => up_bits - constant,
         };
         let down = u64::try_from(down).map_err(|_| TuningError::CarrierNotUsable)?;
-        let ratio = |above: u64, below: u64| -> Result<i64, TuningError> {
+        let ratio = |above: u64, below: u64| -> Result<i32, TuningError> {
             if below == 0 || above >> 2 >= below {
                 return Err(TuningError::CarrierNotUsable);
             }
-            let (ratio, _) = divide_nearest(u128::from(above) << 16, below);
-            Ok(if self.inverting { -(ratio as i64) } else { ratio as i64 })
+            // Below 2^30.
+            let (ratio, _) = divide_nearest(u128::from(above) << RATIO_BITS, below);
+            Ok(if self.inverting { -(ratio as i32) } else { ratio as i32 })
         };
         Ok(TransponderPair {
             up,
@@ -82,8 +84,8 @@ impl TransponderPair {
     /// [`Self::down`]), from those of the two links (positive = approaching).
     ///
     /// # Accuracy
-    /// 2^-16 of the other link's shift (0.16 Hz of 10 kHz) where a dial stands still: the ratio of the carriers
-    /// is kept to 2^-16; exact for [`Still::Spacecraft`].
+    /// Where a dial stands still, 2.5 + 0.6 up/down (or down/up) units of 2^-44, that is 0.1 mHz at 437 MHz
+    /// (`tests/transponder.rs`); exact for [`Still::Spacecraft`].
     ///
     /// # Errors
     /// [`TuningError::TooFast`] when a link's rapidity is beyond 2^-13, or the sum is.
@@ -108,10 +110,14 @@ impl TransponderPair {
     }
 }
 
+/// Fraction bits of the carriers' ratio, which is below 4.
+const RATIO_BITS: u32 = 28;
+
 /// ln(1 + ratio expm1(-L)).
-fn moved(rapidity: Rapidity, ratio: i64) -> Result<Rapidity, TuningError> {
-    let narrow = i32::try_from(rapidity.to_bits() >> 16).map_err(|_| TuningError::TooFast)?;
-    let offset = i64::from(offset_of_rapidity(narrow.saturating_neg())).wrapping_mul(ratio) >> 16;
-    let offset = i32::try_from(offset).map_err(|_| TuningError::TooFast)?;
+fn moved(rapidity: Rapidity, ratio: i32) -> Result<Rapidity, TuningError> {
+    let narrow = narrowed(rapidity)?;
+    let product = i64::from(offset_of_rapidity(narrow.saturating_neg())).wrapping_mul(i64::from(ratio));
+    let rounded = product.wrapping_add(1 << (RATIO_BITS - 1)) >> RATIO_BITS;
+    let offset = i32::try_from(rounded).map_err(|_| TuningError::TooFast)?;
     Ok(Rapidity::from_bits(i64::from(rapidity_of_offset(offset)) << 16))
 }
