@@ -6,16 +6,35 @@ use anyhow::ensure;
 use clap::{Parser, Subcommand, ValueEnum};
 use std::path::PathBuf;
 
+pub mod bake;
 pub mod contacts;
+pub mod rehearse;
 pub mod trace;
 
-/// Steers a radio's oscillator along a moving carrier: traces and contacts of a pass, computed on the host.
+/// Steers a radio's oscillator along a moving carrier. Without a command an invented pass is rehearsed.
 #[derive(Debug, Parser)]
 #[command(name = "shiftkeel", version)]
 pub struct Arguments {
-    /// What to do.
+    /// What to do; without it a built-in pass is rehearsed.
     #[command(subcommand)]
-    pub command: Command,
+    pub command: Option<Command>,
+}
+
+impl Arguments {
+    /// Does it.
+    ///
+    /// # Errors
+    /// Whatever keeps it from a result, in words for the user.
+    pub fn run(self) -> anyhow::Result<()> {
+        match self.command {
+            Some(command) => command.run(),
+            // As if the command had been given, with its own defaults.
+            None => match Self::try_parse_from(["shiftkeel", "rehearse"])?.command {
+                Some(command) => command.run(),
+                None => Ok(()),
+            },
+        }
+    }
 }
 
 /// The commands.
@@ -25,6 +44,10 @@ pub enum Command {
     Trace(trace::TraceArguments),
     /// Passes of one or many objects over a site in a window of time
     Contacts(contacts::ContactArguments),
+    /// Arc and table of one pass, as files and as source for firmware
+    Bake(bake::BakeArguments),
+    /// A whole pass steered by the firmware's own code, beside an independent reference
+    Rehearse(rehearse::RehearseArguments),
 }
 
 impl Command {
@@ -36,6 +59,8 @@ impl Command {
         match self {
             Self::Trace(arguments) => trace::run(arguments),
             Self::Contacts(arguments) => contacts::run(arguments),
+            Self::Bake(arguments) => bake::run(arguments),
+            Self::Rehearse(arguments) => rehearse::run(arguments),
         }
     }
 }

@@ -14,6 +14,8 @@
 //! | [`vacuum`] | light time, time dilation and potential added |
 //! | [`horizon`] | least elevation and horizon mask |
 //! | [`contacts`] | passes in a window |
+//! | [`baking`] | arc and table of a pass, and what the arc is off |
+//! | [`rehearsal`] | a pass steered by the crate, beside the reference |
 //! | [`commands`] | what the program offers on its command line |
 //!
 //! Times are seconds (`f64`) from a reference epoch in UTC, lengths metres, angles radians, unless a name
@@ -21,6 +23,7 @@
 #![forbid(unsafe_code)]
 
 pub mod age;
+pub mod baking;
 pub mod commands;
 pub mod contacts;
 pub mod elements;
@@ -29,6 +32,7 @@ pub mod geometric;
 pub mod horizon;
 pub mod instant;
 pub mod orbit;
+pub mod rehearsal;
 pub mod vacuum;
 pub mod vector;
 

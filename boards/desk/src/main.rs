@@ -5,7 +5,7 @@ use shiftkeel_desk::commands::Arguments;
 use std::process::ExitCode;
 
 fn main() -> ExitCode {
-    match Arguments::parse().command.run() {
+    match Arguments::parse().run() {
         Ok(()) => ExitCode::SUCCESS,
         Err(error) => {
             eprintln!("error: {error:#}");

@@ -1,0 +1,322 @@
+//! What a rehearsal prints, what it judges, and `summary.json`.
+
+use super::alternatives::Alternative;
+use super::oscillator::Oscillator;
+use super::{Outcome, Rehearsal, stages::Seen};
+use crate::age::ElementAge;
+use crate::elements::ElementSet;
+use serde::Serialize;
+use shiftkeel::tuning::{Assumed, Assumptions, Bound, Excluded, ProvenPart};
+use std::fmt::Write;
+
+/// The total counts as padded when less than this part of it was seen.
+const LEAST_OF_TOTAL: f64 = 0.3;
+/// A part that makes up more than this of the total ...
+const SUBSTANTIAL: f64 = 0.1;
+/// ... counts as padded when less than this of it was seen.
+const LEAST_OF_PART: f64 = 0.2;
+
+/// One line of the proven block.
+#[derive(Clone, Debug, Serialize)]
+pub struct PartRow {
+    /// Its name.
+    pub part: &'static str,
+    /// Bound of the frequency, Hz.
+    pub bound_hz: f64,
+    /// Largest seen, Hz; none where the part has no stage of its own.
+    pub seen_hz: Option<f64>,
+    /// Bound of the phase, cycles; none where the phase is not steered.
+    pub bound_cycles: Option<f64>,
+    /// Largest seen, cycles.
+    pub seen_cycles: Option<f64>,
+}
+
+/// One line of the assumed and excluded blocks.
+#[derive(Clone, Debug, Serialize)]
+pub struct EstimateRow {
+    /// Its name.
+    pub part: &'static str,
+    /// Hertz.
+    pub hz: f64,
+}
+
+/// All that a rehearsal says.
+#[derive(Clone, Debug, Serialize)]
+pub struct Summary {
+    /// Name or number of the object.
+    pub object: String,
+    /// Carrier, Hz.
+    pub carrier_hz: f64,
+    /// UTC of the first instant.
+    pub start_utc: String,
+    /// UTC of the last instant.
+    pub end_utc: String,
+    /// Intervals steered.
+    pub ticks: u64,
+    /// Instants looked at.
+    pub instants: u64,
+    /// Words written to the device, or ramps started.
+    pub retunes: u64,
+    /// Worst error of the frequency, Hz.
+    pub worst_error_hz: f64,
+    /// Root of the mean square of it, Hz.
+    pub rms_error_hz: f64,
+    /// UTC of the worst.
+    pub worst_utc: String,
+    /// What it may be at most, Hz.
+    pub proven_bound_hz: f64,
+    /// Worst error of the phase, cycles; none where it is not steered.
+    pub worst_error_cycles: Option<f64>,
+    /// What it may be at most, cycles; none where it is not steered.
+    pub proven_bound_cycles: Option<f64>,
+    /// Whether no instant was outside.
+    pub within_bound: bool,
+    /// Parts whose bound is far above what was seen.
+    pub padded: Vec<String>,
+    /// Part by part.
+    pub proven: Vec<PartRow>,
+    /// One sigma each.
+    pub assumed: Vec<EstimateRow>,
+    /// Root of the sum of their squares, Hz.
+    pub assumed_total_hz: f64,
+    /// Estimates of what the model leaves out.
+    pub excluded: Vec<EstimateRow>,
+    /// What is commonly done instead.
+    pub alternatives: Vec<Alternative>,
+    /// What the reference itself is uncertain by, Hz.
+    pub reference_noise_hz: f64,
+}
+
+fn finite(value: f64) -> Option<f64> {
+    value.is_finite().then_some(value)
+}
+
+/// What was seen of a part.
+fn seen_of(part: ProvenPart, outcome: &Outcome, oscillator: &Oscillator) -> Option<Seen> {
+    let stages = &outcome.stages;
+    let holds = oscillator.bits.is_some();
+    match part {
+        ProvenPart::Arc => Some(stages.arc),
+        ProvenPart::Table => Some(stages.table),
+        ProvenPart::Arithmetic if oscillator.steers_phase() => Some(stages.arithmetic),
+        ProvenPart::Word if holds && oscillator.steers_phase() => Some(stages.word),
+        ProvenPart::Ramp if !holds => Some(stages.rule),
+        ProvenPart::Hold if holds => Some(stages.rule),
+        _ => None,
+    }
+}
+
+/// Parts that count as padded, with the figures.
+fn padded(rows: &[PartRow], total: &Bound, worst: &Seen) -> Vec<String> {
+    let mut found = Vec::new();
+    let mut judge = |name: &str, unit: &str, seen: f64, bound: f64, least: f64| {
+        if seen < least * bound {
+            found.push(format!("{name}: {seen:.3e} of {bound:.3e} {unit} seen, less than {least}"));
+        }
+    };
+    judge("all together", "Hz", worst.hertz, total.hertz, LEAST_OF_TOTAL);
+    if total.cycles.is_finite() {
+        judge("all together", "cycles", worst.cycles, total.cycles, LEAST_OF_TOTAL);
+    }
+    for row in rows {
+        if let Some(seen) = row.seen_hz
+            && row.bound_hz > SUBSTANTIAL * total.hertz
+        {
+            judge(row.part, "Hz", seen, row.bound_hz, LEAST_OF_PART);
+        }
+        if let (Some(seen), Some(bound)) = (row.seen_cycles, row.bound_cycles)
+            && bound > SUBSTANTIAL * total.cycles
+        {
+            judge(row.part, "cycles", seen, bound, LEAST_OF_PART);
+        }
+    }
+    found
+}
+
+impl Summary {
+    /// Of a rehearsal.
+    pub fn new(
+        set: &ElementSet,
+        rehearsal: &Rehearsal<'_>,
+        outcome: &Outcome,
+        alternatives: Vec<Alternative>,
+    ) -> Self {
+        let pass = &rehearsal.baked.pass;
+        let carrier = rehearsal.baked.order.carrier;
+        let total = outcome.proven.total();
+        let proven: Vec<PartRow> = ProvenPart::ALL
+            .into_iter()
+            .filter(|&part| outcome.proven.part(part) != Bound::default())
+            .map(|part| {
+                let bound = outcome.proven.part(part);
+                let seen = seen_of(part, outcome, &rehearsal.oscillator);
+                PartRow {
+                    part: part.name(),
+                    bound_hz: bound.hertz,
+                    seen_hz: seen.map(|seen| seen.hertz),
+                    bound_cycles: finite(bound.cycles),
+                    // The phase of the arithmetic is inside the table's, which is read through it.
+                    seen_cycles: seen
+                        .filter(|_| bound.cycles.is_finite() && part != ProvenPart::Arithmetic)
+                        .map(|seen| seen.cycles),
+                }
+            })
+            .collect();
+        let age = ElementAge::new(set, pass.reference());
+        let assumptions = Assumptions { lateness: age.lateness, ..Assumptions::default() };
+        let assumed = Assumed::of(&assumptions, carrier, rehearsal.table.extremes().rate);
+        let excluded = Excluded::of(carrier);
+        let steered = rehearsal.oscillator.steers_phase();
+        Self {
+            object: set.label(),
+            carrier_hz: carrier,
+            start_utc: pass.utc(outcome.span.0),
+            end_utc: pass.utc(outcome.span.1),
+            ticks: outcome.ticks,
+            instants: outcome.instants,
+            retunes: outcome.retunes,
+            worst_error_hz: outcome.worst.hertz,
+            rms_error_hz: outcome.rms_hertz,
+            worst_utc: pass.utc(outcome.worst_time),
+            proven_bound_hz: total.hertz,
+            worst_error_cycles: steered.then_some(outcome.worst.cycles),
+            proven_bound_cycles: finite(total.cycles),
+            within_bound: outcome.is_within(),
+            padded: padded(&proven, &total, &outcome.worst),
+            proven,
+            assumed: assumed.parts.map(|(part, hz)| EstimateRow { part, hz }).to_vec(),
+            assumed_total_hz: assumed.total(),
+            excluded: vec![
+                EstimateRow { part: "ionosphere", hz: excluded.ionosphere },
+                EstimateRow { part: "troposphere", hz: excluded.troposphere },
+            ],
+            alternatives,
+            reference_noise_hz: outcome.reference_noise.hertz,
+        }
+    }
+
+    /// The blocks for reading.
+    pub fn text(&self) -> String {
+        let mut text = String::new();
+        self.write(&mut text).unwrap_or_default();
+        text
+    }
+
+    fn write(&self, text: &mut String) -> std::fmt::Result {
+        let count = |value: u64| thousands(value);
+        writeln!(
+            text,
+            "PROVEN: how far the oscillator may be from what the model says; {} intervals, {} instants looked at",
+            count(self.ticks),
+            count(self.instants)
+        )?;
+        let headings = ["part", "seen Hz", "bound Hz", "seen/bound", "seen cycles", "bound cycles", "seen/bound"];
+        let mut rows: Vec<Vec<String>> = self.proven.iter().map(PartRow::cells).collect();
+        rows.push(
+            PartRow {
+                part: "all together",
+                bound_hz: self.proven_bound_hz,
+                seen_hz: Some(self.worst_error_hz),
+                bound_cycles: self.proven_bound_cycles,
+                seen_cycles: self.worst_error_cycles,
+            }
+            .cells(),
+        );
+        text.push_str(&indented(&crate::commands::table(&headings, &rows)));
+        writeln!(
+            text,
+            "  worst at {}, rms {}; the reference itself is certain to {}\n",
+            self.worst_utc,
+            hertz(self.rms_error_hz),
+            hertz(self.reference_noise_hz)
+        )?;
+        writeln!(text, "ASSUMED: one sigma each, common practice; together {}", hertz(self.assumed_total_hz))?;
+        let estimate = |row: &EstimateRow| vec![row.part.to_string(), hertz(row.hz)];
+        text.push_str(&lines(self.assumed.iter().map(estimate)));
+        writeln!(text, "\nEXCLUDED: not in the model; estimates above 10 degrees")?;
+        text.push_str(&lines(self.excluded.iter().map(estimate)));
+        writeln!(text, "\nINSTEAD, on the same pass: worst, rms")?;
+        text.push_str(&lines(
+            self.alternatives.iter().map(|row| vec![row.name.to_string(), hertz(row.worst_hz), hertz(row.rms_hz)]),
+        ));
+        writeln!(text)?;
+        if self.within_bound {
+            writeln!(text, "No instant was outside the bound.")?;
+        } else {
+            writeln!(text, "OUTSIDE: at least one instant was outside the bound.")?;
+        }
+        for part in &self.padded {
+            writeln!(text, "PADDED: {part} of the bound.")?;
+        }
+        Ok(())
+    }
+}
+
+impl PartRow {
+    fn cells(&self) -> Vec<String> {
+        let number = |value: Option<f64>| value.map_or_else(|| "-".to_string(), |value| format!("{value:.3e}"));
+        let ratio = |seen: Option<f64>, bound: Option<f64>| match (seen, bound) {
+            (Some(seen), Some(bound)) if bound > 0.0 => format!("{:.2}", seen / bound),
+            _ => "-".to_string(),
+        };
+        vec![
+            self.part.to_string(),
+            number(self.seen_hz),
+            number(Some(self.bound_hz)),
+            ratio(self.seen_hz, Some(self.bound_hz)),
+            number(self.seen_cycles),
+            number(self.bound_cycles),
+            ratio(self.seen_cycles, self.bound_cycles),
+        ]
+    }
+}
+
+/// Hertz with a unit that suits its size.
+pub fn hertz(value: f64) -> String {
+    let size = value.abs();
+    if size >= 1e4 {
+        format!("{:.2} kHz", value * 1e-3)
+    } else if size >= 100.0 {
+        format!("{value:.1} Hz")
+    } else if size >= 1.0 {
+        format!("{value:.2} Hz")
+    } else if size >= 0.1 {
+        format!("{value:.3} Hz")
+    } else if size >= 1e-5 {
+        format!("{:.3} mHz", value * 1e3)
+    } else {
+        format!("{:.2} uHz", value * 1e6)
+    }
+}
+
+/// A count with its thousands apart.
+fn thousands(value: u64) -> String {
+    let digits = value.to_string();
+    let mut text = String::new();
+    for (at, digit) in digits.chars().enumerate() {
+        if at > 0 && (digits.len() - at).is_multiple_of(3) {
+            text.push(' ');
+        }
+        text.push(digit);
+    }
+    text
+}
+
+/// Rows without a heading: the first column to the left.
+fn lines(rows: impl Iterator<Item = Vec<String>>) -> String {
+    let rows: Vec<Vec<String>> = rows.collect();
+    let first = rows.iter().map(|row| row[0].chars().count()).max().unwrap_or(0);
+    let mut text = String::new();
+    for row in rows {
+        text += &format!("  {:<first$}", row[0]);
+        for cell in &row[1..] {
+            text += &format!("  {cell:>12}");
+        }
+        text.push('\n');
+    }
+    text
+}
+
+fn indented(text: &str) -> String {
+    text.lines().map(|line| format!("  {line}\n")).collect()
+}
