@@ -47,6 +47,12 @@ pub(crate) const fn product_i32(a: i32, b: i32) -> i64 {
     (high_i32(a, b) as i64) << 32 | a.wrapping_mul(b) as u32 as i64
 }
 
+/// a b of an unsigned and a signed word.
+#[inline(always)]
+pub(crate) const fn product_u32_i32(a: u32, b: i32) -> i64 {
+    (high_u32_i32(a, b) as i64) << 32 | a.wrapping_mul(b as u32) as i64
+}
+
 /// floor(a b / 2^32) of a signed double word and a signed word.
 pub(crate) const fn high_i64_i32(a: i64, b: i32) -> i64 {
     product_i32((a >> 32) as i32, b).wrapping_add(high_u32_i32(a as u32, b) as i64)
@@ -134,6 +140,7 @@ mod tests {
             let word = i128::from(a as i32);
             assert_eq!(high_i64_i32(x as i64, a as i32), (i128::from(x as i64) * word >> 32) as i64);
             assert_eq!(product_u32(a, b), u64::from(a) * u64::from(b));
+            assert_eq!(product_u32_i32(a, b as i32), i64::from(a) * i64::from(b as i32));
             assert_eq!(product_i32(a as i32, b as i32), i64::from(a as i32) * i64::from(b as i32));
         }
     }
