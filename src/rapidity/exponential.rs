@@ -169,7 +169,7 @@ pub(crate) const fn tanh_magnitude(x: i64) -> u64 {
     if x == 0 { 0 } else { tanh }
 }
 
-/// 1/(1 + z) - 1 with 70 fraction bits, |z| < 2^-7.9; error below 2^-67.
+/// 1/(1 + z) - 1 with 70 fraction bits, |z| < 2^-8; error below 2^-67.
 ///
 /// -z + z^2 (1 - z (1 - z (1 - z (1 - z (1 - z (1 - z))))))
 const fn reciprocal_offset(z: i64) -> i64 {

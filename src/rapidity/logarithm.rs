@@ -1,7 +1,7 @@
 //! Natural logarithm in 64 bits: the core of every constructor that starts from a ratio.
 //!
 //! ln(m) = -ln(r) + ln(1 + z) with z = m r - 1, where r is one of 128 reciprocals that keeps |z| below
-//! 2^-7.9, and ln(1 + z) is the power series. No division.
+//! 2^-8, and ln(1 + z) is the power series. No division.
 
 use super::coefficients::{LOGARITHMS, RECIPROCALS};
 use super::wide_product::{about_high_i64, high_i32, high_i64_i32};
@@ -40,7 +40,7 @@ pub(crate) const fn logarithm(x: u64) -> Logarithm {
     }
 }
 
-/// ln(1 + z), both with 70 fraction bits, |z| < 2^-7.9; error below 2^-64.
+/// ln(1 + z), both with 70 fraction bits, |z| < 2^-8; error below 2^-64.
 ///
 /// z - z^2 (1/2 - z (1/3 - z (1/4 - z (1/5 - z (1/6 - z/7))))); the first left out, z^8/8, is under 2^-66.
 const fn logarithm_of_one_plus(z: i64) -> i64 {

@@ -25,9 +25,11 @@
 //! ```
 
 mod arithmetic;
+pub mod bounds;
 mod coefficients;
 mod error;
 mod exponential;
+pub mod fixed_32;
 mod from_ratio;
 mod from_speed;
 mod logarithm;

@@ -35,29 +35,10 @@ fn table(text: &mut String, comment: &str, name: &str, kind: &str, per_line: usi
     text.push_str("];\n");
 }
 
-/// Reciprocals with 16 fraction bits: for each interval [1 + i/128, 1 + (i+1)/128) one r with
-/// |m r - 1| < 2^-7.95 at both ends, of all such the one whose -ln(r)/2 with 32 fraction bits needs the least
-/// rounding, so that 32 bits hold what would else take 38.
+/// Reciprocals with 16 fraction bits: for each interval [1 + i/128, 1 + (i+1)/128) the r with the smallest
+/// |m r - 1| at the worse end; the largest of all, of the first row, is 2^-8 less a part in 250.
 fn reciprocals() -> Vec<i128> {
-    let one = big(1, 0);
-    let limit = big(4_046, 0) / big(1_000_000, 0);
-    let row = |index: i64| {
-        let ends = [big(ROWS + index, 7), big(ROWS + index + 1, 7)];
-        let centre = big(2 * (ROWS + index) + 1, 8);
-        let middle = nearest(&(&one / centre), 16);
-        let fits = |r: &i128| {
-            ends.iter().all(|end| {
-                let z = end * big(*r, 16) - &one;
-                z < limit && -z < limit
-            })
-        };
-        let rounding = |r: &i128| {
-            let exact = -big(*r, 16).ln() / big(2, 0);
-            let error = (big(nearest(&exact, 32), 32) - exact) << 60;
-            error.to_int().value().try_into().map(i128::abs).expect("small")
-        };
-        (middle - 16..=middle + 16).filter(fits).min_by_key(rounding).expect("the middle fits")
-    };
+    let row = |index: i64| nearest(&(big(1, 0) / big(2 * (ROWS + index) + 1, 8)), 16);
     (0..ROWS).map(row).collect()
 }
 
@@ -68,11 +49,9 @@ pub fn text() -> String {
     );
     let reciprocals = reciprocals();
     let logarithm = |r: &i128| -big(*r, 16).ln();
-    let halves: Vec<_> = reciprocals.iter().map(|r| nearest(&(logarithm(r) / big(2, 0)), 32)).collect();
     let wide: Vec<_> = reciprocals.iter().map(|r| nearest(&logarithm(r), 63)).collect();
     let comment = "r, about 1 / (1 + (i + 1/2)/128), with 16 fraction bits.";
     table(&mut text, comment, "RECIPROCALS", "u16", 12, &reciprocals);
-    table(&mut text, "-ln(r)/2 with 32 fraction bits.", "HALF_LOGARITHMS", "u32", 8, &halves);
     table(&mut text, "-ln(r) with 63 fraction bits.", "LOGARITHMS", "u64", 4, &wide);
 
     let power = |index: i64| (big(index, 7) * big(2, 0).ln()).exp();

@@ -1,0 +1,407 @@
+//! Full-range kernels in 32 bits: velocity ratios in I1F31, rapidities in I4F28.
+//!
+//! For general use, and for the floats of [`super::float_32`]. One step of I4F28 is 3.7e-9, 1.6 Hz at
+//! 437 MHz: steering uses [`super::narrow`] or [`Rapidity`](super::Rapidity) instead.
+//!
+//! | function | of | gives |
+//! |---|---|---|
+//! | [`rapidity_of_beta`] | b | atanh(b) |
+//! | [`beta_of_rapidity`] | r | tanh(r) |
+//! | [`factor_of_rapidity`] | r | exp(r) |
+//! | [`factor_of_beta`] | b | sqrt((1 + b)/(1 - b)) |
+//! | [`offset_of_rapidity`] | r | exp(r) - 1 |
+//!
+//! No division, no loop. The worst error over all 2^32 inputs of each is in [`super::bounds`].
+
+use super::coefficients::{EXPONENTIALS, LOGARITHMS, RECIPROCALS};
+use super::wide_product::{high_i32, high_u32, product_u32_i32};
+use fixed::types::{I1F31, I4F28};
+
+/// Received over transmitted frequency: `mantissa` 2^(`exponent` - 31), mantissa in [2^31, 2^32).
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct ShiftFactor32 {
+    mantissa: u32,
+    exponent: i32,
+}
+
+impl ShiftFactor32 {
+    /// Fraction bits of the mantissa.
+    pub const FRACTION_BITS: u32 = 31;
+
+    /// The factor without its power of two: in [1, 2), 31 fraction bits.
+    pub const fn mantissa(self) -> u32 {
+        self.mantissa
+    }
+
+    /// The power of two.
+    pub const fn exponent(self) -> i32 {
+        self.exponent
+    }
+}
+
+/// (Received over transmitted frequency) - 1: `mantissa` 2^(`exponent` - 28), the size of the mantissa in
+/// [2^28, 2^29) or zero: a step of it is never coarser than half a step of the rapidity.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct ShiftOffset32 {
+    mantissa: i32,
+    exponent: i32,
+}
+
+impl ShiftOffset32 {
+    /// Fraction bits of the mantissa.
+    pub const FRACTION_BITS: u32 = 28;
+
+    /// The offset without its power of two, signed: size in [1, 2) or zero, 28 fraction bits.
+    pub const fn mantissa(self) -> i32 {
+        self.mantissa
+    }
+
+    /// The power of two; 0 where the mantissa is zero.
+    pub const fn exponent(self) -> i32 {
+        self.exponent
+    }
+}
+
+/// `x` where `sign` is 0, -`x` where it is -1.
+#[inline(always)]
+const fn signed(x: i32, sign: i32) -> i32 {
+    (x ^ sign).wrapping_sub(sign)
+}
+
+/// x^2 2^-32 of the bits, at most 2 too small; |x| < 2^31.
+#[inline(always)]
+const fn square_high(x: i32) -> i32 {
+    let (high, low) = (x >> 16, x & 0xffff);
+    high.wrapping_mul(high).wrapping_add(high.wrapping_mul(low) >> 15)
+}
+
+/// x 2^-15 of the bits, to the nearest; |x| < 2^31 - 2^14.
+#[inline(always)]
+const fn half_word(x: i32) -> i32 {
+    x.wrapping_add(1 << 14) >> 15
+}
+
+/// Row of the table of reciprocals and m r - 1 with 39 fraction bits, |z| < 2^-8, of m in [1, 2) with 31
+/// fraction bits and 16 more.
+#[inline(always)]
+const fn reduced(mantissa: u32, more: u32) -> (usize, i32) {
+    let index = ((mantissa >> 24) & 0x7f) as usize;
+    let reciprocal = RECIPROCALS[index] as u32;
+    // m r has 63 fraction bits; its one lies at 2^39 and falls off the word.
+    let high = (mantissa >> 16).wrapping_mul(reciprocal) << 8;
+    let low = if more == 0 {
+        (mantissa & 0xffff).wrapping_mul(reciprocal) >> 8
+    } else {
+        high_u32(mantissa << 16 | more, reciprocal << 8)
+    };
+    (index, high.wrapping_add(low) as i32)
+}
+
+/// ln(1 + z) / 2 with 39 fraction bits of z with 39, |z| < 2^-8; within one unit.
+///
+/// z - z^2/2 (1 - 2z/3 + z^2/2); the first left out, z^5/5, is a tenth of a unit.
+#[inline(always)]
+const fn half_logarithm_of_one_plus(z: i32) -> i32 {
+    let square = square_high(z); // 46 fraction bits
+    let slope = (half_word(z).wrapping_mul(21_845) >> 15).wrapping_sub(square >> 23); // 24 fraction bits
+    let bend = half_word(square).wrapping_mul(slope) >> 9;
+    z.wrapping_sub(square.wrapping_sub(bend).wrapping_add(1 << 7) >> 8) >> 1
+}
+
+/// ln((1 + b)/(1 - b)) / 2 for 0 <= b < 1 with 31 fraction bits, in three parts:
+/// `exponent` ln 2 / 2 + `table` 2^-32 + `rest` 2^-39.
+struct HalfLogarithm {
+    exponent: i32,
+    table: i32,
+    rest: i32,
+}
+
+#[inline(always)]
+const fn half_logarithm_of_ratio(beta: u32) -> HalfLogarithm {
+    const ONE: u32 = 1 << 31;
+    let denominator = ONE.wrapping_sub(beta);
+    let exponent = denominator.leading_zeros();
+    let (above, z_above) = reduced(ONE.wrapping_add(beta), 0);
+    let (below, z_below) = reduced(denominator << exponent, 0);
+    // 63 fraction bits of the logarithm are 64 of its half.
+    let table = LOGARITHMS[above].wrapping_sub(LOGARITHMS[below]) as i64;
+    HalfLogarithm {
+        exponent: exponent as i32,
+        table: (table >> 32) as i32,
+        rest: half_logarithm_of_one_plus(z_above)
+            .wrapping_sub(half_logarithm_of_one_plus(z_below))
+            .wrapping_add((table as u32 >> 25) as i32),
+    }
+}
+
+/// Rapidity of a velocity ratio: atanh(b).
+///
+/// `beta` is v/c, I1F31, positive = approaching; so is the rapidity, I4F28. From |b| = tanh(8) on, 483 steps
+/// below one, and at -1 the result is the end of the format.
+///
+/// # Accuracy
+/// [`super::bounds::RAPIDITY_OF_BETA_32`] units in the last place over all inputs
+/// (`tests/rapidity_fixed_32.rs`).
+///
+/// # Cost
+/// 16 products of 32 bits, 1.3 KiB of tables.
+///
+/// # Source
+/// atanh(b) = (ln(1 + b) - ln(1 - b))/2, each by a table's reciprocal r: -ln r + ln(1 + (m r - 1)).
+///
+/// ```
+/// use fixed::types::{I1F31, I4F28};
+/// use shiftkeel::rapidity::fixed_32::rapidity_of_beta;
+/// assert_eq!(rapidity_of_beta(I1F31::from_num(0.5)).to_bits(), 147_453_245); // ln(3)/2
+/// assert_eq!(rapidity_of_beta(I1F31::MAX), I4F28::MAX);
+/// ```
+pub const fn rapidity_of_beta(beta: I1F31) -> I4F28 {
+    /// 2^31 tanh(8), rounded up.
+    const END: u32 = 2_147_483_165;
+    /// ln 2 / 2 with 28 fraction bits, and what is missing with 39.
+    const HALF_LN_2: i32 = 93_032_639;
+    const HALF_LN_2_REST: i32 = 1_524;
+    let bits = beta.to_bits();
+    let sign = bits >> 31;
+    let size = bits.unsigned_abs();
+    if size >= END {
+        return I4F28::from_bits(i32::MAX ^ sign);
+    }
+    let half = half_logarithm_of_ratio(size);
+    let rest = ((half.table & 15) << 7)
+        .wrapping_add(half.rest)
+        .wrapping_add(half.exponent.wrapping_mul(HALF_LN_2_REST))
+        .wrapping_add(1 << 10)
+        >> 11;
+    let result = half.exponent.wrapping_mul(HALF_LN_2).wrapping_add(half.table >> 4).wrapping_add(rest);
+    I4F28::from_bits(signed(result, sign))
+}
+
+/// `mantissa` 2^(exponent - 63), where `mantissa` 2^-63 is in [0.997, 1.995).
+struct Power32 {
+    mantissa: u64,
+    exponent: i32,
+}
+
+/// 2^(steps/128) exp(r), r with 39 fraction bits, |r| < 2^-8.3; within 1.2 units of 2^-39.
+#[inline(always)]
+const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
+    let square = square_high(remainder); // 46 fraction bits
+    // r/3 + r^2/12 with 24 fraction bits, the twelfth as 1/16 + 1/64.
+    let slope = (half_word(remainder).wrapping_mul(21_845) >> 16)
+        .wrapping_add(square >> 26)
+        .wrapping_add(square >> 28);
+    let bend = (square >> 13).wrapping_mul(slope) >> 11;
+    let offset = remainder.wrapping_add(square.wrapping_add(bend).wrapping_add(1 << 7) >> 8);
+    let table = EXPONENTIALS[(steps & 0x7f) as usize];
+    // table (exp(r) - 1) with 31 + 39 fraction bits.
+    let product = product_u32_i32((table >> 32) as u32, offset);
+    Power32 { mantissa: table.wrapping_add((product >> 7) as u64), exponent: steps >> 7 }
+}
+
+/// exp(x) of x with 28 or 27 fraction bits.
+#[inline(always)]
+const fn power<const FRACTION_BITS: u32>(x: i32) -> Power32 {
+    // 128 / ln 2 with 7 fraction bits; ln 2 / 128 with 39 fraction bits, and the next 16.
+    const STEPS: i32 = 23_637;
+    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
+    const STEP_LOW: i32 = 53_711;
+    let steps = (x >> 16).wrapping_mul(STEPS).wrapping_add(1 << (FRACTION_BITS - 10)) >> (FRACTION_BITS - 9);
+    let remainder = (x << (39 - FRACTION_BITS))
+        .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
+        .wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
+    power_from_steps(steps, remainder)
+}
+
+/// A power rounded to 32 bits.
+#[inline(always)]
+const fn rounded(power: Power32) -> ShiftFactor32 {
+    let shift = (power.mantissa >> 63) as u32 ^ 1;
+    let mantissa = ((power.mantissa << shift).wrapping_add(1 << 31) >> 32) as u32;
+    // Just below a power of two rounding may reach it, where the word ends.
+    let carry = (mantissa == 0) as u32;
+    ShiftFactor32 {
+        mantissa: mantissa | carry << 31,
+        exponent: power.exponent.wrapping_sub(shift as i32).wrapping_add(carry as i32),
+    }
+}
+
+/// Frequency factor of a rapidity: exp(r).
+///
+/// `rapidity` is I4F28, positive = approaching = a factor above one.
+///
+/// # Accuracy
+/// [`super::bounds::FACTOR_OF_RAPIDITY_32`] units of the mantissa over all inputs
+/// (`tests/rapidity_fixed_32.rs`).
+///
+/// # Cost
+/// 8 products of 32 bits, 1 KiB of tables.
+///
+/// # Source
+/// exp(x) = 2^k 2^(j/128) exp(r) with r below 2^-8.3 and exp(r) - 1 = r + r^2/2 (1 + r/3 + r^2/12).
+///
+/// ```
+/// use fixed::types::I4F28;
+/// use shiftkeel::rapidity::fixed_32::factor_of_rapidity;
+/// let factor = factor_of_rapidity(I4F28::from_num(1));
+/// assert_eq!((factor.mantissa(), factor.exponent()), (2_918_732_889, 1)); // e = 1.3591 * 2
+/// ```
+pub const fn factor_of_rapidity(rapidity: I4F28) -> ShiftFactor32 {
+    rounded(power::<28>(rapidity.to_bits()))
+}
+
+/// Frequency factor of a velocity ratio: sqrt((1 + b)/(1 - b)).
+///
+/// `beta` is v/c, I1F31, positive = approaching = a factor above one. At -1 the factor is zero (mantissa 0).
+///
+/// # Accuracy
+/// [`super::bounds::FACTOR_OF_BETA_32`] units of the mantissa over all inputs
+/// (`tests/rapidity_fixed_32.rs`).
+///
+/// # Cost
+/// 24 products of 32 bits, 2.3 KiB of tables.
+///
+/// # Source
+/// exp(atanh(b)), the logarithm with 39 fraction bits and its multiple of ln 2 / 2 exactly.
+///
+/// ```
+/// use fixed::types::I1F31;
+/// use shiftkeel::rapidity::fixed_32::factor_of_beta;
+/// let factor = factor_of_beta(I1F31::from_num(0.6)); // 2
+/// assert_eq!(factor.exponent(), 1);
+/// assert!(factor.mantissa() - (1 << 31) < 4); // 0.6 in 31 bits is 0.2 steps high
+/// ```
+pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
+    const STEPS: i32 = 23_637;
+    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
+    const STEP_LOW: i32 = 53_711;
+    let bits = beta.to_bits();
+    if bits == i32::MIN {
+        return ShiftFactor32 { mantissa: 0, exponent: 0 };
+    }
+    let sign = bits >> 31;
+    let half = half_logarithm_of_ratio(bits.unsigned_abs());
+    let coarse = signed(half.table.wrapping_add(half.rest >> 7), sign);
+    let steps = (coarse >> 16).wrapping_mul(STEPS).wrapping_add(1 << 22) >> 23;
+    let remainder = signed((half.table << 7).wrapping_add(half.rest), sign)
+        .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
+        .wrapping_sub(steps.wrapping_mul(STEP_LOW).wrapping_add(1 << 15) >> 16);
+    // Half of ln 2 is 64 steps.
+    rounded(power_from_steps(steps.wrapping_add(signed(half.exponent << 6, sign)), remainder))
+}
+
+/// Velocity ratio of a rapidity: tanh(r).
+///
+/// `rapidity` is I4F28, positive = approaching; so is the result, I1F31.
+///
+/// # Accuracy
+/// [`super::bounds::BETA_OF_RAPIDITY_32`] units in the last place over all inputs
+/// (`tests/rapidity_fixed_32.rs`).
+///
+/// # Cost
+/// 16 products of 32 bits, 1.3 KiB of tables.
+///
+/// # Source
+/// tanh(r) = 2/(1 + X) - 1, X = exp(-2|r|); the reciprocal is one of a table times 1 - z + z^2 - z^3 + z^4.
+///
+/// ```
+/// use fixed::types::{I1F31, I4F28};
+/// use shiftkeel::rapidity::fixed_32::beta_of_rapidity;
+/// assert_eq!(beta_of_rapidity(I4F28::from_num(-0.5)).to_bits(), -992_388_131);
+/// ```
+pub const fn beta_of_rapidity(rapidity: I4F28) -> I1F31 {
+    let bits = rapidity.to_bits();
+    let sign = bits >> 31;
+    let power = power::<27>(bits.saturating_abs().wrapping_neg());
+    // X with 63 fraction bits, 39 of them good.
+    let x = power.mantissa >> power.exponent.unsigned_abs();
+    let sum = (1_u64 << 63).saturating_add(x);
+    let (index, z) = reduced((sum >> 32) as u32, sum as u32 >> 16);
+    let reciprocal = RECIPROCALS[index] as i32;
+    // y = 1/(1 + z) - 1 = -z + z^2 (1 - z + z^2).
+    let square = square_high(z); // 46 fraction bits
+    let slope = half_word(z).wrapping_sub(square >> 22); // 24 fraction bits
+    // Both factors are just below 2^15 and 2^16 in size, where the first row of the table ends.
+    let bend = half_word(square).wrapping_mul(slope) >> 9;
+    let y = (square.wrapping_sub(bend).wrapping_add(1 << 5) >> 7).wrapping_sub(z);
+    // r y with 38 fraction bits; what is cut off does not matter to the rounding.
+    let product = high_i32(y, reciprocal << 15);
+    let size = (reciprocal << 16).wrapping_add(product.wrapping_add(1 << 5) >> 6).wrapping_add(i32::MIN);
+    let size = if bits == 0 { 0 } else { size };
+    I1F31::from_bits(signed(size, sign))
+}
+
+/// `value` 2^(exponent - 31) with its top bit set, to the nearest 29 bits, with a sign of 0 or -1.
+#[inline(always)]
+const fn rounded_offset(value: u32, exponent: i32, sign: i32) -> ShiftOffset32 {
+    let mantissa = (value >> 3).wrapping_add((value >> 2) & 1);
+    let carry = mantissa >> 29;
+    ShiftOffset32 {
+        mantissa: signed((mantissa >> carry) as i32, sign),
+        exponent: exponent.wrapping_add(carry as i32),
+    }
+}
+
+/// Offset from one of the frequency factor: exp(r) - 1.
+///
+/// `rapidity` is I4F28, positive = approaching = a positive offset.
+///
+/// # Accuracy
+/// [`super::bounds::OFFSET_OF_RAPIDITY_32`] units of the mantissa over all inputs
+/// (`tests/rapidity_fixed_32.rs`).
+///
+/// # Cost
+/// 9 products of 32 bits; two branches, on the size and the sign of the rapidity.
+///
+/// # Source
+/// Below 0.0586 r (1 + r/2 + r^2/6 + ... + r^5/720), above the factor with 7 more bits less one.
+///
+/// ```
+/// use fixed::types::I4F28;
+/// use shiftkeel::rapidity::fixed_32::offset_of_rapidity;
+/// let offset = offset_of_rapidity(I4F28::from_bits(-1)); // the smallest
+/// assert_eq!((offset.mantissa(), offset.exponent()), (-(1 << 28), -28));
+/// ```
+pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
+    /// 0.0586, so that r/2 + r^2/6 fits a word with 36 fraction bits.
+    const SMALL: u32 = 15 << 20;
+    let bits = rapidity.to_bits();
+    if bits.unsigned_abs() < SMALL {
+        return small_offset(bits);
+    }
+    let power = power::<28>(bits);
+    let (wide, exponent) = if bits < 0 {
+        // 1 - exp(r) with 64 fraction bits; the one is 2^64 and falls off.
+        ((power.mantissa >> power.exponent.wrapping_add(1).unsigned_abs()).wrapping_neg(), -1)
+    } else {
+        (power.mantissa.wrapping_sub(1 << 63_u32.wrapping_sub(power.exponent as u32)), power.exponent)
+    };
+    let shift = wide.leading_zeros();
+    rounded_offset((wide << shift >> 32) as u32, exponent.wrapping_sub(shift as i32), bits >> 31)
+}
+
+/// exp(r) - 1 for |r| < 0.0586.
+#[inline(always)]
+const fn small_offset(bits: i32) -> ShiftOffset32 {
+    if bits == 0 {
+        return ShiftOffset32 { mantissa: 0, exponent: 0 };
+    }
+    let r = bits << 7; // 35 fraction bits
+    let high = r >> 16;
+    let square = square_high(r); // 38 fraction bits
+    // 1/24 + r/120 + r^2/720 with 30 fraction bits, 1/6 + r (...) with 33.
+    let slope = 17_476_i32.wrapping_add(high.wrapping_mul(2_913) >> 19);
+    let tail = 44_739_243_i32.wrapping_add(high.wrapping_mul(slope) >> 10);
+    let sixth = 1_431_655_765_i32.wrapping_add(high_i32(r, tail));
+    // r/2 + r^2 (...) with 36 fraction bits.
+    let bend = r.wrapping_add(high_i32(square, sixth).wrapping_add(1 << 2) >> 3);
+    let size = bits.unsigned_abs();
+    let shift = size.leading_zeros();
+    // 32 significant bits and 2 more, so that what is cut off does not matter to the rounding.
+    let normal = size << shift.wrapping_sub(1);
+    let value = normal.wrapping_add((high_i32(normal as i32, bend) >> 4) as u32);
+    let top = value.leading_zeros();
+    rounded_offset(value << top, 4_i32.wrapping_sub(shift as i32).wrapping_sub(top as i32), bits >> 31)
+}
