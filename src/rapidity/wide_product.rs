@@ -4,30 +4,25 @@
 //! multiplication (Armv6-M, told here by its lack of atomics) forms the high word from 16-bit halves in
 //! about 20 instructions, where the compiler would call a routine of about 50.
 
+/// Whether the target multiplies 32 by 32 bits to 32 only.
+pub(crate) const SHORT_PRODUCTS: bool = cfg!(all(target_arch = "arm", not(target_has_atomic = "32")));
+
 /// floor(a b / 2^32) of two unsigned words.
 #[inline(always)]
 pub(crate) const fn high_u32(a: u32, b: u32) -> u32 {
-    if cfg!(all(target_arch = "arm", not(target_has_atomic = "32"))) {
-        halves::high_u32(a, b)
-    } else {
-        ((a as u64).wrapping_mul(b as u64) >> 32) as u32
-    }
+    if SHORT_PRODUCTS { halves::high_u32(a, b) } else { ((a as u64).wrapping_mul(b as u64) >> 32) as u32 }
 }
 
 /// floor(a b / 2^32) of two signed words.
 #[inline(always)]
 pub(crate) const fn high_i32(a: i32, b: i32) -> i32 {
-    if cfg!(all(target_arch = "arm", not(target_has_atomic = "32"))) {
-        halves::high_i32(a, b)
-    } else {
-        ((a as i64).wrapping_mul(b as i64) >> 32) as i32
-    }
+    if SHORT_PRODUCTS { halves::high_i32(a, b) } else { ((a as i64).wrapping_mul(b as i64) >> 32) as i32 }
 }
 
 /// floor(a b / 2^32) of an unsigned and a signed word.
 #[inline(always)]
 pub(crate) const fn high_u32_i32(a: u32, b: i32) -> i32 {
-    if cfg!(all(target_arch = "arm", not(target_has_atomic = "32"))) {
+    if SHORT_PRODUCTS {
         // a = signed(a) + 2^32 [a has its top bit].
         halves::high_i32(a as i32, b).wrapping_add(b & (a as i32 >> 31))
     } else {
@@ -38,19 +33,31 @@ pub(crate) const fn high_u32_i32(a: u32, b: i32) -> i32 {
 /// a b of two unsigned words.
 #[inline(always)]
 pub(crate) const fn product_u32(a: u32, b: u32) -> u64 {
-    (high_u32(a, b) as u64) << 32 | a.wrapping_mul(b) as u64
+    if SHORT_PRODUCTS {
+        (high_u32(a, b) as u64) << 32 | a.wrapping_mul(b) as u64
+    } else {
+        (a as u64).wrapping_mul(b as u64)
+    }
 }
 
 /// a b of two signed words.
 #[inline(always)]
 pub(crate) const fn product_i32(a: i32, b: i32) -> i64 {
-    (high_i32(a, b) as i64) << 32 | a.wrapping_mul(b) as u32 as i64
+    if SHORT_PRODUCTS {
+        (high_i32(a, b) as i64) << 32 | a.wrapping_mul(b) as u32 as i64
+    } else {
+        (a as i64).wrapping_mul(b as i64)
+    }
 }
 
 /// a b of an unsigned and a signed word.
 #[inline(always)]
 pub(crate) const fn product_u32_i32(a: u32, b: i32) -> i64 {
-    (high_u32_i32(a, b) as i64) << 32 | a.wrapping_mul(b as u32) as i64
+    if SHORT_PRODUCTS {
+        (high_u32_i32(a, b) as i64) << 32 | a.wrapping_mul(b as u32) as i64
+    } else {
+        (a as i64).wrapping_mul(b as i64)
+    }
 }
 
 /// floor(a b / 2^32) of a signed double word and an unsigned word.

@@ -22,16 +22,14 @@ use crate::rapidity::{Delay, Rapidity};
 pub struct Channel<const RADIATES: bool> {
     /// W0 in 2^-64 cycle per clock.
     nominal: u64,
-    /// Wf for a narrow offset.
+    /// s Wf for a narrow offset.
     by_offset: Gain,
-    /// Wf/c for a range rate.
+    /// -s Wf/c for a range rate.
     by_range_rate: Gain,
-    /// f0 / clocks for a difference of truncated delays.
+    /// -s f0 / clocks (transmitting: +) for a difference of truncated delays.
     by_delay: Gain,
     /// Bits of a delay that are dropped before the difference.
     pub(super) delay_shift: u8,
-    /// -1 for high-side injection, else 0.
-    mirror: i64,
     pub(super) ramp: RampUnits,
     /// Lowest and highest step from W0 that may be radiated; unused by a receiver.
     fence: (i64, i64),
@@ -118,7 +116,10 @@ impl Channel<true> {
             let size = ((whole << 8) as i64).saturating_add((fraction >> 56) as i64);
             Ok(if away < 0 { -size } else { size })
         };
-        Ok((edge(permission.lowest())?, edge(permission.highest())?))
+        let (lowest, highest) = (edge(permission.lowest())?, edge(permission.highest())?);
+        // High-side injection turns the band over.
+        let mirrored = plan.injection == Injection::HighSide;
+        Ok(if mirrored { (-highest, -lowest) } else { (lowest, highest) })
     }
 }
 
@@ -137,15 +138,15 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         let by_offset = divide_nearest(folded.carrier as u128, clock);
         let per_metre = divide_nearest(folded.carrier as u128, 299_792_458).0;
         let by_range_rate = divide_nearest(per_metre, clock);
+        let mirrored = plan.injection == Injection::HighSide;
         let delay_units = Delay::FRACTION_BITS as i32 - delay_shift;
         Ok(Self {
             nominal: nominal(folded, clock, fraction_bits)?,
             // The quotients are in 2^-56 cycle per clock, by the delay in 2^-80 Hz.
-            by_offset: Gain::new(by_offset, fraction_bits - 44 - 56),
-            by_range_rate: Gain::new(by_range_rate, fraction_bits - 16 - 56),
-            by_delay: Gain::new(by_delay, fraction_bits - delay_units - 80),
+            by_offset: Gain::new(by_offset, fraction_bits - 44 - 56, mirrored),
+            by_range_rate: Gain::new(by_range_rate, fraction_bits - 16 - 56, !mirrored),
+            by_delay: Gain::new(by_delay, fraction_bits - delay_units - 80, mirrored == RADIATES),
             delay_shift: delay_shift as u8,
-            mirror: -i64::from(plan.injection == Injection::HighSide),
             ramp: RampUnits::new(clocks),
             fence: (0, 0),
             clock_hertz: clock >> 24,
@@ -173,7 +174,7 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         let narrow = narrowed(rapidity)?;
         let signed = (narrow ^ Self::TRANSMIT).wrapping_sub(Self::TRANSMIT);
         let offset = self.by_offset.times_coarse(offset_of_rapidity(signed));
-        self.permitted(self.mirrored(offset))
+        self.permitted(self.nominal.wrapping_add(offset))
     }
 
     /// The step for a range rate in m/s, positive = receding: the cheapest way from an estimate to the
@@ -192,7 +193,7 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     pub fn step_for_range_rate(&self, range_rate: I16F16) -> Result<PhaseStep, TuningError> {
         let rate = (range_rate.to_bits() ^ Self::TRANSMIT).saturating_sub(Self::TRANSMIT);
         let offset = self.by_range_rate.times_coarse(first_order_range_rate(rate));
-        self.permitted(self.mirrored(offset.wrapping_neg()))
+        self.permitted(self.nominal.wrapping_add(offset))
     }
 
     /// A delay without the bits that the channel does not use; differences of these never accumulate.
@@ -220,15 +221,8 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     /// The mean step over an interval between two truncated delays: exact in phase.
     #[inline]
     pub(super) fn mean(&self, before: i32, after: i32) -> u64 {
-        // Receive: earlier minus later delay; transmit: the other way round.
-        let difference = (before.wrapping_sub(after) ^ Self::TRANSMIT).wrapping_sub(Self::TRANSMIT);
-        self.mirrored(self.by_delay.times(difference))
-    }
-
-    #[inline]
-    fn mirrored(&self, offset: u64) -> u64 {
-        let offset = (offset as i64 ^ self.mirror).wrapping_sub(self.mirror);
-        self.nominal.wrapping_add(offset as u64)
+        // A receiver's phase is that of time minus delay, a transmitter's that of time plus delay: the gain knows.
+        self.nominal.wrapping_add(self.by_delay.times(after.wrapping_sub(before)))
     }
 
     /// The step again when a transmitter may radiate it (a receiver always may).
@@ -237,7 +231,6 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         if RADIATES {
             let (lowest, highest) = self.fence;
             let away = step.wrapping_sub(self.nominal) as i64;
-            let away = (away ^ self.mirror).wrapping_sub(self.mirror);
             if away < lowest || away > highest {
                 return Err(self.refusal(away));
             }

@@ -11,7 +11,7 @@
 use super::{CELL_BITS, HEADER_WORDS, RECORD_WORDS};
 use crate::rapidity::{
     Delay, Motion, Rapidity, RapidityRate, narrow,
-    wide_product::{high_i32, shifted_left},
+    wide_product::{SHORT_PRODUCTS, high_i32, shifted_left},
 };
 
 /// Bound on what truncation adds to one evaluation, in 2^-(Q+16) s.
@@ -253,9 +253,6 @@ fn entry(directory: &[u32], index: u32) -> u32 {
 fn not_above(entry: u32, key: u32) -> u32 {
     !((u64::from(key).wrapping_sub(u64::from(entry)) >> 32) as u32)
 }
-
-/// Whether the target multiplies 32 by 32 bits to 32 only (Armv6-M, told here by its lack of atomics).
-const SHORT_PRODUCTS: bool = cfg!(all(target_arch = "arm", not(target_has_atomic = "32")));
 
 /// `value` times a 16-bit fraction: floor(value u / 2^16).
 #[inline(always)]
