@@ -319,7 +319,8 @@ fn one_crystal() {
         plan.translation = None;
         let channel = Channel::receive(&plan.rf(), plan.clocks).unwrap();
         let sum = plan.conversions.iter().fold(big(0, 0), |sum, one| sum + big(one.frequency.to_bits(), 24));
-        let exact = (big(plan.carrier.to_bits(), 24) * plan.over_clock() - sum) / plan.clock() * big(plan.sign(), 0);
+        let exact =
+            (big(plan.carrier.to_bits(), 24) * plan.over_clock() - sum) / plan.clock() * big(plan.sign(), 0);
         let off = off_in_hertz(channel.nominal_step(), &exact, plan.clock).abs();
         let place = plan.clock.as_hertz_f64() / 2f64.powi(64);
         worst = worst.max((off - place) / (plan.carrier.as_hertz_f64() / 2f64.powi(60)));
@@ -352,18 +353,21 @@ fn mean_steps() {
             let held = hold.step(&channel, &at(delay), false).unwrap();
             let mean = held.step.to_bits().wrapping_add_signed(hold.remainder()).wrapping_sub(carried as u64);
             given = given.wrapping_add(mean);
-            let exact = |before: i64, after: i64| {
-                &unit * big(before - after, 56) / &clocks * big(plan.sign(), 0)
-            };
+            let exact =
+                |before: i64, after: i64| &unit * big(before - after, 56) / &clocks * big(plan.sign(), 0);
             let slack = plan.clock.as_hertz_f64() * plan.seconds();
             // In seconds of delay; W0 and the gain's places are held elsewhere.
             let constants = |intervals: f64| {
-                intervals * (slack * 2f64.powi(-48) + plan.hertz_in_plan() * plan.seconds() * 2f64.powi(-59)) / plan.carrier_hertz()
+                intervals * (slack * 2f64.powi(-48) + plan.hertz_in_plan() * plan.seconds() * 2f64.powi(-59))
+                    / plan.carrier_hertz()
             };
             let seconds = |step: u64, exact: &Big| {
-                (off_in_hertz(PhaseStep::from_bits(step), exact, plan.clock) * plan.seconds() / plan.carrier_hertz()).abs()
+                (off_in_hertz(PhaseStep::from_bits(step), exact, plan.clock) * plan.seconds()
+                    / plan.carrier_hertz())
+                .abs()
             };
-            worst = worst.max((seconds(mean, &(&nominal + exact(before, delay))) - constants(1.0)) / resolution);
+            worst =
+                worst.max((seconds(mean, &(&nominal + exact(before, delay))) - constants(1.0)) / resolution);
             if interval == 100 {
                 let all = &nominal * big(100, 0) + exact(origin, delay);
                 together = together.max((seconds(given, &all) - constants(100.0)) / resolution);
@@ -400,7 +404,8 @@ fn ratios() {
                 Ok(ratio) => {
                     let off = (big(ratio.to_bits(), 48) - &exact).to_f64().value().abs();
                     let gain = plan.carrier_hertz() / plan.clock.as_hertz_f64();
-                    let kernel = gain * (0.51 * 2f64.powi(-44) + offset.to_f64().value().abs() * 2f64.powi(-31));
+                    let kernel =
+                        gain * (0.51 * 2f64.powi(-44) + offset.to_f64().value().abs() * 2f64.powi(-31));
                     let constants = plan.hertz_in_plan() / plan.clock.as_hertz_f64() * 2f64.powi(-59);
                     worst = worst.max((off - kernel - constants) * 2f64.powi(48));
                     looked += 1;
