@@ -330,8 +330,8 @@ fn wrong_table_and_wrong_time() {
     }
     assert_eq!(kept, 100);
 
-    // A tick twice: no time has passed for the table, and the step asked for is the one at rest. A sweep calls it
-    // too fast, 10 kHz in one interval.
+    // A tick twice: no time has passed for the table, and its delay alone would ask for the step at rest, 10 kHz
+    // away.
     let mut sweep = Sweep::begin(&channel, &motion(10).unwrap()).unwrap();
     sweep.step(&channel, &motion(11).unwrap()).unwrap();
     let end = sweep.end();
@@ -339,6 +339,17 @@ fn wrong_table_and_wrong_time() {
     assert_eq!(sweep.step(&channel, &motion(10).unwrap()), Err(TuningError::TooFast));
     assert_eq!(sweep.end(), end);
     assert!(sweep.step(&channel, &motion(12).unwrap()).is_ok());
+    // And so does a device that holds its word; it neither doubles the shift after a missed tick nor drops it.
+    let mut hold = Hold::<32>::begin(&channel, &motion(10).unwrap(), 0).unwrap();
+    hold.step(&channel, &motion(11).unwrap(), false).unwrap();
+    let word = hold.word();
+    for tick in [11, 10, 13, 20] {
+        for quiet in [false, true] {
+            assert_eq!(hold.step(&channel, &motion(tick).unwrap(), quiet), Err(TuningError::TooFast));
+        }
+    }
+    assert_eq!(hold.word(), word);
+    assert!(hold.step(&channel, &motion(12).unwrap(), false).is_ok());
 }
 
 /// Range rates at the ends of their format give steps, and receivers never refuse.

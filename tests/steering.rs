@@ -527,11 +527,12 @@ fn refused_motions_change_nothing() {
     let mut never_refused = (sweep_before, hold_before);
     assert_eq!(sweep.step(&channel, &good), never_refused.0.step(&channel, &good));
     assert_eq!(hold.step(&channel, &good, false), never_refused.1.step(&channel, &good, false));
-    // A sweep does not put the shift of two intervals into one: it asks to begin again. The pass is still
-    // far from its closest approach, the shift 10 kHz.
-    let before = sweep.end();
+    // The shift of two intervals is not put into one: begin again. The pass is still far from its closest
+    // approach, the shift 10 kHz.
+    let before = (sweep.end(), hold.word());
     assert_eq!(sweep.step(&channel, &motion(&table, ticks, 103)), Err(TuningError::TooFast));
-    assert_eq!(sweep.end(), before);
+    assert_eq!(hold.step(&channel, &motion(&table, ticks, 103), false), Err(TuningError::TooFast));
+    assert_eq!((sweep.end(), hold.word()), before);
     let after_gap = motion(&table, ticks, 103);
     sweep = Sweep::begin(&channel, &after_gap).unwrap();
     hold = Hold::begin(&channel, &after_gap, 0).unwrap();

@@ -9,7 +9,7 @@ use crate::frequency::{ClockRatio, Frequency, PhaseStep, divide_nearest};
 use crate::rapidity::narrow::{first_order_range_rate, offset_of_rapidity};
 use crate::rapidity::{Delay, Rapidity};
 
-/// log2 of the steepest rapidity rate that a ramp follows, per second: 7.6e-6/s, ten times a low orbit's.
+/// log2 of the steepest rapidity rate that is followed, per second: 7.6e-6/s, ten times a low orbit's.
 const STEEPEST: i32 = -17;
 
 /// A channel that is steered every so many clocks: receiving (`RADIATES` false) or transmitting (true).
@@ -19,7 +19,8 @@ const STEEPEST: i32 = -17;
 /// [`Hold`](super::Hold): the phase stays continuous.
 ///
 /// An interval lasts as long as its clocks really take: with the clock's crystal fast by Kc,
-/// `clocks / (clock exp(Kc))` seconds. Ask the table for the motion at those instants.
+/// `clocks / (clock exp(Kc))` seconds. Ask the table for the motion at those instants; below 0.1 ms by
+/// [`PassTable::at_fine`](crate::pass::PassTable::at_fine).
 #[derive(Clone, Copy, Debug)]
 pub struct Channel<const RADIATES: bool> {
     /// W0 in 2^-64 cycle per clock.
@@ -67,15 +68,21 @@ impl RampUnits {
         }
     }
 
+    /// Whether a change of the step within an interval is one that a motion can make.
+    #[inline]
+    pub(super) fn follows(&self, change: i64) -> bool {
+        let dropped = change >> self.drop;
+        i64::from(dropped as i32) == dropped
+    }
+
     /// The even ramp per clock closest to `change` over an interval, and the change that it really makes;
     /// `None` when the change is beyond what a ramp follows.
     #[inline]
     pub(super) fn ramp(&self, change: i64) -> Option<(i64, i64)> {
-        let dropped = change >> self.drop;
-        let narrow = dropped as i32;
-        if i64::from(narrow) != dropped {
+        if !self.follows(change) {
             return None;
         }
+        let narrow = (change >> self.drop) as i32;
         let count = (i64::from(narrow).wrapping_mul(i64::from(self.reciprocal)) >> 32) as i32;
         let made = i64::from(count).wrapping_mul(i64::from(self.clocks)) << self.unit;
         Some((i64::from(count) << self.unit, made))

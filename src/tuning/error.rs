@@ -27,7 +27,8 @@ pub enum TuningError {
         /// Hertz beyond the nearer edge.
         hertz: u32,
     },
-    /// The rapidity is saturated or beyond 2^-13 (36 km/s): the last word stays.
+    /// The rapidity is saturated or beyond 2^-13 (36 km/s), or it and the delay do not belong together, because an
+    /// interval was missed, came twice, or the table is another: the last word stays.
     TooFast,
 }
 
@@ -49,7 +50,7 @@ impl core::fmt::Display for TuningError {
             Self::OutsideFence { hertz } => {
                 return write!(formatter, "emission {hertz} Hz outside the permitted band: not radiated");
             }
-            Self::TooFast => "rapidity saturated or beyond 2^-13 (36 km/s): last word kept; check the motion",
+            Self::TooFast => "motion beyond 2^-13 (36 km/s), or not one interval after the last: last word kept; begin again",
         })
     }
 }

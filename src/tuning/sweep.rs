@@ -85,7 +85,7 @@ impl Sweep {
     /// Steers the coming interval, given the motion at its end.
     ///
     /// The motion is compared with that of the last call, one interval before: after a missed instant
-    /// [`Self::begin`] again (a shift of two intervals in one is beyond what a ramp follows, and refused).
+    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too fast).
     ///
     /// # Accuracy
     /// Frequency and phase within [`Proven::of_sweep`](super::Proven::of_sweep) (`tests/steering.rs`).
