@@ -355,10 +355,15 @@ fn mean_steps() {
     for (plan, mut random) in plans(7, 300) {
         let channel = Channel::receive(&plan.rf(), plan.clocks).unwrap();
         let origin = random.bits() as i64 >> 8;
-        let largest = plan.seconds() * 2f64.powi(56 - 13) * 0.999;
+        let largest = plan.seconds() * 2f64.powi(56 - 13) * 0.998;
         let mut delay = origin;
-        let at = |delay| Motion { delay: Delay::from_bits(delay), ..Motion::default() };
-        let mut hold = Hold::<63>::begin(&channel, &at(origin), 0).unwrap();
+        // Delay and rapidity of one motion; the two must belong together.
+        let at = |delay: i64, slope: f64| Motion {
+            delay: Delay::from_bits(delay),
+            rapidity: Rapidity::from_bits(((-slope).ln_1p() * 2f64.powi(60)) as i64),
+            ..Motion::default()
+        };
+        let mut hold = Hold::<63>::begin(&channel, &at(origin, 0.0), 0).unwrap();
         let resolution = (plan.seconds() / 2f64.powi(42)).max(2f64.powi(-56));
         let nominal = plan.nominal();
         let unit = plan.true_carrier();
@@ -368,7 +373,9 @@ fn mean_steps() {
             let before = delay;
             delay += (largest * (random.bits() as i64 as f64 / 2f64.powi(63))) as i64;
             let carried = hold.remainder();
-            let held = hold.step(&channel, &at(delay), false).unwrap();
+            let true_seconds = plan.seconds() * plan.over_clock().to_f64().value();
+            let slope = (delay - before) as f64 / 2f64.powi(56) / true_seconds;
+            let held = hold.step(&channel, &at(delay, slope), false).unwrap();
             let mean = held.step.to_bits().wrapping_add_signed(hold.remainder()).wrapping_sub(carried as u64);
             given = given.wrapping_add(mean);
             let exact =

@@ -181,8 +181,9 @@ impl Proven {
             hertz: bend * (1.0 / 8.0 + 1.0 / 12.0) + 2.0 * unit,
             cycles: (bend / 12.0 + 1.5 * unit) * interval,
         };
-        // Eight units of the slope's own evaluation, and one of 2^-44 for logarithm and offset.
-        let own = steering.carrier * (8.0 * table.slope_resolution() + libm::ldexp(1.0, -44));
+        // The rapidity's evaluation, and a unit of 2^-44 for rounding it and for its offset.
+        let rapidity = f64::from(table.rapidity_noise()) * libm::ldexp(1.0, -60);
+        let own = steering.carrier * (rapidity + libm::ldexp(1.0, -44));
         let coarse_gain = steering.carrier * extremes.slope * libm::ldexp(1.0, -31);
         let of_own = |hertz: f64| Bound { hertz, cycles: 0.75 * hertz * interval };
         let of_means = Bound { hertz: 0.0, cycles: 0.75 * steering.carrier * Self::noise(channel, table) };

@@ -10,6 +10,9 @@ use crate::rapidity::narrow::{first_order_range_rate, offset_of_rapidity};
 use crate::rapidity::wide_product::{high_i64_u32, product_u32, shifted_right};
 use crate::rapidity::{Delay, Rapidity};
 
+/// log2 of the steepest rapidity rate that is followed, per second: 7.6e-6/s, ten times a low orbit's.
+const STEEPEST: i32 = -17;
+
 /// A channel that is steered every so many clocks: receiving (`RADIATES` false) or transmitting (true).
 ///
 /// Immutable and `Copy`: one serves several oscillators. When a crystal offset changes, build it again
@@ -17,7 +20,8 @@ use crate::rapidity::{Delay, Rapidity};
 /// [`Hold`](super::Hold): the phase stays continuous.
 ///
 /// An interval lasts as long as its clocks really take: with the clock's crystal fast by Kc,
-/// `clocks / (clock exp(Kc))` seconds. Ask the table for the motion at those instants.
+/// `clocks / (clock exp(Kc))` seconds. Ask the table for the motion at those instants; below 0.1 ms by
+/// [`PassTable::at_fine`](crate::pass::PassTable::at_fine).
 #[derive(Clone, Copy, Debug)]
 pub struct Channel<const RADIATES: bool> {
     /// W0 in 2^-64 cycle per clock.
@@ -45,13 +49,27 @@ pub(super) struct RampUnits {
     reciprocal: u32,
     /// floor(log2 clocks).
     shift: u8,
+    /// Largest difference between an interval's mean step and its end's, in 2^-32 cycle per clock.
+    steepest: u32,
 }
 
 impl RampUnits {
-    fn new(clocks: u32) -> Self {
+    /// `steepest`: log2 of what the steepest motion makes of the step in an interval, in 2^-64 cycle per clock.
+    fn new(clocks: u32, steepest: i32) -> Self {
         let shift = clocks.ilog2();
         let (reciprocal, _) = divide_nearest(1 << (31 + shift), u64::from(clocks));
-        Self { clocks, reciprocal: reciprocal as u32, shift: shift as u8 }
+        Self {
+            clocks,
+            reciprocal: reciprocal as u32,
+            shift: shift as u8,
+            steepest: 1 << (steepest - 32).clamp(1, 29),
+        }
+    }
+
+    /// Whether a difference of the step within an interval is one that a motion can make.
+    #[inline]
+    pub(super) fn follows(&self, difference: u64) -> bool {
+        ((difference >> 32) as u32).wrapping_add(self.steepest) <= self.steepest << 1
     }
 
     /// An even ramp per clock that makes `change` over an interval, and the change that it really makes: less by
@@ -136,6 +154,7 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         let delay_shift = (log_interval + 13).clamp(0, 30);
         let by_delay = divide_nearest(folded.true_carrier as u128, u64::from(clocks));
         let by_offset = divide_nearest(folded.carrier as u128, clock);
+        let log_gain = 128 - by_offset.0.leading_zeros() as i32 - 56;
         let per_metre = divide_nearest(folded.carrier as u128, 299_792_458).0;
         let by_range_rate = divide_nearest(per_metre, clock);
         let mirrored = plan.injection == Injection::HighSide;
@@ -147,7 +166,7 @@ impl<const RADIATES: bool> Channel<RADIATES> {
             by_range_rate: Gain::new(by_range_rate, fraction_bits - 16 - 56, !mirrored),
             by_delay: Gain::new(by_delay, fraction_bits - delay_units - 80, mirrored == RADIATES),
             delay_shift: delay_shift as u8,
-            ramp: RampUnits::new(clocks),
+            ramp: RampUnits::new(clocks, fraction_bits + STEEPEST + log_gain + log_interval),
             fence: (0, 0),
             clock_hertz: clock >> 24,
         })

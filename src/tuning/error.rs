@@ -9,6 +9,8 @@ pub enum TuningError {
     ClockZero,
     /// The carrier is zero, or above 1.09 THz after translation.
     CarrierNotUsable,
+    /// A transponder's downlink would not be a positive frequency, or is a factor 16 or more from its uplink.
+    TransponderNotUsable,
     /// A crystal's offset, or its difference to the clock's, is beyond 2^-10 (976 parts per million).
     CrystalTooFar,
     /// An interval of no clocks, or of a minute or more.
@@ -25,7 +27,8 @@ pub enum TuningError {
         /// Hertz beyond the nearer edge.
         hertz: u32,
     },
-    /// The rapidity is saturated or beyond 2^-13 (36 km/s): the last word stays.
+    /// The rapidity is saturated or beyond 2^-13 (36 km/s), or it and the delay do not belong together, because an
+    /// interval was missed, came twice, or the table is another: the last word stays.
     TooFast,
 }
 
@@ -34,6 +37,9 @@ impl core::fmt::Display for TuningError {
         formatter.write_str(match self {
             Self::ClockZero => "oscillator clock of zero: give the clock in hertz",
             Self::CarrierNotUsable => "carrier of zero or above 1.09 THz: give the RF carrier in hertz, not an offset",
+            Self::TransponderNotUsable => {
+                "transponder's downlink not above zero, or a factor 16 from its uplink: check the constant and the sense"
+            }
             Self::CrystalTooFar => "crystal offset beyond 976 ppm: check its unit (parts per billion)",
             Self::IntervalNotUsable => "an interval must have at least one clock and last under a minute",
             Self::NegativeOutput => {
@@ -44,7 +50,7 @@ impl core::fmt::Display for TuningError {
             Self::OutsideFence { hertz } => {
                 return write!(formatter, "emission {hertz} Hz outside the permitted band: not radiated");
             }
-            Self::TooFast => "rapidity saturated or beyond 2^-13 (36 km/s): last word kept; check the motion",
+            Self::TooFast => "motion beyond 2^-13 (36 km/s), or not one interval after the last: last word kept; begin again",
         })
     }
 }

@@ -69,7 +69,7 @@ impl<const BITS: u32> Hold<BITS> {
     /// packet is on the air); the word stays and the phase is taken up afresh afterwards.
     ///
     /// The motion is compared with that of the last call, one interval before: after a missed instant
-    /// [`Self::begin`] again, else the shift of two intervals would go into one.
+    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too fast).
     ///
     /// # Accuracy
     /// The frequency within [`Proven::of_hold`](super::Proven::of_hold); the phase at every interval's end, without
@@ -85,11 +85,12 @@ impl<const BITS: u32> Hold<BITS> {
         next: &Motion,
         quiet: bool,
     ) -> Result<Held, TuningError> {
-        if next.rapidity.is_saturated() {
-            return Err(TuningError::TooFast);
-        }
+        let own = channel.step(next.rapidity)?.to_bits();
         let delay = channel.truncated(next.delay);
         let mean = channel.mean(self.delay, delay);
+        if !channel.ramp.follows(mean.wrapping_sub(own)) {
+            return Err(TuningError::TooFast);
+        }
         let away = mean.wrapping_sub(self.current().to_bits()) as i64;
         let stays = quiet | (away.unsigned_abs() < self.deadband);
         let wanted = PhaseStep::from_bits(mean.wrapping_add(self.remainder as u64));

@@ -17,6 +17,15 @@ use crate::frequency::Frequency;
 /// assert!(Permission::to_radiate(low, high).is_ok());
 /// assert!(Permission::to_radiate(high, low).is_err());
 /// ```
+///
+/// No transmitting channel without one:
+/// ```compile_fail,E0061
+/// use shiftkeel::frequency::Frequency;
+/// use shiftkeel::tuning::{Channel, RfPlan};
+/// let carrier = Frequency::from_hertz(437_000_000).unwrap();
+/// let clock = Frequency::from_hertz(100_000_000).unwrap();
+/// let channel = Channel::transmit(&RfPlan::direct(carrier, clock), 1000);
+/// ```
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Permission {
     lowest: Frequency,

@@ -60,6 +60,12 @@ impl Swept {
     pub const fn start(&self) -> PhaseStep {
         PhaseStep::from_bits(self.first.to_bits().wrapping_sub((self.ramp.to_bits() >> 1) as u64))
     }
+
+    /// Change of the step over an interval of `clocks`, in 2^-64 cycle per clock: for a device that sweeps by step
+    /// and dwell.
+    pub const fn change(&self, clocks: u32) -> i64 {
+        self.ramp.to_bits().wrapping_mul(clocks as i64)
+    }
 }
 
 impl Sweep {
@@ -88,7 +94,7 @@ impl Sweep {
     /// Steers the coming interval, given the motion at its end.
     ///
     /// The motion is compared with that of the last call, one interval before: after a missed instant
-    /// [`Self::begin`] again (a shift of two intervals in one is beyond what a ramp follows, and refused).
+    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too fast).
     ///
     /// # Accuracy
     /// Frequency and phase within [`Proven::of_sweep`](super::Proven::of_sweep) (`tests/steering.rs`).
@@ -106,6 +112,9 @@ impl Sweep {
         let own = channel.step(next.rapidity)?.to_bits();
         let delay = channel.truncated(next.delay);
         let mean = channel.mean(self.delay, delay);
+        if !channel.ramp.follows(mean.wrapping_sub(own)) {
+            return Err(TuningError::TooFast);
+        }
         let start = self.end;
         let wanted = mean.wrapping_add(self.remainder as u64);
         let half = (own.wrapping_sub(start) as i64) >> 1;

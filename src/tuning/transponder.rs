@@ -41,8 +41,8 @@ pub struct TransponderPair {
     /// Downlink carrier at the spacecraft.
     pub down: Frequency,
     /// down / up and up / down in 2^-28, signed with the passband's sense.
-    down_over_up: i32,
-    up_over_down: i32,
+    down_over_up: i64,
+    up_over_down: i64,
     still: Still,
 }
 
@@ -50,8 +50,8 @@ impl LinearTransponder {
     /// The pair for an uplink carrier at the spacecraft: the user's place in the passband.
     ///
     /// # Errors
-    /// [`TuningError::CarrierNotUsable`] when the downlink is not a positive frequency of the format or the two
-    /// are more than a factor 4 apart.
+    /// [`TuningError::TransponderNotUsable`] when the downlink is not a positive frequency of the format or the two
+    /// are a factor 16 or more apart.
     pub fn pair(&self, up: Frequency, still: Still) -> Result<TransponderPair, TuningError> {
         let constant = super::plan::scaled_frequency(self.constant, self.crystal)?;
         let (up_bits, constant) = (i128::from(up.to_bits()), i128::from(constant));
@@ -60,14 +60,15 @@ impl LinearTransponder {
             (false, false) => up_bits + constant,
             (false, true) => up_bits - constant,
         };
-        let down = u64::try_from(down).map_err(|_| TuningError::CarrierNotUsable)?;
-        let ratio = |above: u64, below: u64| -> Result<i32, TuningError> {
-            if below == 0 || above >> 2 >= below {
-                return Err(TuningError::CarrierNotUsable);
+        let down = u64::try_from(down).map_err(|_| TuningError::TransponderNotUsable)?;
+        let ratio = |above: u64, below: u64| -> Result<i64, TuningError> {
+            if below == 0 || above >> 4 >= below {
+                return Err(TuningError::TransponderNotUsable);
             }
-            // Below 2^30.
-            let (ratio, _) = divide_nearest(u128::from(above) << RATIO_BITS, below);
-            Ok(if self.inverting { -(ratio as i32) } else { ratio as i32 })
+            // At most 2^32.
+            let (whole, fraction) = divide_nearest(u128::from(above) << RATIO_BITS, below);
+            let ratio = whole as i64 + (fraction >> 63) as i64;
+            Ok(if self.inverting { -ratio } else { ratio })
         };
         Ok(TransponderPair {
             up,
@@ -84,11 +85,12 @@ impl TransponderPair {
     /// [`Self::down`]), from those of the two links (positive = approaching).
     ///
     /// # Accuracy
-    /// Where a dial stands still, 2.5 + 0.6 up/down (or down/up) units of 2^-44, that is 0.1 mHz at 437 MHz
-    /// (`tests/transponder.rs`); exact for [`Still::Spacecraft`].
+    /// Where a dial stands still, 1.01 x 2^-44 of both carriers together (0.05 mHz for two of 437 MHz) and 2^-29 of
+    /// the shift (`tests/transponder.rs`); exact for [`Still::Spacecraft`].
     ///
     /// # Errors
-    /// [`TuningError::TooFast`] when a link's rapidity is beyond 2^-13, or the sum is.
+    /// [`TuningError::TooFast`] when a link's rapidity is beyond 2^-13, or when its shift in hertz is more than
+    /// 2^-13 of the carrier that shall move with it.
     ///
     /// # Source
     /// With the receiver still, the downlink at the spacecraft is f_down exp(-L_down); the uplink there follows
@@ -110,13 +112,13 @@ impl TransponderPair {
     }
 }
 
-/// Fraction bits of the carriers' ratio, which is below 4.
+/// Fraction bits of the carriers' ratio, which is below 16: its product with an offset fits 64 bits.
 const RATIO_BITS: u32 = 28;
 
 /// ln(1 + ratio expm1(-L)).
-fn moved(rapidity: Rapidity, ratio: i32) -> Result<Rapidity, TuningError> {
+fn moved(rapidity: Rapidity, ratio: i64) -> Result<Rapidity, TuningError> {
     let narrow = narrowed(rapidity)?;
-    let product = i64::from(offset_of_rapidity(narrow.saturating_neg())).wrapping_mul(i64::from(ratio));
+    let product = i64::from(offset_of_rapidity(narrow.saturating_neg())).wrapping_mul(ratio);
     let rounded = product.wrapping_add(1 << (RATIO_BITS - 1)) >> RATIO_BITS;
     let offset = i32::try_from(rounded).map_err(|_| TuningError::TooFast)?;
     Ok(Rapidity::from_bits(i64::from(rapidity_of_offset(offset)) << 16))

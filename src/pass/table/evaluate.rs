@@ -212,17 +212,6 @@ impl Layout {
     pub(super) fn half_length(&self, length: u32) -> f64 {
         libm::ldexp(0.5, i32::from(self.cell) + length as i32)
     }
-
-    /// A unit of the slope's evaluation at the shortest segment, or of its 44-bit result.
-    pub(super) fn slope_resolution(&self, directory: &[u32]) -> f64 {
-        let shortest = directory
-            .iter()
-            .flat_map(|word| [word & 0xFFFF, word >> 16])
-            .filter(|&entry| entry != 0xFFFF)
-            .fold(0xF, |least, entry| least.min(entry & 0xF));
-        let unit = libm::ldexp(1.0, 2 - i32::from(self.fraction));
-        (unit / (2.0 * self.half_length(shortest))).max(libm::ldexp(1.0, -44))
-    }
 }
 
 /// A number in two parts: head in 2^-(Q-2), tail in 2^-14 of that, not normalised (within 2^16 until the end).

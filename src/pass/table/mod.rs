@@ -291,11 +291,6 @@ impl<'a> PassTable<'a> {
         self.layout.rapidity_noise(shortest.unwrap_or(0))
     }
 
-    /// One unit of the slope's evaluation at the shortest segment, a pure number.
-    pub(crate) fn slope_resolution(&self) -> f64 {
-        self.layout.slope_resolution(self.directory)
-    }
-
     /// Assumed ratio of successive Chebyshev coefficients beyond those that the fit saw, in 2^-16.
     pub fn smoothness(&self) -> u32 {
         self.word(14)
