@@ -29,6 +29,7 @@ use crate::frequency::{PhaseRamp, PhaseStep};
 /// assert_eq!(oscillator.step(), PhaseStep::from_bits(5u64.wrapping_sub(2000)));
 /// ```
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, Default)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Nco {
     phase: u64,
     step: u64,

@@ -3,6 +3,7 @@
 use num_complex::Complex;
 
 use super::tables::{FINE_COSINE, FINE_SINE};
+use crate::rapidity::wide_product::high_i32;
 
 /// Cosine (`re`) and sine (`im`) of a phase, finely.
 ///
@@ -14,7 +15,7 @@ use super::tables::{FINE_COSINE, FINE_SINE};
 /// Within [`FINE_ERROR`](super::bounds::FINE_ERROR) of full scale over all 2^32 phases (`tests/nco_sine.rs`).
 ///
 /// # Cost
-/// Seven high halves of 32-bit products; about 48 instructions on a Cortex-M4F and 184 on a Cortex-M0,
+/// Seven high halves of 32-bit products; about 43 instructions on a Cortex-M4F and 186 on a Cortex-M0,
 /// independent of the phase. No table.
 ///
 /// # Source
@@ -32,7 +33,7 @@ pub const fn cosine_sine_fine(phase: u32) -> Complex<i32> {
     // The signed distance u from the nearest axis, -1 to 1 for an eighth of a cycle, in 2^-31; exact.
     let distance = (phase << 2) as i32;
     // v = 1 - 2 u^2 in 2^-30: centred, so that the coefficients fall quickly.
-    let square = (1i32 << 30).wrapping_sub(high_product(distance, distance) << 1);
+    let square = (1i32 << 30).wrapping_sub(high_i32(distance, distance) << 1);
     let cosine = minus_cosine(square);
     let sine = minus_sine(distance, square);
     // In the quadrants round the second and fourth axis the two change places. Then each gets its sign: the
@@ -56,9 +57,9 @@ const fn minus_cosine(square: i32) -> i32 {
     let [c0, c1, c2, c3, c4] = FINE_COSINE;
     // The last share is so small that a product of 16 bits each is enough: 2^-14 times 2^-37, shifted to 2^-37.
     let sum = c3.wrapping_add((square >> 16).wrapping_mul(c4) >> 14);
-    let sum = c2.wrapping_add(high_product(square, sum));
-    let sum = c1.wrapping_add(high_product(square, sum));
-    c0.wrapping_add(high_product(square, sum))
+    let sum = c2.wrapping_add(high_i32(square, sum));
+    let sum = c1.wrapping_add(high_i32(square, sum));
+    c0.wrapping_add(high_i32(square, sum))
 }
 
 /// -sin(u pi/4) in 2^-31 from u and v: -u/2, and u times the polynomial.
@@ -67,27 +68,7 @@ const fn minus_sine(distance: i32, square: i32) -> i32 {
     let [s0, s1, s2, s3] = FINE_SINE;
     // As above: 2^-14 times 2^-32, shifted to 2^-36.
     let sum = s2.wrapping_add((square >> 16).wrapping_mul(s3) >> 10);
-    let sum = s1.wrapping_add(high_product(square, sum));
-    let sum = s0.wrapping_add(high_product(square, sum));
-    high_product(distance, sum).wrapping_sub(distance >> 1)
-}
-
-/// The high half of a signed 32-bit product, rounded down: one instruction.
-#[cfg(not(all(target_arch = "arm", not(target_has_atomic = "32"))))]
-#[inline(always)]
-const fn high_product(a: i32, b: i32) -> i32 {
-    ((a as i64).wrapping_mul(b as i64) >> 32) as i32
-}
-
-/// The high half of a signed 32-bit product, rounded down, for cores without a long multiply (ARMv6-M is the
-/// one Arm target without compare-and-swap): four products of halves, the same bits.
-#[cfg(all(target_arch = "arm", not(target_has_atomic = "32")))]
-#[inline(always)]
-const fn high_product(a: i32, b: i32) -> i32 {
-    let (a_low, a_high) = (a as u32 & 0xFFFF, a >> 16);
-    let (b_low, b_high) = (b as u32 & 0xFFFF, b >> 16);
-    let carry = a_low.wrapping_mul(b_low) >> 16;
-    let middle = a_high.wrapping_mul(b_low as i32).wrapping_add(carry as i32);
-    let other = (a_low as i32).wrapping_mul(b_high).wrapping_add(middle & 0xFFFF);
-    a_high.wrapping_mul(b_high).wrapping_add(middle >> 16).wrapping_add(other >> 16)
+    let sum = s1.wrapping_add(high_i32(square, sum));
+    let sum = s0.wrapping_add(high_i32(square, sum));
+    high_i32(distance, sum).wrapping_sub(distance >> 1)
 }

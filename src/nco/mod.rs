@@ -10,6 +10,9 @@
 //! | [`cosine_sine_quick_i16`] | 16 bits | the same | [`bounds::QUICK_I16_ERROR`] of the last place |
 //! | [`cosine_sine_fine`] | 32 bits | none | [`bounds::FINE_ERROR`] |
 //!
+//! [`Mixer`] multiplies samples by the conjugate of an oscillator, with a still cheaper pair of its own, and adds
+//! them up: spurs below [`bounds::MIXER_SPUR_DBC`], 1 KiB of table.
+//!
 //! All are integer arithmetic with the same bits on every target, and cost the same for every phase.
 
 mod accumulator;
