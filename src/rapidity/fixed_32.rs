@@ -294,7 +294,7 @@ pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
 /// ```
 /// use fixed::types::{I1F31, I4F28};
 /// use shiftkeel::rapidity::fixed_32::beta_of_rapidity;
-/// assert_eq!(beta_of_rapidity(I4F28::from_num(-0.5)).to_bits(), -992_388_131);
+/// assert_eq!(beta_of_rapidity(I4F28::from_num(-0.5)).to_bits(), -992_389_039);
 /// ```
 pub const fn beta_of_rapidity(rapidity: I4F28) -> I1F31 {
     let bits = rapidity.to_bits();
@@ -348,7 +348,7 @@ const fn rounded_offset(value: u32, exponent: i32, sign: i32) -> ShiftOffset32 {
 /// use fixed::types::I4F28;
 /// use shiftkeel::rapidity::fixed_32::offset_of_rapidity;
 /// let offset = offset_of_rapidity(I4F28::from_bits(-1)); // the smallest
-/// assert_eq!((offset.mantissa(), offset.exponent()), (-(1 << 28), -28));
+/// assert_eq!((offset.mantissa(), offset.exponent()), (1 - (1 << 29), -29));
 /// ```
 pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     /// 0.0586, so that r/2 + r^2/6 fits a word with 36 fraction bits.
