@@ -6,7 +6,7 @@ mod reference;
 use fixed::types::{I4F60, I32F32, I48F16};
 use reference::{Big, Random, assert_tight, big, count, error_in_units, light, worst};
 use shiftkeel::frequency::Frequency;
-use shiftkeel::rapidity::{Rapidity, RapidityError};
+use shiftkeel::rapidity::{Rapidity, RapidityError, bounds};
 
 fn error(rapidity: Rapidity, exact: &Big) -> f64 {
     error_in_units(rapidity.to_bits(), 60, exact)
@@ -46,7 +46,7 @@ fn ratio_of_two_counts() {
             Err(_) => f64::INFINITY,
         }
     });
-    assert_tight("ratio", worst, 0.85);
+    assert_tight("ratio", worst, bounds::RATIO);
 }
 
 #[test]
@@ -98,7 +98,7 @@ fn crystal_offset() {
             Err(_) => f64::INFINITY,
         }
     });
-    assert_tight("parts per billion", worst, 0.85);
+    assert_tight("parts per billion", worst, bounds::PARTS_PER_BILLION);
     let offset = |bits: i64| Rapidity::from_parts_per_billion(I32F32::from_bits(bits));
     assert_eq!(offset(-(1_000_000_000 << 32)), Err(RapidityError::OffsetBelowMinusOne));
     assert_eq!(offset(i64::MIN), Err(RapidityError::OffsetBelowMinusOne));
@@ -113,7 +113,7 @@ fn gravity() {
     let worst = worst("potential", ends.into_iter().chain(differences), |bits| {
         error(Rapidity::from_potential(I48F16::from_bits(bits)), &(big(bits, 16) / light().sqr()))
     });
-    assert_tight("potential", worst, 0.51);
+    assert_tight("potential", worst, bounds::POTENTIAL);
 }
 
 #[test]

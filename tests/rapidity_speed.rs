@@ -5,7 +5,7 @@ mod reference;
 
 use fixed::types::{I1F31, I1F63, I16F16, I32F32};
 use reference::{Big, Random, assert_tight, big, count, error_in_units, light, worst};
-use shiftkeel::rapidity::{Rapidity, RapidityError};
+use shiftkeel::rapidity::{Rapidity, RapidityError, bounds};
 
 const LIGHT: i64 = 299_792_458;
 
@@ -54,7 +54,7 @@ fn range_rate_in_metres_per_second() {
     let worst = worst("I16F16", words(1, 20_000, 5_000_000), |bits| {
         error(Rapidity::from_range_rate(I16F16::from_bits(bits)), &receding(big(bits, 16)))
     });
-    assert_tight("range rate, I16F16", worst, 0.52);
+    assert_tight("range rate, I16F16", worst, bounds::RANGE_RATE);
 }
 
 #[test]
@@ -62,7 +62,7 @@ fn range_rate_in_millimetres_per_second() {
     let worst = worst("mm/s", words(2, 20_000, 5_000_000), |bits| {
         error(Rapidity::from_range_rate_mm_per_s(bits), &receding(big(bits, 0) / big(1000, 0)))
     });
-    assert_tight("range rate, mm/s", worst, 0.52);
+    assert_tight("range rate, mm/s", worst, bounds::RANGE_RATE_MM_PER_S);
 }
 
 #[test]
@@ -70,7 +70,7 @@ fn range_rate_in_any_speed_below_light() {
     let worst = worst("I32F32", below(LIGHT << 32, 3, 20_000, 5_000_000), |bits| {
         error_or_refused(Rapidity::from_range_rate_wide(I32F32::from_bits(bits)), &receding(big(bits, 32)))
     });
-    assert_tight("range rate, I32F32", worst, 0.75);
+    assert_tight("range rate, I32F32", worst, bounds::RANGE_RATE_WIDE);
 }
 
 #[test]
@@ -87,7 +87,7 @@ fn range_rate_as_a_float() {
         let exact = receding(Big::try_from(v).expect("finite").with_precision(200).value());
         error_or_refused(Rapidity::from_range_rate_f32(v), &exact)
     });
-    assert_tight("range rate, f32", worst, 0.75);
+    assert_tight("range rate, f32", worst, bounds::RANGE_RATE_F32);
 }
 
 #[test]
@@ -95,7 +95,7 @@ fn velocity_ratio() {
     let worst = worst("I1F63", below(i64::MAX, 5, 20_000, 5_000_000), |bits| {
         error_or_refused(Rapidity::from_beta(I1F63::from_bits(bits)), &big(bits, 63).atanh())
     });
-    assert_tight("beta, I1F63", worst, 0.75);
+    assert_tight("beta, I1F63", worst, bounds::BETA);
 }
 
 #[test]
@@ -113,7 +113,7 @@ fn time_dilation() {
         let exact = (big(1, 0) - beta.sqr()).ln() / big(2, 0);
         error_or_refused(Rapidity::from_transverse_speed(I32F32::from_bits(bits)), &exact)
     });
-    assert_tight("transverse", worst, 0.77);
+    assert_tight("transverse", worst, bounds::TRANSVERSE_SPEED);
 }
 
 #[test]

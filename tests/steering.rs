@@ -362,7 +362,7 @@ fn parts_of_the_proof() {
             let between = Ticks { clocks: 12_000, ..long };
             let (time, rest) = between.fine((tick - 1) * 16 + part);
             let own = channel.step(table.at_fine(time, rest).unwrap().rapidity).unwrap();
-            let step = swept.start().to_bits().wrapping_add_signed(swept.change(480) / 16 * part as i64);
+            let step = swept.start().to_bits().wrapping_add_signed(swept.change(192_000) / 16 * part as i64);
             worst = worst.max(hertz_between(PhaseStep::from_bits(step), own, 48_000).abs());
         }
     }

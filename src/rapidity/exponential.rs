@@ -15,10 +15,11 @@ const STEP_HIGH: i64 = 6_393_154_322_601_327_829;
 const STEP_LOW: i64 = 3_841_055_180;
 
 /// `high` 2^(exponent - 63) + `low` 2^(exponent - 71), where `high` 2^-63 is in [0.997, 1.995).
-struct Power {
-    high: u64,
+#[derive(Clone, Copy)]
+pub(crate) struct Power {
+    pub high: u64,
     low: u64,
-    exponent: i32,
+    pub exponent: i32,
 }
 
 /// exp(x) of x with 60 or 59 fraction bits.
@@ -28,9 +29,24 @@ const fn power<const FRACTION_BITS: u32>(x: i64) -> Power {
     // x >> 32 times 128/ln 2 has FRACTION_BITS - 46 fraction bits in the high word.
     let steps = high_i32((x >> 32) as i32, STEPS);
     let steps = steps.wrapping_add(1 << (FRACTION_BITS - 47)) >> (FRACTION_BITS - 46);
-    let whole = (x << (70 - FRACTION_BITS)).wrapping_sub((steps as i64).wrapping_mul(STEP_HIGH));
+    power_near(steps, x << (70 - FRACTION_BITS), 0)
+}
+
+/// 128 / ln 2 times a number, in whole steps, of a number with 32 fraction bits in a word.
+pub(crate) const fn steps_of_half(x: i32) -> i32 {
+    high_i32(x, STEPS).wrapping_add(1 << 17) >> 18
+}
+
+/// 2^(`more`/128) exp(x) of x modulo 2^-6 with 70 fraction bits, where x is within 0.7 of `steps` ln 2 / 128.
+pub(crate) const fn power_near(steps: i32, x: i64, more: i32) -> Power {
+    let whole = x.wrapping_sub((steps as i64).wrapping_mul(STEP_HIGH));
     // Both terms wrap; their difference, below 2^-8.5, does not.
     let remainder = whole.wrapping_sub((steps as i64).wrapping_mul(STEP_LOW) >> 32);
+    power_of(steps.wrapping_add(more), remainder)
+}
+
+/// 2^(steps/128) exp(r), r with 70 fraction bits, |r| < 2^-8.
+const fn power_of(steps: i32, remainder: i64) -> Power {
     let index = (steps & 0x7f) as usize;
     let table = EXPONENTIALS[index];
     let series = series(remainder);
@@ -103,37 +119,56 @@ pub(crate) const fn offset_magnitude(x: i64) -> Rounded {
     if x.unsigned_abs() < 1 << 53 {
         return small_offset_magnitude(x);
     }
-    let power = power::<60>(x);
+    let normal = offset_of_power(power::<60>(x), x < 0);
+    rounded(normal.value, normal.exponent)
+}
+
+/// `value` 2^(exponent - 63) with the top bit set.
+#[derive(Clone, Copy)]
+pub(crate) struct Normal {
+    pub value: u64,
+    pub exponent: i32,
+}
+
+/// |P - 1| of a power, at least 2^-7.1; `negative` where P is below one.
+pub(crate) const fn offset_of_power(power: Power, negative: bool) -> Normal {
     if power.exponent <= -2 {
-        // 1 - exp(x) in (1/2, 1), with 64 fraction bits; the one is 2^64 and falls off.
+        // 1 - P in (1/2, 1), with 64 fraction bits; the one is 2^64 and falls off.
         let shift = power.exponent.unsigned_abs().wrapping_sub(1);
-        return rounded((power.high >> shift).wrapping_neg(), -1);
+        return Normal { value: power.high.unbounded_shr(shift).wrapping_neg(), exponent: -1 };
     }
-    // exp(x) - 1 in units of 2^(exponent - 63): in the word for exponents -1 (where the one is 2^64 and falls
-    // off) to 11.
+    // P - 1 in units of 2^(exponent - 63): in the word for exponents from -1 (where the one is 2^64 and falls
+    // off) up; beyond 63 the one is too small to matter.
     let one = 1_u64.unbounded_shl(63_u32.wrapping_sub(power.exponent as u32));
     let difference = power.high.wrapping_sub(one);
-    let (high, low) = if x < 0 {
+    let (high, low) = if negative {
         ((!difference).wrapping_add((power.low == 0) as u64), 256_u64.wrapping_sub(power.low) & 0xff)
     } else {
         (difference, power.low)
     };
     let shift = high.leading_zeros();
-    rounded(high << shift | ((low << shift) >> 8), power.exponent.wrapping_sub(shift as i32))
+    Normal {
+        value: high << shift | ((low << shift) >> 8),
+        exponent: power.exponent.wrapping_sub(shift as i32),
+    }
 }
 
-/// |exp(x) - 1| for |x| < 2^-7: x (1 + p)(1 + q1/2)(1 + q2/2), where q1 = exp(x/4) - 1 = x/4 (1 + p) and
-/// q2 = exp(x/2) - 1 = 2 q1 + q1^2.
+/// |exp(x) - 1| for |x| < 2^-7.
 const fn small_offset_magnitude(x: i64) -> Rounded {
-    let quarter = x << 8; // 70 fraction bits, below 2^-9
+    let shift = x.unsigned_abs().leading_zeros().wrapping_sub(1);
+    let value = small_offset(x << 8, (x.unsigned_abs() << shift) as i64);
+    rounded(value, 3_i32.wrapping_sub(shift as i32))
+}
+
+/// `magnitude` (exp(x) - 1)/x for |x| < 2^-7, where `magnitude` is in [2^62, 2^63) and `quarter` is x/4 with 70
+/// fraction bits: (1 + p)(1 + q1/2)(1 + q2/2), where q1 = exp(x/4) - 1 = x/4 (1 + p) and
+/// q2 = exp(x/2) - 1 = 2 q1 + q1^2.
+pub(crate) const fn small_offset(quarter: i64, magnitude: i64) -> u64 {
     let p = series(quarter);
     let first = quarter.wrapping_add(about_high_i64(quarter, p) >> 6);
     let second = (first << 1).wrapping_add(about_high_i64(first, first) >> 6);
     let bend = one_plus_product(one_plus_product(p, first >> 1), second >> 1);
-    let shift = x.unsigned_abs().leading_zeros().wrapping_sub(1);
-    let magnitude = (x.unsigned_abs() << shift) as i64; // in [2^62, 2^63)
-    let value = magnitude.wrapping_add(about_high_i64(magnitude, bend).wrapping_add(1 << 5) >> 6);
-    rounded(value as u64, 3_i32.wrapping_sub(shift as i32))
+    magnitude.wrapping_add(about_high_i64(magnitude, bend).wrapping_add(1 << 5) >> 6) as u64
 }
 
 /// (1 + a)(1 + b) - 1, all with 70 fraction bits and below 2^-7.
@@ -149,24 +184,31 @@ const fn one_plus_product(a: i64, b: i64) -> i64 {
 /// Error: at most 0.6 units of 2^-63: rounding of the last sum 0.5, y and X below 2^-66.
 pub(crate) const fn tanh_magnitude(x: i64) -> u64 {
     let magnitude = x.saturating_abs();
-    let power = power::<59>(magnitude.wrapping_neg());
+    let tanh = tanh_of_power(power::<59>(magnitude.wrapping_neg()));
+    if x == 0 { 0 } else { tanh }
+}
+
+/// (1 - X)/(1 + X) with 63 fraction bits of a power below one.
+pub(crate) const fn tanh_of_power(power: Power) -> u64 {
     // X = high 2^(exponent - 63); its part below 2^-63, 7 bits of it.
     let shift = power.exponent.unsigned_abs();
     let below = power.high & (1_u64 << shift).wrapping_sub(1);
     let fraction = (below << 8 | power.low) >> shift.wrapping_add(1);
-    // 1 + X, which only x = 0 takes to 2, where the word ends.
-    let sum = (1_u64 << 63).saturating_add(power.high >> shift);
-    let reciprocal = RECIPROCALS[((sum >> 56) & 0x7f) as usize] as u64;
-    let z = ((sum >> 32).wrapping_mul(reciprocal) << 23)
-        .wrapping_add((sum as u32 as u64).wrapping_mul(reciprocal) >> 9)
-        .wrapping_add(fraction.wrapping_mul(reciprocal) >> 16) as i64;
+    // 1 + X, which only X = 1 takes to 2, where the word ends.
+    reciprocal((1_u64 << 63).saturating_add(power.high >> shift), fraction).wrapping_sub(1 << 63)
+}
+
+/// 1/d with 64 fraction bits of d in [1, 2) with 63 fraction bits and 7 more.
+pub(crate) const fn reciprocal(d: u64, fraction: u64) -> u64 {
+    let r = RECIPROCALS[((d >> 56) & 0x7f) as usize] as u64;
+    let z = ((d >> 32).wrapping_mul(r) << 23)
+        .wrapping_add((d as u32 as u64).wrapping_mul(r) >> 9)
+        .wrapping_add(fraction.wrapping_mul(r) >> 16) as i64;
     let y = reciprocal_offset(z);
     // r (1 + y) with 64 fraction bits; r has 16, y has 70.
-    let high = (y >> 32).wrapping_mul(reciprocal as i64) << 10;
-    let low = (y as u32 as i64).wrapping_mul(reciprocal as i64).wrapping_add(1 << 21) >> 22;
-    let bend = high.wrapping_add(low);
-    let tanh = (reciprocal << 48).wrapping_add(bend as u64).wrapping_sub(1 << 63);
-    if x == 0 { 0 } else { tanh }
+    let high = (y >> 32).wrapping_mul(r as i64) << 10;
+    let low = (y as u32 as i64).wrapping_mul(r as i64).wrapping_add(1 << 21) >> 22;
+    (r << 48).wrapping_add(high.wrapping_add(low) as u64)
 }
 
 /// 1/(1 + z) - 1 with 70 fraction bits, |z| < 2^-8; error below 2^-67.

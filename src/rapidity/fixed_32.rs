@@ -14,7 +14,7 @@
 //! No division, no loop. The worst error over all 2^32 inputs of each is in [`super::bounds`].
 
 use super::coefficients::{EXPONENTIALS, LOGARITHMS, RECIPROCALS};
-use super::wide_product::{high_i32, high_u32, product_u32_i32};
+use super::wide_product::{high_i32, high_square_i32, middle_u32_u16, product_i32};
 use fixed::types::{I1F31, I4F28};
 
 /// Received over transmitted frequency: `mantissa` 2^(`exponent` - 31), mantissa in [2^31, 2^32).
@@ -70,33 +70,13 @@ const fn signed(x: i32, sign: i32) -> i32 {
     (x ^ sign).wrapping_sub(sign)
 }
 
-/// x^2 2^-32 of the bits, at most 2 too small; |x| < 2^31.
-#[inline(always)]
-const fn square_high(x: i32) -> i32 {
-    let (high, low) = (x >> 16, x & 0xffff);
-    high.wrapping_mul(high).wrapping_add(high.wrapping_mul(low) >> 15)
-}
-
-/// x 2^-15 of the bits, to the nearest; |x| < 2^31 - 2^14.
-#[inline(always)]
-const fn half_word(x: i32) -> i32 {
-    x.wrapping_add(1 << 14) >> 15
-}
-
 /// Row of the table of reciprocals and m r - 1 with 39 fraction bits, |z| < 2^-8, of m in [1, 2) with 31
-/// fraction bits and 16 more.
+/// fraction bits.
 #[inline(always)]
-const fn reduced(mantissa: u32, more: u32) -> (usize, i32) {
+const fn reduced(mantissa: u32) -> (usize, i32) {
     let index = ((mantissa >> 24) & 0x7f) as usize;
-    let reciprocal = RECIPROCALS[index] as u32;
-    // m r has 63 fraction bits; its one lies at 2^39 and falls off the word.
-    let high = (mantissa >> 16).wrapping_mul(reciprocal) << 8;
-    let low = if more == 0 {
-        (mantissa & 0xffff).wrapping_mul(reciprocal) >> 8
-    } else {
-        high_u32(mantissa << 16 | more, reciprocal << 8)
-    };
-    (index, high.wrapping_add(low) as i32)
+    // m r has 47 fraction bits; its one lies at 2^39 and falls off the word.
+    (index, middle_u32_u16(mantissa, RECIPROCALS[index]) as i32)
 }
 
 /// ln(1 + z) / 2 with 39 fraction bits of z with 39, |z| < 2^-8; within one unit.
@@ -104,10 +84,10 @@ const fn reduced(mantissa: u32, more: u32) -> (usize, i32) {
 /// z - z^2/2 (1 - 2z/3 + z^2/2); the first left out, z^5/5, is a tenth of a unit.
 #[inline(always)]
 const fn half_logarithm_of_one_plus(z: i32) -> i32 {
-    let square = square_high(z); // 46 fraction bits
-    let slope = (half_word(z).wrapping_mul(21_845) >> 15).wrapping_sub(square >> 23); // 24 fraction bits
-    let bend = half_word(square).wrapping_mul(slope) >> 9;
-    z.wrapping_sub(square.wrapping_sub(bend).wrapping_add(1 << 7) >> 8) >> 1
+    let square = high_square_i32(z); // 46 fraction bits
+    let slope = high_i32(z, 22_369_621).wrapping_sub(square >> 15); // z 2^25 2/3; 32 fraction bits
+    let bent = square.wrapping_sub(high_i32(square, slope));
+    z.wrapping_sub(bent.wrapping_add(1 << 7) >> 8) >> 1
 }
 
 /// ln((1 + b)/(1 - b)) / 2 for 0 <= b < 1 with 31 fraction bits, in three parts:
@@ -123,8 +103,8 @@ const fn half_logarithm_of_ratio(beta: u32) -> HalfLogarithm {
     const ONE: u32 = 1 << 31;
     let denominator = ONE.wrapping_sub(beta);
     let exponent = denominator.leading_zeros();
-    let (above, z_above) = reduced(ONE.wrapping_add(beta), 0);
-    let (below, z_below) = reduced(denominator << exponent, 0);
+    let (above, z_above) = reduced(ONE.wrapping_add(beta));
+    let (below, z_below) = reduced(denominator << exponent);
     // 63 fraction bits of the logarithm are 64 of its half.
     let table = LOGARITHMS[above].wrapping_sub(LOGARITHMS[below]) as i64;
     HalfLogarithm {
@@ -188,17 +168,16 @@ struct Power32 {
 /// 2^(steps/128) exp(r), r with 39 fraction bits, |r| < 2^-8.3; within 1.2 units of 2^-39.
 #[inline(always)]
 const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
-    let square = square_high(remainder); // 46 fraction bits
-    // r/3 + r^2/12 with 24 fraction bits, the twelfth as 1/16 + 1/64.
-    let slope = (half_word(remainder).wrapping_mul(21_845) >> 16)
-        .wrapping_add(square >> 26)
-        .wrapping_add(square >> 28);
-    let bend = (square >> 13).wrapping_mul(slope) >> 11;
-    let offset = remainder.wrapping_add(square.wrapping_add(bend).wrapping_add(1 << 7) >> 8);
+    // -(1/3 + r/12) with 25 fraction bits, the twelfth as 1/16 + 1/64; negative, so that all products are of two
+    // signed words. Then r (1 + r/3 + r^2/12) with 39 fraction bits.
+    let third = (-11_184_811_i32).wrapping_sub(remainder >> 18).wrapping_sub(remainder >> 20);
+    let bent = remainder.wrapping_sub(high_i32(remainder, high_i32(remainder, third)));
+    // exp(r) - 1 = r + r/2 (...).
+    let offset = remainder.wrapping_add(high_i32(remainder, bent) >> 8);
     let table = EXPONENTIALS[(steps & 0x7f) as usize];
-    // table (exp(r) - 1) with 31 + 39 fraction bits.
-    let product = product_u32_i32((table >> 32) as u32, offset);
-    Power32 { mantissa: table.wrapping_add((product >> 7) as u64), exponent: steps >> 7 }
+    // table (exp(r) - 1) with 30 + 39 fraction bits.
+    let product = product_i32((table >> 33) as i32, offset);
+    Power32 { mantissa: table.wrapping_add((product >> 6) as u64), exponent: steps >> 7 }
 }
 
 /// exp(x) of x with 28 or 27 fraction bits.
@@ -215,16 +194,15 @@ const fn power<const FRACTION_BITS: u32>(x: i32) -> Power32 {
     power_from_steps(steps, remainder)
 }
 
-/// A power rounded to 32 bits.
+/// A power rounded to 32 bits; just below a power of two the mantissa may round to 2^32, that is to 0.
 #[inline(always)]
 const fn rounded(power: Power32) -> ShiftFactor32 {
-    let shift = (power.mantissa >> 63) as u32 ^ 1;
-    let mantissa = ((power.mantissa << shift).wrapping_add(1 << 31) >> 32) as u32;
-    // Just below a power of two rounding may reach it, where the word ends.
-    let carry = (mantissa == 0) as u32;
+    // -1 where the mantissa is below one and must be doubled.
+    let short = !(power.mantissa as i64 >> 63);
+    let mantissa = power.mantissa.wrapping_add(power.mantissa & short as u64);
     ShiftFactor32 {
-        mantissa: mantissa | carry << 31,
-        exponent: power.exponent.wrapping_sub(shift as i32).wrapping_add(carry as i32),
+        mantissa: ((mantissa >> 32) as u32).wrapping_add(mantissa as u32 >> 31),
+        exponent: power.exponent.wrapping_add(short as i32),
     }
 }
 
@@ -249,6 +227,7 @@ const fn rounded(power: Power32) -> ShiftFactor32 {
 /// assert_eq!((factor.mantissa(), factor.exponent()), (2_918_732_889, 1)); // e = 1.3591 * 2
 /// ```
 pub const fn factor_of_rapidity(rapidity: I4F28) -> ShiftFactor32 {
+    // No rapidity comes so close to a multiple of ln 2 from below that the mantissa would round to 2^32.
     rounded(power::<28>(rapidity.to_bits()))
 }
 
@@ -289,7 +268,13 @@ pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
         .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
         .wrapping_sub(steps.wrapping_mul(STEP_LOW).wrapping_add(1 << 15) >> 16);
     // Half of ln 2 is 64 steps.
-    rounded(power_from_steps(steps.wrapping_add(signed(half.exponent << 6, sign)), remainder))
+    let factor = rounded(power_from_steps(steps.wrapping_add(signed(half.exponent << 6, sign)), remainder));
+    // The largest beta rounds to 2^16.
+    let carry = factor.mantissa == 0;
+    ShiftFactor32 {
+        mantissa: factor.mantissa | (carry as u32) << 31,
+        exponent: factor.exponent.wrapping_add(carry as i32),
+    }
 }
 
 /// Velocity ratio of a rapidity: tanh(r).
@@ -309,7 +294,7 @@ pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
 /// ```
 /// use fixed::types::{I1F31, I4F28};
 /// use shiftkeel::rapidity::fixed_32::beta_of_rapidity;
-/// assert_eq!(beta_of_rapidity(I4F28::from_num(-0.5)).to_bits(), -992_388_131);
+/// assert_eq!(beta_of_rapidity(I4F28::from_num(-0.5)).to_bits(), -992_389_039);
 /// ```
 pub const fn beta_of_rapidity(rapidity: I4F28) -> I1F31 {
     let bits = rapidity.to_bits();
@@ -318,17 +303,18 @@ pub const fn beta_of_rapidity(rapidity: I4F28) -> I1F31 {
     // X with 63 fraction bits, 39 of them good.
     let x = power.mantissa >> power.exponent.unsigned_abs();
     let sum = (1_u64 << 63).saturating_add(x);
-    let (index, z) = reduced((sum >> 32) as u32, sum as u32 >> 16);
-    let reciprocal = RECIPROCALS[index] as i32;
+    let (index, z) = reduced((sum >> 32) as u32);
+    let reciprocal = RECIPROCALS[index] as u32;
+    let z = z.wrapping_add(((sum as u32 >> 16).wrapping_mul(reciprocal) >> 24) as i32);
     // y = 1/(1 + z) - 1 = -z + z^2 (1 - z + z^2).
-    let square = square_high(z); // 46 fraction bits
-    let slope = half_word(z).wrapping_sub(square >> 22); // 24 fraction bits
-    // Both factors are just below 2^15 and 2^16 in size, where the first row of the table ends.
-    let bend = half_word(square).wrapping_mul(slope) >> 9;
-    let y = (square.wrapping_sub(bend).wrapping_add(1 << 5) >> 7).wrapping_sub(z);
+    let square = high_square_i32(z); // 46 fraction bits
+    let slope = (z >> 7).wrapping_sub(square >> 14); // 32 fraction bits
+    let bent = square.wrapping_sub(high_i32(square, slope));
+    let y = (bent.wrapping_add(1 << 5) >> 7).wrapping_sub(z);
     // r y with 38 fraction bits; what is cut off does not matter to the rounding.
-    let product = high_i32(y, reciprocal << 15);
-    let size = (reciprocal << 16).wrapping_add(product.wrapping_add(1 << 5) >> 6).wrapping_add(i32::MIN);
+    let product = high_i32(y, (reciprocal << 15) as i32);
+    let size =
+        ((reciprocal << 16) as i32).wrapping_add(product.wrapping_add(1 << 5) >> 6).wrapping_add(i32::MIN);
     let size = if bits == 0 { 0 } else { size };
     I1F31::from_bits(signed(size, sign))
 }
@@ -362,7 +348,7 @@ const fn rounded_offset(value: u32, exponent: i32, sign: i32) -> ShiftOffset32 {
 /// use fixed::types::I4F28;
 /// use shiftkeel::rapidity::fixed_32::offset_of_rapidity;
 /// let offset = offset_of_rapidity(I4F28::from_bits(-1)); // the smallest
-/// assert_eq!((offset.mantissa(), offset.exponent()), (-(1 << 28), -28));
+/// assert_eq!((offset.mantissa(), offset.exponent()), (1 - (1 << 29), -29));
 /// ```
 pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     /// 0.0586, so that r/2 + r^2/6 fits a word with 36 fraction bits.
@@ -389,12 +375,11 @@ const fn small_offset(bits: i32) -> ShiftOffset32 {
         return ShiftOffset32 { mantissa: 0, exponent: 0 };
     }
     let r = bits << 7; // 35 fraction bits
-    let high = r >> 16;
-    let square = square_high(r); // 38 fraction bits
-    // 1/24 + r/120 + r^2/720 with 30 fraction bits, 1/6 + r (...) with 33.
-    let slope = 17_476_i32.wrapping_add(high.wrapping_mul(2_913) >> 19);
-    let tail = 44_739_243_i32.wrapping_add(high.wrapping_mul(slope) >> 10);
-    let sixth = 1_431_655_765_i32.wrapping_add(high_i32(r, tail));
+    let square = high_square_i32(r); // 38 fraction bits
+    // 1/6 + r (1/24 + r (1/120 + r/720)) with 33 fraction bits; each step adds 3.
+    let tail = 1_118_481_i32.wrapping_add(high_i32(r, 23_302)); // 2^27/120 + r 2^24/720
+    let tail = 44_739_243_i32.wrapping_add(high_i32(r, tail)); // 2^30/24 + ...
+    let sixth = 1_431_655_765_i32.wrapping_add(high_i32(r, tail)); // 2^33/6 + ...
     // r/2 + r^2 (...) with 36 fraction bits.
     let bend = r.wrapping_add(high_i32(square, sixth).wrapping_add(1 << 2) >> 3);
     let size = bits.unsigned_abs();

@@ -14,7 +14,7 @@ impl Rapidity {
     /// of received over transmitted. Positive where the numerator is larger.
     ///
     /// # Accuracy
-    /// 0.85 units of 2^-60 for all pairs of integers (`tests/rapidity_ratio.rs`).
+    /// [`super::bounds::RATIO`] units of 2^-60 for all pairs of integers (`tests/rapidity_ratio.rs`).
     ///
     /// # Errors
     /// `Zero`; `OutOfRange` where the ratio is not in (1/2980, 2980).
@@ -66,7 +66,7 @@ impl Rapidity {
     /// offset and a positive rapidity.
     ///
     /// # Accuracy
-    /// 0.85 units of 2^-60 for all inputs (`tests/rapidity_ratio.rs`).
+    /// [`super::bounds::PARTS_PER_BILLION`] units of 2^-60 for all inputs (`tests/rapidity_ratio.rs`).
     ///
     /// # Errors
     /// `OffsetBelowMinusOne` at -1e9 and below; `OutOfRange` where the rapidity reaches -8.
@@ -98,7 +98,7 @@ impl Rapidity {
     /// arrives blue. The potential itself is negative: -mu/r.
     ///
     /// # Accuracy
-    /// 0.51 units of 2^-60 of the formula (`tests/rapidity_ratio.rs`). The formula is that of weak fields:
+    /// [`super::bounds::POTENTIAL`] units of 2^-60 of the formula (`tests/rapidity_ratio.rs`). The formula is that of weak fields:
     /// its next term, the square, is 5e-19 at the Earth's surface.
     ///
     /// # Cost

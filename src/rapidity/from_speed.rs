@@ -28,7 +28,7 @@ impl Rapidity {
     /// then negative.
     ///
     /// # Accuracy
-    /// 0.52 units of 2^-60 over all inputs (`tests/rapidity_speed.rs`).
+    /// [`super::bounds::RANGE_RATE`] units of 2^-60 over all inputs (`tests/rapidity_speed.rs`).
     ///
     /// # Cost
     /// 5 products of 32 by 32 bits, no division.
@@ -56,7 +56,7 @@ impl Rapidity {
     /// negative.
     ///
     /// # Accuracy
-    /// 0.52 units of 2^-60 over all inputs (`tests/rapidity_speed.rs`).
+    /// [`super::bounds::RANGE_RATE_MM_PER_S`] units of 2^-60 over all inputs (`tests/rapidity_speed.rs`).
     ///
     /// # Cost
     /// 4 products of 64 by 64 bits and 2 of 32 by 32, no division.
@@ -84,7 +84,7 @@ impl Rapidity {
     /// rapidity is then negative.
     ///
     /// # Accuracy
-    /// 0.75 units of 2^-60 (`tests/rapidity_speed.rs`).
+    /// [`super::bounds::RANGE_RATE_WIDE`] units of 2^-60 (`tests/rapidity_speed.rs`).
     ///
     /// # Errors
     /// `NotBelowLight`; `OutOfRange` within 68 m/s of the speed of light, where the rapidity reaches 8.
@@ -116,7 +116,7 @@ impl Rapidity {
     /// single precision.
     ///
     /// # Accuracy
-    /// 0.75 units of 2^-60 (`tests/rapidity_speed.rs`); a float itself has 24 bits, 0.2 mm/s at 7 km/s.
+    /// [`super::bounds::RANGE_RATE_F32`] units of 2^-60 (`tests/rapidity_speed.rs`); a float itself has 24 bits, 0.2 mm/s at 7 km/s.
     ///
     /// # Errors
     /// `NotANumber`, `Infinite`, `NotBelowLight`; `OutOfRange` within 68 m/s of the speed of light.
@@ -162,7 +162,7 @@ impl Rapidity {
     /// rapidity, and the opposite of a range rate.
     ///
     /// # Accuracy
-    /// 0.75 units of 2^-60 (`tests/rapidity_speed.rs`).
+    /// [`super::bounds::BETA`] units of 2^-60 (`tests/rapidity_speed.rs`).
     ///
     /// # Errors
     /// `NotBelowLight` at -1; `OutOfRange` where the rapidity reaches 8 (beta above 1 - 2.3e-7).
@@ -212,7 +212,7 @@ impl Rapidity {
     /// speed.
     ///
     /// # Accuracy
-    /// 0.77 units of 2^-60 (`tests/rapidity_speed.rs`).
+    /// [`super::bounds::TRANSVERSE_SPEED`] units of 2^-60 (`tests/rapidity_speed.rs`).
     ///
     /// # Errors
     /// `NotBelowLight`; `OutOfRange` where the dilation reaches a factor of 2980.

@@ -30,6 +30,7 @@ mod coefficients;
 mod error;
 mod exponential;
 pub mod fixed_32;
+pub mod float_32;
 mod from_ratio;
 mod from_speed;
 mod logarithm;

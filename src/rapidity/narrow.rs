@@ -9,7 +9,7 @@
 //! - no branch but the end of the format (one instruction where the core saturates by itself), no loop, no table, no division; only 32-bit products;
 //! - results that would leave the format stay at its end (`i32::MIN`, `i32::MAX`), which can happen
 //!   only within 2^17 steps of that end;
-//! - the worst error over all 2^32 inputs is known: see [`MAX_ERROR`].
+//! - the worst error over all 2^32 inputs of each is in [`super::bounds`]: half a unit and 0.002.
 //!
 //! | function | of | gives |
 //! |---|---|---|
@@ -22,19 +22,13 @@
 //! | [`first_order_range_rate`] | v | v', where exp(-atanh(v/c)) - 1 = -v'/c |
 
 use super::Rapidity;
+pub use super::bounds::{
+    FIRST_ORDER_RANGE_RATE as MAX_FIRST_ORDER_ERROR,
+    FIRST_ORDER_RANGE_RATE_BELOW_8_KM_S as MAX_FIRST_ORDER_ERROR_BELOW_8_KM_S,
+};
 
 /// Fraction bits of every raw value in this module but the speeds.
 pub const FRACTION_BITS: u32 = 44;
-
-/// Largest error of the six kernels in units in the last place, over all 2^32 inputs; an exact result
-/// beyond the format counts as the end of the format.
-pub const MAX_ERROR: f64 = 0.502;
-
-/// Largest error of [`first_order_range_rate`] in units of 2^-16 m/s, over all 2^32 inputs.
-pub const MAX_FIRST_ORDER_ERROR: f64 = 1.2;
-
-/// Largest error of [`first_order_range_rate`] in units of 2^-16 m/s below 8 km/s.
-pub const MAX_FIRST_ORDER_ERROR_BELOW_8_KM_S: f64 = 0.65;
 
 /// x^2 with 13 more fraction bits than x/2 x would have: x^2 2^-32 of the bits, 0 to 2^30, at most
 /// 2 too small. The square of the low half is below one unit and left out.
@@ -60,7 +54,8 @@ const fn third_of_cube(x: i32) -> i32 {
 /// `beta` is v/c with 44 fraction bits, positive = approaching; so is the result. |beta| < 2^-13.
 ///
 /// # Accuracy
-/// [`MAX_ERROR`] units in the last place over all inputs (`tests/rapidity_narrow.rs`).
+/// [`super::bounds::NARROW_RAPIDITY_OF_BETA`] units in the last place over all inputs
+/// (`tests/rapidity_narrow.rs`).
 ///
 /// # Cost
 /// 3 products of 32 bits, no branch.
@@ -83,7 +78,8 @@ pub const fn rapidity_of_beta(beta: i32) -> i32 {
 /// `rapidity` and the result have 44 fraction bits, positive = approaching.
 ///
 /// # Accuracy
-/// [`MAX_ERROR`] units in the last place over all inputs (`tests/rapidity_narrow.rs`).
+/// [`super::bounds::NARROW_BETA_OF_RAPIDITY`] units in the last place over all inputs
+/// (`tests/rapidity_narrow.rs`).
 ///
 /// # Cost
 /// 3 products of 32 bits, no branch.
@@ -119,7 +115,8 @@ const TWO_THIRDS: i32 = 43_691;
 /// stays at its end.
 ///
 /// # Accuracy
-/// [`MAX_ERROR`] units in the last place over all inputs (`tests/rapidity_narrow.rs`).
+/// [`super::bounds::NARROW_OFFSET_OF_RAPIDITY`] units in the last place over all inputs
+/// (`tests/rapidity_narrow.rs`).
 ///
 /// # Cost
 /// 4 products of 32 bits, no branch.
@@ -141,7 +138,8 @@ pub const fn offset_of_rapidity(rapidity: i32) -> i32 {
 /// `offset` is (received / transmitted frequency) - 1 with 44 fraction bits; so is the result.
 ///
 /// # Accuracy
-/// [`MAX_ERROR`] units in the last place over all inputs (`tests/rapidity_narrow.rs`).
+/// [`super::bounds::NARROW_RAPIDITY_OF_OFFSET`] units in the last place over all inputs
+/// (`tests/rapidity_narrow.rs`).
 ///
 /// # Cost
 /// 4 products of 32 bits, no branch.
@@ -163,7 +161,8 @@ pub const fn rapidity_of_offset(offset: i32) -> i32 {
 /// result is a rapidity, so it has the other sign.
 ///
 /// # Accuracy
-/// [`MAX_ERROR`] units in the last place over all inputs (`tests/rapidity_narrow.rs`).
+/// [`super::bounds::NARROW_RAPIDITY_OF_SLOPE`] units in the last place over all inputs
+/// (`tests/rapidity_narrow.rs`).
 ///
 /// # Cost
 /// 4 products of 32 bits, no branch.
@@ -184,7 +183,8 @@ pub const fn rapidity_of_slope(slope: i32) -> i32 {
 /// `rapidity` and the result have 44 fraction bits; a receding (negative) rapidity has a positive slope.
 ///
 /// # Accuracy
-/// [`MAX_ERROR`] units in the last place over all inputs (`tests/rapidity_narrow.rs`).
+/// [`super::bounds::NARROW_SLOPE_OF_RAPIDITY`] units in the last place over all inputs
+/// (`tests/rapidity_narrow.rs`).
 ///
 /// # Cost
 /// 4 products of 32 bits, no branch.
@@ -208,8 +208,8 @@ pub const fn slope_of_rapidity(rapidity: i32) -> i32 {
 /// -32768 m/s the result stays at the end of the format.
 ///
 /// # Accuracy
-/// [`MAX_FIRST_ORDER_ERROR`] units of 2^-16 m/s (1.5e-5 m/s, 22 uHz at 437 MHz) over all inputs,
-/// [`MAX_FIRST_ORDER_ERROR_BELOW_8_KM_S`] below 8 km/s (`tests/rapidity_narrow.rs`). The formula without
+/// [`super::bounds::FIRST_ORDER_RANGE_RATE`] units of 2^-16 m/s (1.5e-5 m/s, 22 uHz at 437 MHz) over all inputs,
+/// [`super::bounds::FIRST_ORDER_RANGE_RATE_BELOW_8_KM_S`] below 8 km/s (`tests/rapidity_narrow.rs`). The formula without
 /// the correction is off by 0.119 Hz at 437 MHz and 7 km/s.
 ///
 /// # Cost

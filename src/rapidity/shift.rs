@@ -97,7 +97,7 @@ impl Rapidity {
     /// The factor exp(r): received over transmitted frequency.
     ///
     /// # Accuracy
-    /// 0.52 units of the mantissa (`tests/rapidity_back.rs`).
+    /// [`super::bounds::TO_FACTOR`] units of the mantissa (`tests/rapidity_back.rs`).
     ///
     /// # Cost
     /// 4 products of 64 by 64 bits, 1 of 64 by 32, 3 of 32 by 32; no division.
@@ -120,7 +120,7 @@ impl Rapidity {
     /// first would bring.
     ///
     /// # Accuracy
-    /// 0.85 units of the mantissa (`tests/rapidity_back.rs`).
+    /// [`super::bounds::TO_OFFSET`] units of the mantissa (`tests/rapidity_back.rs`).
     ///
     /// # Cost
     /// About that of [`Rapidity::to_factor`].
@@ -150,7 +150,7 @@ impl Rapidity {
     /// The velocity ratio tanh(r) with 63 fraction bits, positive = approaching.
     ///
     /// # Accuracy
-    /// 0.55 units of 2^-63 (`tests/rapidity_back.rs`).
+    /// [`super::bounds::TO_BETA`] units of 2^-63 (`tests/rapidity_back.rs`).
     ///
     /// # Cost
     /// 7 products of 64 by 64 bits, 2 of 64 by 32, 6 of 32 by 32; no division.
@@ -173,7 +173,7 @@ impl Rapidity {
     /// The velocity ratio tanh(r) with 31 fraction bits, positive = approaching; a step is 0.14 m/s.
     ///
     /// # Accuracy
-    /// 0.51 units of 2^-31 (`tests/rapidity_back.rs`).
+    /// [`super::bounds::TO_BETA_SHORT`] units of 2^-31 (`tests/rapidity_back.rs`).
     ///
     /// # Cost
     /// That of [`Rapidity::to_beta`].
@@ -195,7 +195,7 @@ impl Rapidity {
 /// Velocity ratio of two motions along one line, (a + b)/(1 + a b), with 31 fraction bits, signed.
 ///
 /// # Accuracy
-/// 0.51 units of 2^-31 for all pairs (`tests/rapidity_back.rs`).
+/// [`super::bounds::COMPOSE_BETA`] units of 2^-31 for all pairs (`tests/rapidity_back.rs`).
 ///
 /// # Errors
 /// `NotBelowLight` where an argument is -1, or where the result rounds to +-1.

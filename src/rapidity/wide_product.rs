@@ -30,6 +30,22 @@ pub(crate) const fn high_u32_i32(a: u32, b: i32) -> i32 {
     }
 }
 
+/// floor(a^2 / 2^32) of a signed word.
+#[inline(always)]
+pub(crate) const fn high_square_i32(a: i32) -> i32 {
+    if SHORT_PRODUCTS { halves::high_square_i32(a) } else { high_i32(a, a) }
+}
+
+/// Bits 8 to 39 of the product of a word and a half word.
+#[inline(always)]
+pub(crate) const fn middle_u32_u16(a: u32, b: u16) -> u32 {
+    if SHORT_PRODUCTS {
+        halves::middle_u32_u16(a, b)
+    } else {
+        ((a as u64).wrapping_mul(b as u64) >> 8) as u32
+    }
+}
+
 /// a b of two unsigned words.
 #[inline(always)]
 pub(crate) const fn product_u32(a: u32, b: u32) -> u64 {
@@ -131,6 +147,22 @@ mod halves {
         let middle = a_low.wrapping_mul(b_high).wrapping_add(cross & 0xffff);
         a_high.wrapping_mul(b_high).wrapping_add(cross >> 16).wrapping_add(middle >> 16)
     }
+
+    /// floor(a^2 / 2^32) of a signed word.
+    #[inline(always)]
+    pub(super) const fn high_square_i32(a: i32) -> i32 {
+        let (high, low) = (a >> 16, a & 0xffff);
+        // The sum is at most 32767 2^16 and at least -2^31.
+        let cross = high.wrapping_mul(low).wrapping_add((low.wrapping_mul(low) as u32 >> 17) as i32);
+        high.wrapping_mul(high).wrapping_add(cross >> 15)
+    }
+
+    /// Bits 8 to 39 of the product of a word and a half word.
+    #[inline(always)]
+    pub(super) const fn middle_u32_u16(a: u32, b: u16) -> u32 {
+        let high = (a >> 16).wrapping_mul(b as u32) << 8;
+        high.wrapping_add((a & 0xffff).wrapping_mul(b as u32) >> 8)
+    }
 }
 
 #[cfg(test)]
@@ -156,6 +188,8 @@ mod tests {
             assert_eq!(halves::high_i32(a as i32, b as i32), signed);
             let mixed = halves::high_i32(a as i32, b as i32).wrapping_add(b as i32 & (a as i32 >> 31));
             assert_eq!(mixed, high_u32_i32(a, b as i32));
+            assert_eq!(halves::high_square_i32(a as i32), high_i32(a as i32, a as i32));
+            assert_eq!(halves::middle_u32_u16(a, b as u16), (u64::from(a) * u64::from(b as u16) >> 8) as u32);
         }
     }
 
@@ -169,7 +203,6 @@ mod tests {
             let word = i128::from(a as i32);
             assert_eq!(high_i64_i32(x as i64, a as i32), (i128::from(x as i64) * word >> 32) as i64);
             assert_eq!(product_u32(a, b), u64::from(a) * u64::from(b));
-            assert_eq!(product_u32_i32(a, b as i32), i64::from(a) * i64::from(b as i32));
             assert_eq!(product_i32(a as i32, b as i32), i64::from(a as i32) * i64::from(b as i32));
         }
     }
