@@ -188,6 +188,7 @@ fn plain() -> BakeSettings {
         end: GpsTime::default().plus_seconds(600.0),
         slope_tolerance: 10.0 * MILLIHERTZ,
         delay_tolerance: 0.015 / CARRIER,
+        roughness: 0.0,
         direction: Direction::Down,
         tagged_at: TaggedAt::Ground,
         object: 0,

@@ -343,6 +343,7 @@ fn plain(start: f64, end: f64) -> BakeSettings {
         end: GpsTime::default().plus_seconds(end),
         slope_tolerance: 2.0 * MILLIHERTZ,
         delay_tolerance: 0.015 / CARRIER,
+        roughness: 0.0,
         direction: Direction::Down,
         tagged_at: TaggedAt::Ground,
         object: 7,

@@ -9,7 +9,9 @@
 //! * (b) the residual, a polynomial of degree N, from M Chebyshev points with the factor 1/cos(pi N / 2M)
 //!   (H. Ehlich and K. Zeller, Mathematische Zeitschrift 86, 1964, from memory);
 //! * (c) the tail beyond degree N as a geometric series with the ratio that the header states; a segment whose
-//!   coefficients visibly decay more slowly is refused.
+//!   coefficients visibly decay more slowly is refused;
+//! * (d) for a delay that is smooth only to a stated roughness of its slope (a log), what interpolation makes of
+//!   the rough part.
 
 use super::arc::Arc;
 use super::chebyshev::{self, Cosines};
@@ -31,6 +33,13 @@ const SMOOTHNESS: u32 = 1 << 15;
 const COEFFICIENT_NOISE: f64 = 1e-15;
 /// The same in seconds, from places of some 1e7 m that a geometry computes with in f64 (5 nm).
 const GEOMETRY_NOISE: f64 = 2e-17;
+/// What interpolation at 24 Chebyshev points makes of a rough part whose slope is at most one (per half segment): of
+/// the slope 34.7 (at the ends; the largest integral of the magnitude of the kernel that takes the part's slope to
+/// the interpolant's, computed) and the part's own one; of the value 1 + 2.99 (Lebesgue's constant) times the
+/// part's distance from polynomials, pi / 48 (Jackson); of a coefficient of order 20 on, 0.81 / 20.
+const ROUGH_SLOPE: f64 = 36.0;
+const ROUGH_DELAY: f64 = 0.27;
+const ROUGH_COEFFICIENT: f64 = 0.05;
 /// Slope that the narrow kernel of the rapidity ends at.
 const STEEPEST: f64 = 1.0 / 8192.0;
 /// Largest error that the header can state, for slope and for delay: 3.7e-9.
@@ -49,7 +58,7 @@ const FRACTION_TRIES: i32 = 3;
 pub enum BakeError {
     /// The end is not after the start, or the span is above 48 days.
     SpanNotUsable,
-    /// The tolerance is not positive, or finer than the evaluation can be (slope 1e-13, delay 1e-13 s).
+    /// A tolerance is not above 1e-13 (slope) or 1e-13 s (delay), or the roughness is negative or above 1e-10.
     ToleranceNotUsable,
     /// A delay was not a number, or 64 s or more in magnitude.
     DelayNotUsable,
@@ -67,7 +76,9 @@ impl core::fmt::Display for BakeError {
     fn fmt(&self, formatter: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
         formatter.write_str(match self {
             Self::SpanNotUsable => "table span must be positive and below 48 days",
-            Self::ToleranceNotUsable => "tolerance finer than 1e-13 (slope) or 1e-13 s (delay), or not a number",
+            Self::ToleranceNotUsable => {
+                "tolerance finer than 1e-13 (slope) or 1e-13 s (delay), roughness above 1e-10, or not a number"
+            }
             Self::DelayNotUsable => "a delay was not a number or beyond 64 s",
             Self::TooFast => "the delay changes faster than 2^-13 (36.6 km/s): beyond the format; check its unit",
             Self::TooManySegments => {
@@ -92,6 +103,9 @@ pub struct BakeSettings {
     pub slope_tolerance: f64,
     /// Largest allowed error of the delay in seconds: cycles over carrier.
     pub delay_tolerance: f64,
+    /// How far the slope of the delay that is baked may be from a smooth curve's: 0 for a geometry or a formula,
+    /// [`RangeRateLog::roughness`](super::RangeRateLog::roughness) for a log. It counts 36 times in the proven slope.
+    pub roughness: f64,
     /// Direction of the signal.
     pub direction: Direction,
     /// End at which time is read.
@@ -165,7 +179,8 @@ pub fn bake<'a>(
         return Err(BakeError::SpanNotUsable);
     }
     let span = libm::ldexp(span_units, -(SPAN_FRACTION as i32));
-    if !(settings.slope_tolerance > 1e-13 && settings.delay_tolerance > 1e-13) {
+    let roughness_usable = settings.roughness >= 0.0 && ROUGH_SLOPE * settings.roughness < LARGEST_ERROR;
+    if !(settings.slope_tolerance > 1e-13 && settings.delay_tolerance > 1e-13 && roughness_usable) {
         return Err(BakeError::ToleranceNotUsable);
     }
     let mut usable = true;
@@ -298,7 +313,8 @@ fn fit(
         *value = delay(start + half * (1.0 + chebyshev::point(index, POINTS))) - units.base;
     }
     let series = chebyshev::interpolate(&values, &Cosines::<POINTS>::new());
-    let tail = tail(&series, units.base)?;
+    let rough = settings.roughness * half;
+    let tail = tail(&series, units.base, rough)?;
     let nodes = [units.node(delay(start))?, units.node(delay(start + 2.0 * half))?];
     let (coefficients, left) = units.round(&series, nodes)?;
     if !fits(&series, units, half) {
@@ -312,8 +328,8 @@ fn fit(
         slope_error = slope_error.max(slope.abs());
     }
     let noise = libm::ldexp(f64::from(NOISE), -16 - units.fraction);
-    let slope_error = (slope_error * factor + tail.1) / half;
-    let delay_error = delay_error * factor + tail.0 + noise;
+    let slope_error = (slope_error * factor + tail.1 + ROUGH_SLOPE * rough) / half;
+    let delay_error = delay_error * factor + tail.0 + ROUGH_DELAY * rough + noise;
     let met = slope_error <= settings.slope_tolerance.min(LARGEST_ERROR)
         && delay_error <= settings.delay_tolerance.min(LARGEST_ERROR);
     met.then_some((Fit { coefficients, slope_error, delay_error }, nodes))
@@ -321,12 +337,13 @@ fn fit(
 
 /// Bound on what lies beyond the interpolant: value and slope (per half segment); `None` when the
 /// coefficients do not decay as the header states.
-fn tail(series: &[f64; POINTS], base: f64) -> Option<(f64, f64)> {
+fn tail(series: &[f64; POINTS], base: f64, rough: f64) -> Option<(f64, f64)> {
     let most = |from: usize, to: usize| {
         series.get(from..to).unwrap_or(&[]).iter().fold(0.0_f64, |most, value| most.max(value.abs()))
     };
     let last = most(POINTS - 4, POINTS);
-    let noise = (base.abs() + most(0, POINTS)) * COEFFICIENT_NOISE + GEOMETRY_NOISE;
+    let noise =
+        (base.abs() + most(0, POINTS)) * COEFFICIENT_NOISE + GEOMETRY_NOISE + ROUGH_COEFFICIENT * rough;
     // Ten orders earlier the same ratio must have held: (1/2)^10, with a factor two for the phase.
     if last > noise && last * 512.0 > most(POINTS - 14, POINTS - 10) {
         return None;
@@ -591,6 +608,7 @@ pub fn bake_arc<'a>(
         end: request.end,
         slope_tolerance: request.slope_tolerance,
         delay_tolerance: request.delay_tolerance,
+        roughness: 0.0,
         direction: geometry.direction(),
         tagged_at: geometry.tagged_at(),
         object: arc.object(),
