@@ -457,3 +457,39 @@ fn the_last_instant_of_a_round_span_is_right() {
         }
     }
 }
+
+/// Ticks between the steps of `GpsTime` (those of a 19.2 MHz timer): within the evaluation noise of the stored curve,
+/// and never back in time across a step.
+#[test]
+fn ticks_between_the_steps_are_followed() {
+    let words = synthetic(WHOLE);
+    let geometry = geometry(&words, Direction::Down, TaggedAt::Ground);
+    let table = baked(&words, &geometry, &request(&geometry, 1.0));
+    let table = PassTable::new(&table).unwrap();
+    let stored = Stored::new(&table);
+    let (_, _, noise) = proven(&table);
+    let mut errors = (i128::MAX, i128::MIN);
+    let span = table.end().to_bits() - table.start().to_bits();
+    for tick in 0..500_000i128 {
+        let fine = tick * 27_851 * (1 << 62) / 19_200_000;
+        let (bits, fraction) = ((fine >> 32) as i64, fine as u32);
+        if bits >= span {
+            break;
+        }
+        let time = GpsTime::from_bits(table.start().to_bits() + bits);
+        let motion = table.at_fine(time, fraction).unwrap();
+        let error = (i128::from(motion.delay.to_bits()) << 4) - stored.delay_fine(time, fraction);
+        errors = (errors.0.min(error), errors.1.max(error));
+        if tick % 1000 == 0 {
+            assert_eq!(table.at_fine(time, 0), table.at(time));
+        }
+    }
+    let seen = (errors.1 - errors.0) as f64 * UNIT;
+    println!("{seen:e} s of {noise:e}");
+    assert!(seen <= noise && seen > 0.3 * noise);
+    assert_eq!(
+        table.at_fine(GpsTime::from_bits(table.start().to_bits() - 1), u32::MAX),
+        Err(TableError::Before)
+    );
+    assert!(table.at_fine(table.end(), u32::MAX).is_ok());
+}

@@ -237,7 +237,7 @@ fn units_for(span: f64, cell: u32, delay: &mut impl FnMut(f64) -> f64) -> Result
     let (mut least, mut most) = (f64::INFINITY, f64::NEG_INFINITY);
     for look in 0..=LOOKS {
         let value = delay(span * 1.05 * f64::from(look) / f64::from(LOOKS));
-        if !(value.abs() < 64.0) {
+        if !(0.0..64.0).contains(&value.abs()) {
             return Err(BakeError::DelayNotUsable);
         }
         least = least.min(value);
@@ -386,7 +386,7 @@ fn round(
     for (power, &(unit, limit)) in storage.orders.iter().enumerate().skip(2).rev() {
         let leading = *target.get(power)? / chebyshev::of_monomial(power, power);
         let rounded = libm::round(leading / unit);
-        if !(rounded.abs() < limit) {
+        if !(0.0..limit).contains(&rounded.abs()) {
             return None;
         }
         *coefficients.get_mut(power)? = rounded as i32;

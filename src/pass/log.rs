@@ -157,7 +157,7 @@ impl<'a> RangeRateLog<'a> {
             if later.time <= earlier.time {
                 return Err(LogError::NotIncreasing { index: before + 1 });
             }
-            if !(later.time.seconds_since(earlier.time) <= largest_gap) {
+            if !(0.0..=largest_gap).contains(&later.time.seconds_since(earlier.time)) {
                 return Err(LogError::Gap { index: before + 1 });
             }
         }
