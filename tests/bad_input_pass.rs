@@ -130,6 +130,7 @@ fn hostile_tables_do_no_harm() {
         for bits in others.into_iter().chain(shares) {
             let time = GpsTime::from_bits(bits);
             answers += usize::from(table.at(time).is_ok());
+            let _ = table.at_fine(time, random.bits() as u32);
             for lateness in [0, 3 << 24, -(2 << 24), 8 << 24, i32::MIN, i32::MAX] {
                 answers += usize::from(table.at_late(time, lateness).is_ok());
             }
