@@ -114,7 +114,7 @@ fn hostile_tables_do_no_harm() {
         words.resize(600, random.bits() as u32);
         let directory = |segments: u32| segments.next_power_of_two().max(2) / 2;
         let segments = words[13] >> 16;
-        let partial = if words[0] & 8 != 0 { 3 * segments + 2 } else { 0 };
+        let partial = if words[0] & 8 != 0 { 4 * segments + 5 } else { 0 };
         let sum = 15 + directory(segments.min(1 << 16)) + 6 * segments + 1 + partial;
         let Some(body) = words.get(..sum as usize) else {
             assert!(PassTable::new(&words).is_err());

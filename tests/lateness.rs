@@ -39,8 +39,8 @@ fn bits(lateness: f64) -> i32 {
     (lateness * f64::from(1 << 24)) as i32
 }
 
-/// Vectors that are truly 1 and 3 s late and 2 s early: with the partial, shift within 10 mHz at every sample and the
-/// delay within 0.15 cycle times the lateness squared: what a first-order partial leaves of the site's way.
+/// Vectors that are truly 1 and 3 s late and 2 s early: with the partial, shift within 3 mHz at every sample and the
+/// delay within 0.05 cycle.
 #[test]
 fn the_partial_follows_truly_late_vectors() {
     let words = synthetic(WHOLE);
@@ -64,24 +64,23 @@ fn the_partial_follows_truly_late_vectors() {
         }
         println!("{name}: {samples} samples, {:.2} mHz, {:.4} cycles", shift / MILLIHERTZ, drift * CARRIER);
         assert!(samples >= 145);
-        assert!(shift < 10.0 * MILLIHERTZ, "{name}: {} mHz", shift / MILLIHERTZ);
-        assert!(drift < 0.15 * lateness * lateness / CARRIER, "{name}: {} cycles", drift * CARRIER);
+        assert!(shift < 3.0 * MILLIHERTZ, "{name}: {} mHz", shift / MILLIHERTZ);
+        assert!(drift < 0.05 / CARRIER, "{name}: {} cycles", drift * CARRIER);
     }
 }
 
 /// The same against a fresh bake of the late orbit, every 50 ms and in all directions, each table baked as finely as
-/// named: 10 mHz where that is 1 mHz (8 mHz of it grows with the lateness squared; twice that two ways); coarser
-/// tables add what they prove.
+/// named: 10 mHz and 0.05 cycle (twice that two ways).
 #[test]
 fn the_partial_agrees_with_a_fresh_bake() {
     let words = synthetic(WHOLE);
     for (direction, tagged_at, millihertz, allowed) in [
-        (Direction::Down, TaggedAt::Ground, 1.0, 10.0),
+        (Direction::Down, TaggedAt::Ground, 1.0, 5.0),
         (Direction::Up, TaggedAt::Ground, 1.0, 10.0),
-        (Direction::Down, TaggedAt::Spacecraft, 2.0, 12.0),
-        (Direction::Up, TaggedAt::Spacecraft, 2.0, 12.0),
-        (Direction::TwoWay, TaggedAt::Ground, 3.0, 25.0),
-        (Direction::Down, TaggedAt::Ground, 10.0, 13.0),
+        (Direction::Down, TaggedAt::Spacecraft, 2.0, 10.0),
+        (Direction::Up, TaggedAt::Spacecraft, 2.0, 10.0),
+        (Direction::TwoWay, TaggedAt::Ground, 3.0, 20.0),
+        (Direction::Down, TaggedAt::Ground, 10.0, 10.0),
     ] {
         let on_time = baked(&words, &geometry(&words, direction, tagged_at, 0.0), millihertz, true);
         let on_time = PassTable::new(&on_time).unwrap();
@@ -106,8 +105,7 @@ fn the_partial_agrees_with_a_fresh_bake() {
             );
             assert!(instants > 14_700);
             assert!(shift < allowed * MILLIHERTZ, "{}", shift / MILLIHERTZ);
-            // Two tables' 0.015 cycles beside the square.
-            assert!(delay < (0.15 * legs * lateness * lateness + 0.03) / CARRIER, "{}", delay * CARRIER);
+            assert!(delay < legs * 0.05 / CARRIER, "{}", delay * CARRIER);
         }
     }
 }

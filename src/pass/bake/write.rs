@@ -107,6 +107,84 @@ fn header(
     ]
 }
 
+/// What lateness does to a segment.
+struct Sampled {
+    /// Change of the delay per second of lateness after sliding: its series, and its values at both ends.
+    change: [f64; POINTS],
+    nodes: [f64; 2],
+    /// What a second of lateness changes in that: at both ends, and the coefficient 2 between them.
+    bends: [f64; 2],
+    bow: f64,
+}
+
+impl Sampled {
+    /// The segment that starts at `start`, `half` long to either side of its middle, in seconds.
+    fn new(start: f64, half: f64, late: &mut dyn FnMut(f64, f64) -> f64) -> Self {
+        let mut slid = |seconds: f64, lateness: f64| late(seconds + lateness, lateness);
+        let mut change = |seconds: f64| {
+            let (later, earlier) = (slid(seconds, PARTIAL_LATENESS), slid(seconds, -PARTIAL_LATENESS));
+            (later - earlier) / (2.0 * PARTIAL_LATENESS)
+        };
+        let values =
+            core::array::from_fn(|index| change(start + half * (1.0 + chebyshev::point(index, POINTS))));
+        let nodes = [change(start), change(start + 2.0 * half)];
+        let mut bend = |seconds: f64| {
+            let (later, earlier) = (slid(seconds, PARTIAL_LATENESS), slid(seconds, -PARTIAL_LATENESS));
+            (later + earlier - 2.0 * slid(seconds, 0.0)) / (PARTIAL_LATENESS * PARTIAL_LATENESS)
+        };
+        let (first, middle, last) = (bend(start), bend(start + half), bend(start + 2.0 * half));
+        Self {
+            change: chebyshev::interpolate(&values, &Cosines::<POINTS>::new()),
+            nodes,
+            bends: [first, last],
+            bow: (first + last) / 2.0 - middle,
+        }
+    }
+}
+
+/// Units of a partial section.
+struct PartialUnits {
+    fraction: i32,
+    coarser: i32,
+    bend: i32,
+}
+
+impl PartialUnits {
+    /// The finest that hold every segment.
+    fn holding(segments: impl Iterator<Item = Sampled>) -> Self {
+        let (mut node, mut term, mut bend) = (1e-12_f64, 1e-12_f64, 1e-15_f64);
+        for Sampled { change, nodes, bends: [first, last], bow } in segments {
+            node = nodes.iter().fold(node, |most, node| most.max(node.abs()));
+            // A coefficient of order 2 to 5 is at most this multiple of what the series holds there.
+            term = term.max(change.iter().skip(2).fold(0.0, |sum, term| sum + term.abs()) * 20.0);
+            bend = bend.max(first.abs()).max(last.abs()).max(bow.abs());
+        }
+        let exponent = |size: f64| libm::ilogb(size) + 1;
+        let fraction = (30 - exponent(node)).min(59);
+        let coarser = (fraction + exponent(term) - 15).max(0);
+        Self { fraction, coarser, bend: (14 - exponent(bend)).min(59) }
+    }
+
+    fn record(&self, sampled: &Sampled) -> Option<[PartialRecord; 2]> {
+        let orders = [(libm::ldexp(1.0, self.coarser - self.fraction), 32_767.0); PARTIAL_DEGREE + 1];
+        let storage = Storage { node_unit: libm::ldexp(1.0, -self.fraction), orders: &orders };
+        let nodes = sampled.nodes.map(|node| libm::round(node / storage.node_unit));
+        let (coefficients, _) = round(&sampled.change, &storage, nodes)?;
+        let [_, _, c2, c3, c4, c5, ..] = coefficients;
+        let [first, last] = nodes;
+        let bend = |value: f64| libm::round(libm::ldexp(value, self.bend)) as i16;
+        let [start, end] = sampled.bends.map(bend);
+        Some([
+            PartialRecord {
+                node: first as i32,
+                coefficients: [c2, c3, c4, c5].map(|value| value as i16),
+                bend: [start, bend(sampled.bow)],
+            },
+            PartialRecord { node: last as i32, coefficients: [0; 4], bend: [end, 0] },
+        ])
+    }
+}
+
 /// Writes the lateness partial; returns its length in words.
 fn write_partial(
     partial: &mut [u32],
@@ -115,55 +193,23 @@ fn write_partial(
     units: &Units,
     late: &mut dyn FnMut(f64, f64) -> f64,
 ) -> Result<usize, BakeError> {
-    // What a second of lateness changes after the curve has been slid by it.
-    let mut change = |seconds: f64| {
-        let later = late(seconds + PARTIAL_LATENESS, PARTIAL_LATENESS);
-        let earlier = late(seconds - PARTIAL_LATENESS, -PARTIAL_LATENESS);
-        (later - earlier) / (2.0 * PARTIAL_LATENESS)
-    };
-    let place = |segment: usize| {
+    let mut sampled = |segment: usize| {
         let entry = directory.get(segment / 2).map_or(0, |word| word >> (16 * (segment % 2)) & 0xFFFF);
         let half = units.cell_seconds() * libm::ldexp(1.0, (entry & 0xF) as i32) / 2.0;
-        (units.cell_seconds() * f64::from(entry >> (16 - CELL_BITS)), half)
+        Sampled::new(units.cell_seconds() * f64::from(entry >> (16 - CELL_BITS)), half, late)
     };
-    let mut sampled = |segment: usize| {
-        let (start, half) = place(segment);
-        let values =
-            core::array::from_fn(|index| change(start + half * (1.0 + chebyshev::point(index, POINTS))));
-        (
-            chebyshev::interpolate(&values, &Cosines::<POINTS>::new()),
-            [change(start), change(start + 2.0 * half)],
-        )
-    };
-    let (mut largest_node, mut largest_term) = (1e-12_f64, 1e-12_f64);
-    for segment in 0..count {
-        let (series, nodes) = sampled(segment);
-        largest_node = nodes.iter().fold(largest_node, |most, node| most.max(node.abs()));
-        // A coefficient of order 2 to 5 is at most this multiple of what the series holds there.
-        let terms = series.iter().skip(2).fold(0.0, |sum, term| sum + term.abs());
-        largest_term = largest_term.max(terms * 20.0);
-    }
-    let exponent = |size: f64| libm::ilogb(size) + 1;
-    let fraction = (30 - exponent(largest_node)).min(59);
-    let coarser = (fraction + exponent(largest_term) - 15).max(0);
-    let unit = libm::ldexp(1.0, coarser - fraction);
-    let orders = [(unit, 32_767.0); PARTIAL_DEGREE + 1];
-    let storage = Storage { node_unit: libm::ldexp(1.0, -fraction), orders: &orders };
+    let partial_units = PartialUnits::holding((0..count).map(&mut sampled));
     let (head, records) = partial.split_first_mut().ok_or(BakeError::BufferTooSmall)?;
-    *head = fraction as u32 | (coarser as u32) << 8;
+    let PartialUnits { fraction, coarser, bend } = partial_units;
+    *head = fraction as u32 | (coarser as u32) << 8 | (bend as u32) << 16;
     for segment in 0..count {
-        let (series, nodes) = sampled(segment);
-        let nodes = nodes.map(|node| libm::round(node / storage.node_unit));
-        let (coefficients, _) = round(&series, &storage, nodes).ok_or(BakeError::DelayNotUsable)?;
-        let [_, _, c2, c3, c4, c5, ..] = coefficients;
-        let [start, end] = nodes;
-        let record =
-            PartialRecord { node: start as i32, coefficients: [c2, c3, c4, c5].map(|value| value as i16) };
+        let both = partial_units.record(&sampled(segment)).ok_or(BakeError::DelayNotUsable)?;
         let words = records.get_mut(segment * PARTIAL_RECORD_WORDS..).ok_or(BakeError::BufferTooSmall)?;
-        let words = words.get_mut(..=PARTIAL_RECORD_WORDS).ok_or(BakeError::BufferTooSmall)?;
-        let (body, next) = words.split_at_mut(PARTIAL_RECORD_WORDS);
-        body.copy_from_slice(&record.to_words());
-        next.fill(end as i32 as u32);
+        // The next segment writes over the end with its own start.
+        for (place, record) in words.chunks_exact_mut(PARTIAL_RECORD_WORDS).zip(&both) {
+            place.copy_from_slice(&record.to_words());
+        }
     }
-    Ok(2 + count * PARTIAL_RECORD_WORDS)
+    let length = 1 + (count + 1) * PARTIAL_RECORD_WORDS;
+    (partial.len() >= length).then_some(length).ok_or(BakeError::BufferTooSmall)
 }
