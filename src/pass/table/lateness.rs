@@ -47,7 +47,7 @@ impl PassTable<'_> {
     ///
     /// # Accuracy
     /// 10 mHz and 0.05 cycle at 437 MHz at 3 s of lateness on a pass at 550 km, the errors of a table of 10 mHz
-    /// included; 3 mHz from one of 1 mHz (`tests/lateness.rs`).
+    /// included; 3 mHz from one of 1 mHz; 40 mHz overhead at 320 km (`tests/lateness.rs`).
     pub fn at_late(&self, time: GpsTime, lateness: i32) -> Result<Motion, TableError> {
         if !self.has_lateness() || !(-LARGEST..=LARGEST).contains(&lateness) {
             return Err(TableError::NoLateness);
