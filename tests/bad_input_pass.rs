@@ -114,7 +114,7 @@ fn hostile_tables_do_no_harm() {
         words.resize(600, random.bits() as u32);
         let directory = |segments: u32| segments.next_power_of_two().max(2) / 2;
         let segments = words[13] >> 16;
-        let partial = if words[0] & 8 != 0 { 3 * segments + 2 } else { 0 };
+        let partial = if words[0] & 8 != 0 { 4 * segments + 5 } else { 0 };
         let sum = 15 + directory(segments.min(1 << 16)) + 6 * segments + 1 + partial;
         let Some(body) = words.get(..sum as usize) else {
             assert!(PassTable::new(&words).is_err());
@@ -130,6 +130,7 @@ fn hostile_tables_do_no_harm() {
         for bits in others.into_iter().chain(shares) {
             let time = GpsTime::from_bits(bits);
             answers += usize::from(table.at(time).is_ok());
+            let _ = table.at_fine(time, random.bits() as u32);
             for lateness in [0, 3 << 24, -(2 << 24), 8 << 24, i32::MIN, i32::MAX] {
                 answers += usize::from(table.at_late(time, lateness).is_ok());
             }
@@ -188,6 +189,7 @@ fn plain() -> BakeSettings {
         end: GpsTime::default().plus_seconds(600.0),
         slope_tolerance: 10.0 * MILLIHERTZ,
         delay_tolerance: 0.015 / CARRIER,
+        roughness: 0.0,
         direction: Direction::Down,
         tagged_at: TaggedAt::Ground,
         object: 0,

@@ -343,6 +343,7 @@ fn plain(start: f64, end: f64) -> BakeSettings {
         end: GpsTime::default().plus_seconds(end),
         slope_tolerance: 2.0 * MILLIHERTZ,
         delay_tolerance: 0.015 / CARRIER,
+        roughness: 0.0,
         direction: Direction::Down,
         tagged_at: TaggedAt::Ground,
         object: 7,
@@ -455,4 +456,119 @@ fn the_last_instant_of_a_round_span_is_right() {
             assert!(off.abs() <= proven(&table).1, "{span} s: {off:e} s");
         }
     }
+}
+
+/// Ticks between the steps of `GpsTime` (those of a 19.2 MHz timer): within the evaluation noise of the stored curve,
+/// and never back in time across a step.
+#[test]
+fn ticks_between_the_steps_are_followed() {
+    let words = synthetic(WHOLE);
+    let geometry = geometry(&words, Direction::Down, TaggedAt::Ground);
+    let table = baked(&words, &geometry, &request(&geometry, 1.0));
+    let table = PassTable::new(&table).unwrap();
+    let stored = Stored::new(&table);
+    let (_, _, noise) = proven(&table);
+    let mut errors = (i128::MAX, i128::MIN);
+    let span = table.end().to_bits() - table.start().to_bits();
+    for tick in 0..500_000i128 {
+        let fine = tick * 27_851 * (1 << 62) / 19_200_000;
+        let (bits, fraction) = ((fine >> 32) as i64, fine as u32);
+        if bits >= span {
+            break;
+        }
+        let time = GpsTime::from_bits(table.start().to_bits() + bits);
+        let motion = table.at_fine(time, fraction).unwrap();
+        let error = (i128::from(motion.delay.to_bits()) << 4) - stored.delay_fine(time, fraction);
+        errors = (errors.0.min(error), errors.1.max(error));
+        if tick % 1000 == 0 {
+            assert_eq!(table.at_fine(time, 0), table.at(time));
+        }
+    }
+    let seen = (errors.1 - errors.0) as f64 * UNIT;
+    println!("{seen:e} s of {noise:e}");
+    assert!(seen <= noise && seen > 0.3 * noise);
+    assert_eq!(
+        table.at_fine(GpsTime::from_bits(table.start().to_bits() - 1), u32::MAX),
+        Err(TableError::Before)
+    );
+    assert!(table.at_fine(table.end(), u32::MAX).is_ok());
+}
+
+/// Every committed orbit, up to two hours of a transfer orbit: the table's rapidity against the vectors, with no step
+/// of this crate on the other side: what is proven, what the evaluation adds, and 1 mHz of the arc.
+#[test]
+fn tables_of_every_orbit_agree_with_the_vectors() {
+    for pass in vectors::orbit_passes() {
+        let grid = vectors::positions(pass.object);
+        let epoch = passes::utc(pass.epoch_utc);
+        let (first, last) = (grid.start.max(pass.first - 2.0), grid.end().min(pass.last + 2.0));
+        let words = passes::fitted(epoch, [first, last], |t| grid.at(t)).unwrap();
+        let arc = Arc::new(&words).unwrap();
+        let vectors = vectors::orbit_vectors(pass.object);
+        let times = vectors.column("t_s");
+        for (direction, name) in
+            [(Direction::Down, "downlink_reception"), (Direction::Up, "uplink_transmission")]
+        {
+            let geometry =
+                Geometry::new(&arc, &passes::site(&pass.site), direction, TaggedAt::Ground, 0.0).unwrap();
+            let request = Request {
+                start: epoch.plus_seconds(pass.first),
+                end: epoch.plus_seconds(pass.last),
+                slope_tolerance: 10.0 * MILLIHERTZ,
+                delay_tolerance: 0.1 / CARRIER,
+                lateness_partial: false,
+            };
+            let table = baked(&words, &geometry, &request);
+            let table = PassTable::new(&table).unwrap();
+            let rapidities = vectors.column(&format!("{name}_rapidity"));
+            let inside = (0..times.len()).filter(|&k| times[k] >= pass.first && times[k] <= pass.last);
+            let off = worst(inside.map(|k| {
+                let motion = table.at(epoch.plus_seconds(times[k])).unwrap();
+                motion.rapidity.to_bits() as f64 * UNIT - rapidities[k]
+            }));
+            let (slope, _, _) = proven(&table);
+            let own = f64::from(table.rapidity_noise()) * UNIT;
+            println!(
+                "{} {direction:?}: {:.0} s, {} bytes, {} segments, {:.3} mHz of {:.3} + {:.3} + 1",
+                pass.object,
+                pass.last - pass.first,
+                table.words().len() * 4,
+                table.segment_count(),
+                off / MILLIHERTZ,
+                slope / MILLIHERTZ,
+                own / MILLIHERTZ
+            );
+            assert!(off <= slope + own + MILLIHERTZ, "{}: {off:e}", pass.object);
+            let seen = walk(&table, &geometry, (pass.last - pass.first) / 20_011.0, false);
+            assert!(seen.slope <= slope && seen.delay <= proven(&table).1, "{}: {seen:?}", pass.object);
+            assert!(seen.noise <= proven(&table).2, "{}: {seen:?}", pass.object);
+        }
+    }
+}
+
+/// Eccentric and high random passes: what can be baked at 10 mHz and 0.1 cycle keeps what it proves.
+#[test]
+fn other_random_passes_keep_their_proven_error() {
+    let (mut tables, mut bytes) = (0, 0);
+    for (k, pass) in Passes::any(13).take(80).enumerate() {
+        let Ok(words) = passes::random(&pass) else { continue };
+        let arc = Arc::new(&words).unwrap();
+        let (direction, tagged_at) = COMBINATIONS[k % 5];
+        let geometry = Geometry::new(&arc, &passes::site(&pass.site), direction, tagged_at, 0.0).unwrap();
+        let asked = Request { delay_tolerance: 0.1 / CARRIER, ..request(&geometry, 10.0) };
+        let mut buffer = [0; 2048];
+        let table = match bake_arc(&mut buffer, &arc, &geometry, &asked) {
+            Ok(table) => table,
+            Err(error) => panic!("pass {k} of {:.0} s: {error}", pass.set),
+        };
+        let (slope, delay, noise) = proven(&table);
+        let seen = walk(&table, &geometry, (pass.set - pass.rise) / 5003.0, false);
+        assert!(seen.slope <= slope && seen.delay <= delay && seen.noise <= noise, "pass {k}: {seen:?}");
+        let own = f64::from(table.rapidity_noise()) * UNIT;
+        assert!(seen.rapidity <= slope + own, "pass {k}: {seen:?} {own:e}");
+        tables += 1;
+        bytes = bytes.max(table.words().len() * 4);
+    }
+    println!("{tables} of 80, largest {bytes} bytes");
+    assert!(tables >= 60);
 }

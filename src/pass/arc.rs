@@ -175,7 +175,7 @@ impl<'a> Arc<'a> {
     ) -> Result<Self, ArcError> {
         let span = settings.end.seconds_since(settings.start);
         let half_units = libm::ceil(span * SPAN_FRACTION / 2.0);
-        if !(half_units >= 1.0 && half_units < 4_294_967_296.0) {
+        if !(1.0..4_294_967_296.0).contains(&half_units) {
             return Err(ArcError::SpanNotUsable);
         }
         let half_span = half_units / SPAN_FRACTION;
@@ -186,7 +186,7 @@ impl<'a> Arc<'a> {
         for index in 0..FIT_POINTS {
             let place = position(offset + half_span * chebyshev::point(index, FIT_POINTS));
             for (axis, &coordinate) in samples.iter_mut().zip(&place) {
-                if !(coordinate.abs() < 1e9) {
+                if !(0.0..1e9).contains(&coordinate.abs()) {
                     return Err(ArcError::PositionNotUsable);
                 }
                 if let Some(sample) = axis.get_mut(index) {

@@ -156,7 +156,7 @@ impl Site {
     /// [`GeometryError::SiteTooFast`].
     pub fn moving(self, [east, north, up]: [f64; 3], epoch: GpsTime) -> Result<Self, GeometryError> {
         let speed = libm::sqrt(east * east + north * north + up * up);
-        if !(speed <= 1000.0) {
+        if !(0.0..=1000.0).contains(&speed) {
             return Err(GeometryError::SiteTooFast);
         }
         let mut velocity = [0.0; 3];
@@ -239,7 +239,7 @@ impl Geometry {
         tagged_at: TaggedAt,
         lateness: f64,
     ) -> Result<Self, GeometryError> {
-        if !(lateness.abs() <= 60.0) {
+        if !(-60.0..=60.0).contains(&lateness) {
             return Err(GeometryError::LatenessTooLarge);
         }
         if direction == Direction::TwoWay && tagged_at == TaggedAt::Spacecraft {

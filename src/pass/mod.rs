@@ -3,15 +3,18 @@
 //! [`Arc`] is what is uploaded or broadcast: the Earth-fixed position as polynomials, free of site, carrier
 //! and direction, some 90 bytes. [`Geometry`] joins an arc with a [`Site`] and gives the apparent delay.
 //! [`bake`](mod@bake) turns that (or any closure from time to delay) into a [`PassTable`], which costs a few
-//! hundred instructions to read and carries its own proven error.
+//! hundred instructions to read and carries its own proven error. Where there is no orbit, [`RangeRateLog`] is such
+//! a closure.
 
 mod arc;
 pub mod bake;
 mod chebyshev;
 mod geometry;
+mod log;
 mod packing;
 mod table;
 
 pub use arc::{Arc, ArcError, ArcModel, ArcSettings, MAX_ARC_WORDS, Trajectory};
 pub use geometry::{Direction, Geometry, GeometryError, Look, Passage, Site, TaggedAt};
+pub use log::{LogError, RangeRateLog, RangeRateSample};
 pub use table::{MotionExtremes, PassTable, TableError};

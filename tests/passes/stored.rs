@@ -72,14 +72,17 @@ impl Stored {
         }
     }
 
-    /// Delay in 2^-(Q + FINER) s over the base, and its slope as a pure number.
-    fn raw(&self, time: GpsTime) -> (i128, f64) {
+    /// Delay in 2^-(Q + FINER) s from the base, and its slope as a pure number; `fraction` in 2^-62 s.
+    fn raw(&self, time: GpsTime, fraction: u32) -> (i128, f64) {
         let elapsed = time.to_bits() - self.epoch;
         let segment = self.segments.iter().rev().find(|segment| segment.start <= elapsed).expect("inside");
-        let local = i128::from(elapsed - segment.start);
-        assert!(local <= i128::from(segment.length));
-        let length = i128::from(segment.length);
-        let argument = ((2 * local - length) << ARGUMENT) / length;
+        // Lengths are powers of two, so that nothing is lost here.
+        let local = i128::from(elapsed - segment.start) << 32 | i128::from(fraction);
+        let length = i128::from(segment.length) << 32;
+        assert!(local <= length);
+        let places = ARGUMENT - (length.trailing_zeros() as i32);
+        let argument = 2 * local - length;
+        let argument = if places >= 0 { argument << places } else { argument >> -places };
         let (mut value, mut slope) = (0i128, 0i128);
         for coefficient in segment.coefficients.iter().rev() {
             slope = ((slope * argument) >> ARGUMENT) + value;
@@ -91,7 +94,12 @@ impl Stored {
 
     /// Delay in 2^-60 s.
     pub fn delay(&self, time: GpsTime) -> i128 {
-        let (value, _) = self.raw(time);
+        self.delay_fine(time, 0)
+    }
+
+    /// The same `fraction` (2^-62 s) later.
+    pub fn delay_fine(&self, time: GpsTime, fraction: u32) -> i128 {
+        let (value, _) = self.raw(time, fraction);
         let places = 60 - self.fraction - FINER;
         let value = if places >= 0 { value << places } else { value >> -places };
         value + (self.base << (60 - 24))
@@ -99,6 +107,6 @@ impl Stored {
 
     /// Slope of the delay.
     pub fn slope(&self, time: GpsTime) -> f64 {
-        self.raw(time).1
+        self.raw(time, 0).1
     }
 }

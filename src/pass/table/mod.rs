@@ -128,7 +128,7 @@ impl<'a> PassTable<'a> {
         let directory_words = layout.directory_words();
         let record_words = segments * RECORD_WORDS + 1;
         let has_partial = header[0] & 8 != 0;
-        let partial_words = if has_partial { segments * PARTIAL_RECORD_WORDS + 2 } else { 0 };
+        let partial_words = if has_partial { (segments + 1) * PARTIAL_RECORD_WORDS + 1 } else { 0 };
         let length = HEADER_WORDS + directory_words + record_words + partial_words + 1;
         let words = words.get(..length).ok_or(TableError::Short)?;
         let (sum, body) = words.split_last().ok_or(TableError::Short)?;
