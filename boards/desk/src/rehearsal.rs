@@ -27,6 +27,7 @@ use oscillator::{Carrier, Oscillator, Run, Tuning};
 use shiftkeel::frequency::Frequency;
 use shiftkeel::nco::Nco;
 use shiftkeel::pass::PassTable;
+use shiftkeel::pass::bake::audit;
 use shiftkeel::rapidity::Motion;
 use shiftkeel::time::GpsTime;
 use shiftkeel::tuning::{Proven, ProvenPart};
@@ -34,6 +35,11 @@ use stages::{Bench, Heard, Rule, Seen, Stages, wrapped};
 
 /// Parts of an interval that are looked at, beside its last clock.
 const LOOKS: u32 = 4;
+/// Time over which the audit of the table takes a slope, s: long enough that the rounding of two delays does not
+/// show in it, short beside what a polynomial of a table does.
+const AUDIT_STEP: f64 = 0.1;
+/// Steps of the audit at most.
+const MOST_AUDITED: f64 = 50_000.0;
 /// Columns of the picture.
 const COLUMNS: usize = 720;
 
@@ -159,7 +165,7 @@ impl<'a> Rehearsal<'a> {
             arc: self.heard(&self.arc),
             carrier,
             oscillator: self.oscillator,
-            joint: carrier.hertz() * (-38f64).exp2(),
+            joint: carrier.hertz() * (-40f64).exp2(),
         };
         let start = self.table.start();
         let origin = start.seconds_since(self.baked.pass.reference_gps()?);
@@ -176,7 +182,12 @@ impl<'a> Rehearsal<'a> {
             squares: 0.0,
             origin,
         };
-        walk.outcome.stages.read(&bench, origin, read(&motion));
+        let geometry = self.baked.geometry(0.0)?;
+        let length = walk.outcome.span.1 - origin;
+        let audit = audit(&self.table, AUDIT_STEP.max(length / MOST_AUDITED), |t| {
+            geometry.delay_and_rapidity(origin + t).0
+        })?;
+        walk.outcome.stages = Stages::begin(&bench, &audit, origin, read(&motion));
         for tick in 1..=ticks {
             let clocks = u64::from(self.oscillator.clocks);
             let (grid, fraction) = carrier.grid(tick * clocks);

@@ -46,10 +46,10 @@ pub struct PassArguments {
     #[arg(long, value_name = "MHZ", default_value_t = 10.0, allow_hyphen_values = true)]
     pub millihertz: f64,
     /// Largest phase error of the table, cycles
-    #[arg(long, value_name = "CYCLES", default_value_t = 0.015, allow_hyphen_values = true)]
+    #[arg(long, value_name = "CYCLES", default_value_t = 0.01, allow_hyphen_values = true)]
     pub cycles: f64,
     /// Largest velocity error of the arc on each axis, mm/s
-    #[arg(long, value_name = "MM_S", default_value_t = 0.4, allow_hyphen_values = true)]
+    #[arg(long, value_name = "MM_S", default_value_t = 0.2, allow_hyphen_values = true)]
     pub arc_millimetres: f64,
     /// Which way the signal goes
     #[arg(long, value_enum, default_value = "down")]
