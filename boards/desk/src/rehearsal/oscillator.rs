@@ -146,6 +146,7 @@ pub struct Interval {
 /// The crate's steering in progress.
 pub struct Run {
     tuning: Tuning,
+    clocks: u32,
     state: State,
     remainder: i64,
 }
@@ -169,7 +170,7 @@ impl Run {
                 State::Hold(holding(bits, &tuning, motion, deadband)?)
             }
         };
-        Ok(Self { tuning, state, remainder: 0 })
+        Ok(Self { tuning, clocks: oscillator.clocks, state, remainder: 0 })
     }
 
     /// Steers the coming interval, given the motion at its end.
@@ -184,7 +185,8 @@ impl Run {
                     Tuning::Receive(channel) => sweep.step(channel, motion)?,
                     Tuning::Transmit(channel) => sweep.step(channel, motion)?,
                 };
-                let made = swept.start.to_bits().wrapping_add((swept.change >> 1) as u64);
+                let change = swept.ramp.to_bits().wrapping_mul(i64::from(self.clocks));
+                let made = swept.start().to_bits().wrapping_add((change >> 1) as u64);
                 let (first, ramp) = (swept.first, swept.ramp);
                 Interval { first, ramp, mean: 0, made, retuned: true, remainder: sweep.remainder() }
             }
