@@ -5,7 +5,7 @@ use anyhow::{Context, ensure};
 use shiftkeel::frequency::{Frequency, PhaseRamp, PhaseStep};
 use shiftkeel::pass::PassTable;
 use shiftkeel::rapidity::Motion;
-use shiftkeel::tuning::{Channel, Hold, Permission, Proven, RfPlan, Steering, Sweep, TuningError};
+use shiftkeel::tuning::{Bound, Channel, Hold, Permission, Proven, RfPlan, Steering, Sweep, TuningError};
 
 /// The oscillator and how it is steered.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -123,6 +123,19 @@ impl Tuning {
                 Proven::of_hold(channel, table, &steering, bits, oscillator.deadband, quiet)
             }
         }
+    }
+}
+
+impl Tuning {
+    /// What the channel's own rounding may do to the mean step of an interval, and to the phase with what is
+    /// carried forward, whatever motion it is fed with.
+    pub fn rounding(&self, carrier: f64, oscillator: &Oscillator) -> Bound {
+        let (delay, places) = match self {
+            Self::Receive(channel) => (channel.delay_resolution(), channel.mean_resolution()),
+            Self::Transmit(channel) => (channel.delay_resolution(), channel.mean_resolution()),
+        };
+        let cycles = carrier * delay;
+        Bound { hertz: cycles / oscillator.interval() + places * oscillator.hertz(), cycles }
     }
 }
 
