@@ -99,7 +99,8 @@ pub struct ArcSettings {
     pub element_epoch: GpsTime,
     /// What moved the spacecraft.
     pub model: ArcModel,
-    /// Largest allowed velocity error in m/s, each axis (0.4 mm/s is 0.6 mHz at 437 MHz).
+    /// Largest allowed velocity error in m/s, each axis (0.4 mm/s is 0.6 mHz at 437 MHz). Below 0.4 mm/s the
+    /// position is stored finer too, as 40 s of that velocity.
     pub velocity_tolerance: f64,
 }
 
@@ -166,7 +167,8 @@ impl<'a> Arc<'a> {
     ///
     /// # Accuracy
     /// Velocity within `velocity_tolerance` on each axis at 65 places of the span, quantisation included;
-    /// position is rounded at 2^-6 m (finer in spans of a minute or two, coarser far out). `tests/arc.rs` holds
+    /// position is rounded at 2^-6 m (finer for a tolerance below 0.4 mm/s and in spans of a minute or two, coarser
+    /// far out). `tests/arc.rs` holds
     /// it to 1 mHz at 437 MHz for a thousand random sites.
     pub fn fit(
         buffer: &'a mut [u32],
@@ -195,8 +197,9 @@ impl<'a> Arc<'a> {
             }
         }
         let series = samples.map(|axis| chebyshev::interpolate(&axis, &cosines));
+        let first = first_quantum(settings.velocity_tolerance);
         let (quantum, degree) =
-            storage(&series, settings.velocity_tolerance * half_span).ok_or(ArcError::TooCurved)?;
+            storage(&series, settings.velocity_tolerance * half_span, first).ok_or(ArcError::TooCurved)?;
         let length = write(buffer, settings, middle, half_units as u32, quantum, degree, &series)
             .ok_or(ArcError::BufferTooSmall)?;
         Self::new(buffer.get(..length).ok_or(ArcError::BufferTooSmall)?)
@@ -293,9 +296,18 @@ fn quantise(value: f64, order: usize, quantum: i32) -> f64 {
     libm::round(value / power_of_two(quantum - finer_bits(order)))
 }
 
-/// Coarsest quantum (as a power of two) and lowest degree with which the velocity is within `tolerance`, in metres
-/// per half span.
-fn storage(series: &[[f64; FIT_POINTS]; 3], tolerance: f64) -> Option<(i32, usize)> {
+/// The quantum that is tried first: without it, asking for less velocity error would leave the phase as it is.
+fn first_quantum(velocity_tolerance: f64) -> i32 {
+    let mut quantum = COARSEST_QUANTUM;
+    while quantum > COARSEST_QUANTUM - FINER_QUANTA && power_of_two(quantum) > velocity_tolerance * 40.0 {
+        quantum -= 1;
+    }
+    quantum
+}
+
+/// Coarsest quantum (as a power of two, not above `first` where that holds the positions) and lowest degree with
+/// which the velocity is within `tolerance`, in metres per half span.
+fn storage(series: &[[f64; FIT_POINTS]; 3], tolerance: f64, first: i32) -> Option<(i32, usize)> {
     // Every order that may be stored must fit its 32 bits: the third is stored finer than the first.
     let held = |&quantum: &i32| {
         series.iter().all(|axis| {
@@ -303,7 +315,7 @@ fn storage(series: &[[f64; FIT_POINTS]; 3], tolerance: f64) -> Option<(i32, usiz
             stored.all(|(order, &value)| quantise(value, order, quantum).abs() < LARGEST_FIELD)
         })
     };
-    let coarsest = (COARSEST_QUANTUM..MOST_QUANTUM).find(held)?;
+    let coarsest = (first..MOST_QUANTUM).find(held)?;
     (coarsest - FINER_QUANTA..=coarsest).rev().take_while(held).find_map(|quantum| {
         let error = |degree| {
             series.iter().fold(0.0_f64, |most, axis| most.max(velocity_error(axis, degree, quantum)))

@@ -221,13 +221,14 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         shifted_right(delay.to_bits(), u32::from(self.delay_shift)) as i32
     }
 
-    /// Largest error of [`Self::mean`] beyond the delays' own, in cycles per clock: W0 and two roundings down.
-    pub(super) fn mean_resolution(&self) -> f64 {
+    /// Largest error of an interval's mean step beyond the delays' own, in cycles per clock: W0 and two roundings
+    /// down. For a proof; set-up only.
+    pub fn mean_resolution(&self) -> f64 {
         libm::ldexp(2.5, -64)
     }
 
-    /// What dropping bits of the delay can add to a difference, in seconds.
-    pub(super) fn delay_resolution(&self) -> f64 {
+    /// What dropping bits of the delay can add to a difference, in seconds. For a proof; set-up only.
+    pub fn delay_resolution(&self) -> f64 {
         libm::ldexp(1.0, i32::from(self.delay_shift) - Delay::FRACTION_BITS as i32)
     }
 

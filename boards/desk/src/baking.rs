@@ -12,13 +12,17 @@ use anyhow::{Context, anyhow, ensure};
 use chrono::{DateTime, Utc};
 use shiftkeel::pass::bake::{Audit, Request, audit, bake_arc};
 use shiftkeel::pass::{
-    Arc, ArcModel, ArcSettings, Direction as Signal, Geometry, MAX_ARC_WORDS, PassTable, Site as Ground, TaggedAt,
+    Arc, ArcError, ArcModel, ArcSettings, Direction as Signal, Geometry, MAX_ARC_WORDS, PassTable, Site as Ground, TaggedAt,
 };
 use shiftkeel::time::GpsTime;
 use shiftkeel::tuning::Bound;
 
 /// How far the arc reaches beyond the table at both ends, s.
 const ARC_MARGIN: f64 = 5.0;
+/// Largest velocity error of an arc that is tried first, mm/s.
+const ARC_MILLIMETRES: f64 = 0.1;
+/// Where trying looser ones ends, m/s.
+const LOOSEST_ARC: f64 = 0.05;
 /// How far a pass is searched for, days.
 const SEARCH_DAYS: i64 = 14;
 /// Words that the largest table takes.
@@ -28,10 +32,10 @@ const ARC_LOOKS: u32 = 1024;
 /// Factor on the largest of these: the residual is a polynomial of degree 27 at most beside the noise, so 1024
 /// places leave out below 1 %; the rest is reserve.
 const ARC_MARGIN_FACTOR: f64 = 1.25;
-/// Noise of the orbit's derivative, as a part of c (see [`Orbit::derivative`]).
-const DERIVATIVE_NOISE: f64 = 4e-13;
 /// Jumps of SGP4's own position, m (its Kepler iteration ends at 1e-12 rad).
 const POSITION_NOISE: f64 = 7e-6;
+/// What they make at worst of the differences in [`Orbit::derivative`], m/s: weights 2 (45 + 9 + 1) / 60 over 0.5 s.
+const VELOCITY_NOISE: f64 = POSITION_NOISE * 110.0 / 30.0;
 
 /// Which pass.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -51,8 +55,8 @@ pub struct Order {
     pub millihertz: f64,
     /// Largest phase error of the table, cycles.
     pub cycles: f64,
-    /// Largest velocity error of the arc, mm/s on each axis.
-    pub arc_millimetres: f64,
+    /// Largest velocity error of the arc, mm/s on each axis; without it 0.1, or what the pass allows.
+    pub arc_millimetres: Option<f64>,
     /// Which way the signal goes.
     pub direction: Direction,
     /// End at which time is read.
@@ -282,12 +286,21 @@ fn fit(pass: &Pass, set: &ElementSet, order: &Order) -> anyhow::Result<Vec<u32>>
         object: set.number,
         element_epoch: gps(set.epoch)?,
         model: ArcModel::Sgp4,
-        velocity_tolerance: order.arc_millimetres * 1e-3,
+        velocity_tolerance: 0.0,
     };
     let mut words = [0; MAX_ARC_WORDS];
-    let arc = Arc::fit(&mut words, &settings, position)
-        .with_context(|| format!("no arc over the {:.0} s of this pass", 2.0 * half))?;
-    Ok(arc.words().to_vec())
+    let mut tolerance = order.arc_millimetres.unwrap_or(ARC_MILLIMETRES) * 1e-3;
+    loop {
+        let settings = ArcSettings { velocity_tolerance: tolerance, ..settings };
+        match Arc::fit(&mut words, &settings, position) {
+            Ok(arc) => return Ok(arc.words().to_vec()),
+            // A long pass is held less closely, unless it was said how closely.
+            Err(ArcError::TooCurved) if order.arc_millimetres.is_none() && tolerance < LOOSEST_ARC => tolerance *= 2.0,
+            Err(error) => {
+                return Err(error).with_context(|| format!("no arc over the {:.0} s of this pass", 2.0 * half));
+            }
+        }
+    }
 }
 
 /// How far the arc may be from the orbit, along the line of sight of the site.
@@ -316,7 +329,7 @@ fn arc_bound(pass: &Pass, arc: &Arc<'_>, order: &Order) -> anyhow::Result<Bound>
     let legs = if order.direction == Direction::TwoWay { 2.0 } else { 1.0 };
     let wavelengths = legs * order.carrier / SPEED_OF_LIGHT;
     Ok(Bound {
-        hertz: wavelengths * (ARC_MARGIN_FACTOR * rate + DERIVATIVE_NOISE * SPEED_OF_LIGHT),
+        hertz: wavelengths * (ARC_MARGIN_FACTOR * rate + VELOCITY_NOISE),
         cycles: wavelengths * (ARC_MARGIN_FACTOR * range + POSITION_NOISE),
     })
 }

@@ -5,6 +5,8 @@
 //! | [`curve`] | a motion held as polynomials |
 //! | [`oscillator`] | the crate's channel, steering and oscillator |
 //! | [`stages`] | each stage against the one before it |
+//! | [`estimates`] | steering by range-rate estimates instead of a table |
+//! | [`lateness`] | a spacecraft that is later than its elements say |
 //! | [`alternatives`] | what is commonly done instead |
 //! | [`plot`] | the picture |
 //! | [`report`] | what is printed, and `summary.json` |
@@ -13,6 +15,8 @@
 
 pub mod alternatives;
 pub mod curve;
+pub mod estimates;
+pub mod lateness;
 pub mod oscillator;
 pub mod plot;
 pub mod report;
@@ -23,10 +27,12 @@ use crate::geometric::Direction;
 use crate::vacuum::VacuumModel;
 use anyhow::{Context, ensure};
 use curve::Curve;
+use estimates::{Course, Followed, Stream};
 use oscillator::{Carrier, Oscillator, Run, Tuning};
 use shiftkeel::frequency::Frequency;
 use shiftkeel::nco::Nco;
 use shiftkeel::pass::PassTable;
+use shiftkeel::pass::bake::audit;
 use shiftkeel::rapidity::Motion;
 use shiftkeel::time::GpsTime;
 use shiftkeel::tuning::{Proven, ProvenPart};
@@ -34,6 +40,11 @@ use stages::{Bench, Heard, Rule, Seen, Stages, wrapped};
 
 /// Parts of an interval that are looked at, beside its last clock.
 const LOOKS: u32 = 4;
+/// Time over which the audit of the table takes a slope, s: long enough that the rounding of two delays does not
+/// show in it, short beside what a polynomial of a table does.
+const AUDIT_STEP: f64 = 0.1;
+/// Steps of the audit at most.
+const MOST_AUDITED: f64 = 50_000.0;
 /// Columns of the picture.
 const COLUMNS: usize = 720;
 
@@ -48,6 +59,24 @@ pub struct Column {
     pub hertz: [f64; 2],
     /// Least and largest phase error, cycles.
     pub cycles: [f64; 2],
+}
+
+impl Column {
+    /// Columns over a span (first instant and length), nothing seen yet.
+    fn empty(truth: &Heard<'_>, (origin, length): (f64, f64), count: usize) -> Vec<Self> {
+        let column = |at: usize| {
+            let time = origin + length * (at as f64 + 0.5) / count as f64;
+            let none = [f64::INFINITY, f64::NEG_INFINITY];
+            Self { time, shift: truth.shift(time), hertz: none, cycles: none }
+        };
+        (0..count).map(column).collect()
+    }
+
+    /// Takes in a frequency error and a band for the third panel.
+    fn take(&mut self, hertz: f64, [least, most]: [f64; 2]) {
+        self.hertz = [self.hertz[0].min(hertz), self.hertz[1].max(hertz)];
+        self.cycles = [self.cycles[0].min(least), self.cycles[1].max(most)];
+    }
 }
 
 /// What a rehearsal found.
@@ -159,7 +188,7 @@ impl<'a> Rehearsal<'a> {
             arc: self.heard(&self.arc),
             carrier,
             oscillator: self.oscillator,
-            joint: carrier.hertz() * (-38f64).exp2(),
+            joint: carrier.hertz() * (-40f64).exp2(),
         };
         let start = self.table.start();
         let origin = start.seconds_since(self.baked.pass.reference_gps()?);
@@ -176,7 +205,12 @@ impl<'a> Rehearsal<'a> {
             squares: 0.0,
             origin,
         };
-        walk.outcome.stages.read(&bench, origin, read(&motion));
+        let geometry = self.baked.geometry(0.0)?;
+        let length = walk.outcome.span.1 - origin;
+        let audit = audit(&self.table, AUDIT_STEP.max(length / MOST_AUDITED), |t| {
+            geometry.delay_and_rapidity(origin + t).0
+        })?;
+        walk.outcome.stages = Stages::begin(&bench, &audit, origin, read(&motion));
         for tick in 1..=ticks {
             let clocks = u64::from(self.oscillator.clocks);
             let (grid, fraction) = carrier.grid(tick * clocks);
@@ -191,14 +225,30 @@ impl<'a> Rehearsal<'a> {
         Ok(walk.outcome)
     }
 
+    /// Steers by a stream of estimates instead of the table, over the table's span.
+    ///
+    /// # Errors
+    /// When the crate refuses a setting or a tick, or nothing could be steered.
+    pub fn follow(&self, stream: &Stream) -> anyhow::Result<Followed> {
+        let (frequency, carrier) = self.carrier()?;
+        let tuning = Tuning::new(frequency, self.baked.order.direction, &self.oscillator)?;
+        let start = self.table.start();
+        let span = self.table.end().to_bits().wrapping_sub(start.to_bits());
+        let course = Course {
+            truth: self.heard(&self.truth),
+            carrier,
+            oscillator: self.oscillator,
+            start,
+            origin: start.seconds_since(self.baked.pass.reference_gps()?),
+            ticks: carrier.intervals(span, self.oscillator.clocks),
+            proven: tuning.rounding(carrier.hertz(), &self.oscillator),
+        };
+        ensure!(course.ticks > 0, "the pass is shorter than one interval of {} s", self.oscillator.interval());
+        estimates::follow(&course, stream, |motion| Ok(Run::begin(tuning, &self.oscillator, motion)?))
+    }
+
     fn empty(&self, ticks: u64, origin: f64, proven: Proven) -> Outcome {
         let length = ticks as f64 * self.oscillator.interval();
-        let columns = COLUMNS.min(ticks as usize);
-        let column = |at: usize| {
-            let time = origin + length * (at as f64 + 0.5) / columns as f64;
-            let none = [f64::INFINITY, f64::NEG_INFINITY];
-            Column { time, shift: self.heard(&self.truth).shift(time), hertz: none, cycles: none }
-        };
         Outcome {
             ticks,
             instants: 0,
@@ -210,7 +260,7 @@ impl<'a> Rehearsal<'a> {
             retunes: 0,
             span: (origin, origin + length),
             reference_noise: self.reference_noise,
-            columns: (0..columns).map(column).collect(),
+            columns: Column::empty(&self.heard(&self.truth), (origin, length), COLUMNS.min(ticks as usize)),
         }
     }
 }

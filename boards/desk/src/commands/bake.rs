@@ -42,15 +42,15 @@ pub struct PassArguments {
     /// Carrier in hertz for which the tolerances hold
     #[arg(long, value_name = "HZ", default_value_t = 437e6, allow_hyphen_values = true)]
     pub carrier: f64,
-    /// Largest frequency error of the table, millihertz
-    #[arg(long, value_name = "MHZ", default_value_t = 10.0, allow_hyphen_values = true)]
-    pub millihertz: f64,
-    /// Largest phase error of the table, cycles
-    #[arg(long, value_name = "CYCLES", default_value_t = 0.015, allow_hyphen_values = true)]
-    pub cycles: f64,
-    /// Largest velocity error of the arc on each axis, mm/s
-    #[arg(long, value_name = "MM_S", default_value_t = 0.4, allow_hyphen_values = true)]
-    pub arc_millimetres: f64,
+    /// Largest frequency error of the table, millihertz [default: 10, above 437 MHz in proportion]
+    #[arg(long, value_name = "MILLIHERTZ", allow_hyphen_values = true)]
+    pub millihertz: Option<f64>,
+    /// Largest phase error of the table, cycles [default: 0.01, above 437 MHz in proportion]
+    #[arg(long, value_name = "CYCLES", allow_hyphen_values = true)]
+    pub cycles: Option<f64>,
+    /// Largest velocity error of the arc on each axis, mm/s [default: 0.1, or what a long pass allows]
+    #[arg(long, value_name = "MM_S", allow_hyphen_values = true)]
+    pub arc_millimetres: Option<f64>,
     /// Which way the signal goes
     #[arg(long, value_enum, default_value = "down")]
     pub direction: Direction,
@@ -67,15 +67,19 @@ impl PassArguments {
     pub fn order(&self, tagged_at: TaggedAt, lateness_partial: bool) -> anyhow::Result<Order> {
         super::check_carrier(self.carrier)?;
         super::check_dut1(self.dut1)?;
-        for (name, value) in
-            [("--millihertz", self.millihertz), ("--cycles", self.cycles), ("--arc-millimetres", self.arc_millimetres)]
-        {
+        let given = [
+            ("--millihertz", self.millihertz),
+            ("--cycles", self.cycles),
+            ("--arc-millimetres", self.arc_millimetres),
+        ];
+        for (name, value) in given.into_iter().filter_map(|(name, value)| Some((name, value?))) {
             ensure!(value > 0.0 && value.is_finite(), "{name} {value} is no tolerance; give a number above 0");
         }
+        let scale = (self.carrier / 437e6).max(1.0);
         Ok(Order {
             carrier: self.carrier,
-            millihertz: self.millihertz,
-            cycles: self.cycles,
+            millihertz: self.millihertz.unwrap_or(10.0 * scale),
+            cycles: self.cycles.unwrap_or(0.01 * scale),
             arc_millimetres: self.arc_millimetres,
             direction: self.direction,
             tagged_at,

@@ -7,10 +7,14 @@ use crate::elements::{ElementFile, ElementSet};
 use crate::frames::Site;
 use crate::instant;
 use crate::rehearsal::oscillator::Oscillator;
-use crate::rehearsal::report::Summary;
-use crate::rehearsal::{Outcome, Rehearsal, alternatives, plot};
+use crate::geometric::Direction;
+use crate::rehearsal::estimates::Stream;
+use crate::rehearsal::report::{FollowedSummary, Summary};
+use crate::rehearsal::{Rehearsal, alternatives, lateness, plot};
 use anyhow::{Context, anyhow, bail, ensure};
+use clap::ValueEnum;
 use indicatif::{ProgressBar, ProgressStyle};
+use serde::Serialize;
 use shiftkeel::pass::{PassTable, TaggedAt};
 use std::fmt::Write as _;
 use std::path::{Path, PathBuf};
@@ -25,6 +29,15 @@ const ELEMENTS: &str = "\
 const SITE: &str = "45.0,7.5,300";
 /// A time inside its pass.
 const TIME: &str = "2026-06-01T12:11:55Z";
+
+/// What steers.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Source {
+    /// A pass table
+    Table,
+    /// Range-rate estimates through the velocity filter
+    Estimates,
+}
 
 /// Two numbers with a comma between.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -53,7 +66,9 @@ than 0.1 of the whole.
 Examples:
   shiftkeel rehearse --elements pass.txt --site 45.0,7.5,300 --at 2026-06-01T12:12:00Z --carrier 145.9e6
   shiftkeel rehearse --clock 100e6 --tick 0.001 --bits 32 --millihertz 1
-  shiftkeel rehearse --clock 25e6 --tick 0.05 --bits 28 --deadband 5 --quiet 2,0.4")]
+  shiftkeel rehearse --clock 25e6 --tick 0.05 --bits 28 --deadband 5 --quiet 2,0.4
+  shiftkeel rehearse --late 3
+  shiftkeel rehearse --source estimates --estimates 1 --noise 0.5 --gap 300,20 --outliers 0.02")]
 pub struct RehearseArguments {
     /// Two-line element file, with one or many objects; without it the invented pass
     #[arg(long, value_name = "FILE")]
@@ -85,6 +100,27 @@ pub struct RehearseArguments {
     /// No retuning for LENGTH seconds out of every EVERY; only the frequency is then steered
     #[arg(long, value_name = "EVERY,LENGTH")]
     pub quiet: Option<Pair>,
+    /// What steers: a table, or range-rate estimates through the velocity filter
+    #[arg(long, value_enum, default_value = "table")]
+    pub source: Source,
+    /// Estimates a second
+    #[arg(long, value_name = "PER_SECOND", default_value_t = 10.0)]
+    pub estimates: f64,
+    /// Standard deviation of an estimate, m/s
+    #[arg(long, value_name = "M_S", default_value_t = 0.1)]
+    pub noise: f64,
+    /// No estimates for LENGTH seconds, FROM seconds after the start
+    #[arg(long, value_name = "FROM,LENGTH")]
+    pub gap: Option<Pair>,
+    /// Part of the estimates that is wildly wrong
+    #[arg(long, value_name = "PART", default_value_t = 0.01)]
+    pub outliers: f64,
+    /// Seed of the noise
+    #[arg(long, default_value_t = 1)]
+    pub seed: u64,
+    /// Seconds by which the spacecraft is later in its orbit than its elements say, up to 8
+    #[arg(long, value_name = "SECONDS", allow_hyphen_values = true)]
+    pub late: Option<f64>,
     /// Folder for summary.json and the picture
     #[arg(long, value_name = "DIR", default_value = "target/rehearsal")]
     pub out: PathBuf,
@@ -99,7 +135,8 @@ pub fn run(arguments: &RehearseArguments) -> anyhow::Result<()> {
     let oscillator =
         Oscillator::new(arguments.clock, arguments.tick, arguments.bits, arguments.deadband, quiet)?;
     let (set, site, pass) = scenario(arguments)?;
-    let order = pass.order(TaggedAt::Ground, false)?;
+    arguments.late.map_or(Ok(()), lateness::check)?;
+    let order = pass.order(TaggedAt::Ground, arguments.late.is_some())?;
     let found = pass.pass(&set, site)?;
     if let Some(text) = ElementAge::new(&set, found.reference()).warning(&set.label(), Some(order.carrier)) {
         super::warn(&text);
@@ -109,16 +146,46 @@ pub fn run(arguments: &RehearseArguments) -> anyhow::Result<()> {
     let table = given.as_deref().unwrap_or(&baked.table);
     let table = PassTable::new(table).with_context(|| name_of(arguments))?;
     let rehearsal = Rehearsal::new(&baked, table, oscillator).with_context(|| name_of(arguments))?;
+    match arguments.source {
+        Source::Table => by_table(arguments, &set, &rehearsal),
+        Source::Estimates => by_estimates(arguments, &set, &rehearsal),
+    }
+}
+
+/// Steered by the table.
+fn by_table(arguments: &RehearseArguments, set: &ElementSet, rehearsal: &Rehearsal<'_>) -> anyhow::Result<()> {
     let progress = bar();
     let outcome = rehearsal.run(|part| progress.set_position((part * 1000.0) as u64))?;
     progress.finish_and_clear();
-    let alternatives = alternatives::all(&rehearsal, outcome.span)?;
-    let summary = Summary::new(&set, &rehearsal, &outcome, alternatives);
-    let heading = heading(&set, &rehearsal, &outcome)?;
-    keep(&arguments.out, &summary, &heading, &outcome)?;
-    super::print(&format!("{}\n{}", heading.join("\n"), summary.text()))?;
-    super::print(&format!("Written: summary.json and rehearsal.svg in {}\n", arguments.out.display()))?;
+    let alternatives = alternatives::all(rehearsal, outcome.span)?;
+    let late = arguments.late.map(|late| Ok::<_, anyhow::Error>((late, lateness::rows(rehearsal, rehearsal.baked, late)?)));
+    let summary = Summary::new(set, rehearsal, &outcome, alternatives, late.transpose()?);
+    let heading = heading(set, rehearsal, outcome.span)?;
+    super::print(&format!("{}\n  retuned {} times\n\n{}", heading.join("\n"), outcome.retunes, summary.text()))?;
+    keep(&arguments.out, &summary, |path| plot::draw(path, &plot::of_table(&heading, &outcome)))?;
     verdict(&summary)
+}
+
+/// Steered by estimates.
+fn by_estimates(arguments: &RehearseArguments, set: &ElementSet, rehearsal: &Rehearsal<'_>) -> anyhow::Result<()> {
+    ensure!(
+        rehearsal.baked.order.direction == Direction::Down,
+        "estimates are measured on the downlink; leave --direction away"
+    );
+    let stream = Stream {
+        rate: arguments.estimates,
+        noise: arguments.noise,
+        gap: arguments.gap.map(|Pair(from, length)| (from, length)),
+        outliers: arguments.outliers,
+        seed: arguments.seed,
+    };
+    stream.check()?;
+    let followed = rehearsal.follow(&stream)?;
+    let summary = FollowedSummary::new(set, rehearsal, &stream, &followed);
+    let heading = heading(set, rehearsal, followed.span)?;
+    super::print(&format!("{}\n\n{}", heading.join("\n"), summary.text()))?;
+    keep(&arguments.out, &summary, |path| plot::draw(path, &plot::of_estimates(&heading, &followed)))?;
+    summary.verdict()
 }
 
 /// Elements, site and pass: the given ones, or the invented ones.
@@ -151,16 +218,16 @@ fn name_of(arguments: &RehearseArguments) -> String {
 }
 
 /// What is rehearsed, in a few lines; the first also heads the picture.
-fn heading(set: &ElementSet, rehearsal: &Rehearsal<'_>, outcome: &Outcome) -> anyhow::Result<Vec<String>> {
+fn heading(set: &ElementSet, rehearsal: &Rehearsal<'_>, span: (f64, f64)) -> anyhow::Result<Vec<String>> {
     let (baked, oscillator) = (rehearsal.baked, &rehearsal.oscillator);
     let (pass, order) = (&baked.pass, &baked.order);
     let way = match order.direction {
-        crate::geometric::Direction::Down => "down",
-        crate::geometric::Direction::Up => "up",
-        crate::geometric::Direction::TwoWay => "two-way",
+        Direction::Down => "down",
+        Direction::Up => "up",
+        Direction::TwoWay => "two-way",
     };
-    let shifts = outcome.columns.iter().map(|column| column.shift);
-    let (low, high) = shifts.fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), shift| (low.min(shift), high.max(shift)));
+    let truth = rehearsal.heard(&rehearsal.truth);
+    let (first, last) = (truth.shift(span.0), truth.shift(span.1));
     let mut device = format!("{} Hz clock, every {} s", oscillator.hertz(), oscillator.interval());
     match oscillator.bits {
         None => device += ", 64 bits, ramped",
@@ -181,9 +248,9 @@ fn heading(set: &ElementSet, rehearsal: &Rehearsal<'_>, outcome: &Outcome) -> an
             order.carrier * 1e-6
         ),
         format!(
-            "  {} to {}, highest {:.1} degrees, shift {high:+.1} to {low:+.1} Hz, at most {:.1} Hz/s",
-            pass.utc(outcome.span.0),
-            pass.utc(outcome.span.1),
+            "  {} to {}, highest {:.1} degrees, shift {first:+.1} to {last:+.1} Hz, at most {:.1} Hz/s",
+            pass.utc(span.0),
+            pass.utc(span.1),
             pass.highest.to_degrees(),
             rehearsal.table.extremes().rate * order.carrier
         ),
@@ -193,17 +260,18 @@ fn heading(set: &ElementSet, rehearsal: &Rehearsal<'_>, outcome: &Outcome) -> an
             rehearsal.table.words().len() * 4,
             rehearsal.table.segment_count()
         ),
-        format!("  oscillator: {device}; retuned {} times", outcome.retunes),
-        String::new(),
+        format!("  oscillator: {device}"),
     ])
 }
 
-fn keep(out: &Path, summary: &Summary, heading: &[String], outcome: &Outcome) -> anyhow::Result<()> {
+/// Writes summary and picture.
+fn keep(out: &Path, summary: &impl Serialize, draw: impl Fn(&Path) -> anyhow::Result<()>) -> anyhow::Result<()> {
     std::fs::create_dir_all(out)
         .map_err(|error| anyhow!("the folder {} cannot be made: {error}; give another --out", out.display()))?;
     let json = serde_json::to_string_pretty(summary)? + "\n";
     super::bake::write_whole(&out.join("summary.json"), json.as_bytes())?;
-    plot::draw(&out.join("rehearsal.svg"), heading.first().map_or("", String::as_str), outcome)
+    draw(&out.join("plot.svg"))?;
+    super::print(&format!("Written: summary.json and plot.svg in {}\n", out.display()))
 }
 
 /// A progress bar, seen on a terminal only.

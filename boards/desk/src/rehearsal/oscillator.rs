@@ -5,7 +5,7 @@ use anyhow::{Context, ensure};
 use shiftkeel::frequency::{Frequency, PhaseRamp, PhaseStep};
 use shiftkeel::pass::PassTable;
 use shiftkeel::rapidity::Motion;
-use shiftkeel::tuning::{Channel, Hold, Permission, Proven, RfPlan, Steering, Sweep, TuningError};
+use shiftkeel::tuning::{Bound, Channel, Hold, Permission, Proven, RfPlan, Steering, Sweep, TuningError};
 
 /// The oscillator and how it is steered.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -126,6 +126,19 @@ impl Tuning {
     }
 }
 
+impl Tuning {
+    /// What the channel's own rounding may do to the mean step of an interval, and to the phase with what is
+    /// carried forward, whatever motion it is fed with.
+    pub fn rounding(&self, carrier: f64, oscillator: &Oscillator) -> Bound {
+        let (delay, places) = match self {
+            Self::Receive(channel) => (channel.delay_resolution(), channel.mean_resolution()),
+            Self::Transmit(channel) => (channel.delay_resolution(), channel.mean_resolution()),
+        };
+        let cycles = carrier * delay;
+        Bound { hertz: cycles / oscillator.interval() + places * oscillator.hertz(), cycles }
+    }
+}
+
 /// What an interval's oscillator is given, and what the crate wanted it to be.
 #[derive(Clone, Copy, Debug)]
 pub struct Interval {
@@ -146,6 +159,7 @@ pub struct Interval {
 /// The crate's steering in progress.
 pub struct Run {
     tuning: Tuning,
+    clocks: u32,
     state: State,
     remainder: i64,
 }
@@ -169,7 +183,7 @@ impl Run {
                 State::Hold(holding(bits, &tuning, motion, deadband)?)
             }
         };
-        Ok(Self { tuning, state, remainder: 0 })
+        Ok(Self { tuning, clocks: oscillator.clocks, state, remainder: 0 })
     }
 
     /// Steers the coming interval, given the motion at its end.
@@ -184,7 +198,8 @@ impl Run {
                     Tuning::Receive(channel) => sweep.step(channel, motion)?,
                     Tuning::Transmit(channel) => sweep.step(channel, motion)?,
                 };
-                let made = swept.start.to_bits().wrapping_add((swept.change >> 1) as u64);
+                let change = swept.ramp.to_bits().wrapping_mul(i64::from(self.clocks));
+                let made = swept.start().to_bits().wrapping_add((change >> 1) as u64);
                 let (first, ramp) = (swept.first, swept.ramp);
                 Interval { first, ramp, mean: 0, made, retuned: true, remainder: sweep.remainder() }
             }

@@ -1,149 +1,249 @@
-//! The picture: shift, and errors of frequency and phase with their bounds, over time.
+//! The picture: shift, and errors with their bounds, over time.
 
+use super::estimates::Followed;
 use super::{Column, Outcome, report};
 use anyhow::anyhow;
 use plotters::coord::Shift;
 use plotters::prelude::*;
+use plotters::style::text_anchor::{HPos, Pos, VPos};
 use std::path::Path;
 
-const SIZE: (u32, u32) = (960, 900);
+/// Drawn this much larger than shown: the drawing counts in whole pixels, and curves want finer ones.
+const FINER: u32 = 8;
+/// Shown size.
+const WIDTH: u32 = 960;
+const HEADING: u32 = 86;
+const PANEL: u32 = 250;
 /// Ink and its lighter companions; the two colours keep apart for any kind of colour vision (Okabe and Ito).
 const INK: RGBColor = RGBColor(38, 42, 48);
-const FAINT: RGBColor = RGBColor(224, 226, 230);
+const QUIET: RGBColor = RGBColor(98, 104, 112);
+const FAINT: RGBColor = RGBColor(222, 225, 229);
 const SEEN: RGBColor = RGBColor(0, 114, 178);
 const BOUND: RGBColor = RGBColor(213, 94, 0);
 
 type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
+type Drawn = Result<(), Box<dyn std::error::Error>>;
 
-/// One panel: a curve or a band of least and largest, and a bound to both sides.
-struct Panel<'a> {
+/// What limits an error.
+#[derive(Clone, Debug)]
+enum Limit {
+    /// Nothing.
+    None,
+    /// The same to both sides all along: what it is called, and how much.
+    Level(String, f64),
+    /// A band of its own: what it is called.
+    Band(String, Vec<(f64, [f64; 2])>),
+}
+
+/// One panel: a curve, or a band of least and largest, and its limit.
+#[derive(Clone, Debug)]
+struct Panel {
     title: String,
-    unit: &'a str,
-    band: Vec<(f64, [f64; 2])>,
-    bound: Option<f64>,
+    unit: &'static str,
+    seen: Vec<(f64, [f64; 2])>,
+    limit: Limit,
     largest: f64,
+}
+
+/// All of it.
+#[derive(Clone, Debug)]
+pub struct Picture {
+    heading: Vec<String>,
+    span: (f64, f64),
+    panels: Vec<Panel>,
+}
+
+/// A column's band, scaled.
+fn band(columns: &[Column], pick: fn(&Column) -> [f64; 2], scale: f64) -> Vec<(f64, [f64; 2])> {
+    columns.iter().map(|column| (column.time, pick(column).map(|value| value * scale))).collect()
+}
+
+fn shift_panel(columns: &[Column]) -> Panel {
+    Panel {
+        title: "Shift of the carrier".to_string(),
+        unit: "kHz",
+        seen: band(columns, |column| [column.shift; 2], 1e-3),
+        limit: Limit::None,
+        largest: columns.iter().fold(0.0, |most, column| column.shift.abs().max(most)) * 1e-3,
+    }
+}
+
+/// Hertz or millihertz, whichever gives the shorter numbers.
+fn unit_of(hertz: f64) -> (&'static str, f64) {
+    if hertz < 0.5 { ("mHz", 1e3) } else { ("Hz", 1.0) }
+}
+
+/// Of a rehearsal by a table.
+pub fn of_table(heading: &[String], outcome: &Outcome) -> Picture {
+    let total = outcome.proven.total();
+    let (unit, scale) = unit_of(total.hertz);
+    let worst = report::hertz(outcome.worst.hertz);
+    let mut panels = vec![
+        shift_panel(&outcome.columns),
+        Panel {
+            title: format!("Frequency error: least and largest; worst {worst}, proven {}", report::hertz(total.hertz)),
+            unit,
+            seen: band(&outcome.columns, |column| column.hertz, scale),
+            limit: Limit::Level("proven".to_string(), total.hertz * scale),
+            largest: outcome.worst.hertz * scale,
+        },
+    ];
+    if total.cycles.is_finite() {
+        panels.push(Panel {
+            title: format!(
+                "Phase error: worst {:.4} cycle, proven {:.4} cycle",
+                outcome.worst.cycles, total.cycles
+            ),
+            unit: "millicycles",
+            seen: band(&outcome.columns, |column| column.cycles, 1e3),
+            limit: Limit::Level("proven".to_string(), total.cycles * 1e3),
+            largest: outcome.worst.cycles * 1e3,
+        });
+    }
+    Picture { heading: heading.to_vec(), span: outcome.span, panels }
+}
+
+/// Of a rehearsal by estimates.
+pub fn of_estimates(heading: &[String], followed: &Followed) -> Picture {
+    let [median, _] = followed.stated_hertz;
+    let (unit, scale) = unit_of(median);
+    // A long gap would squeeze everything else: the panel ends at some medians.
+    let most = (6.0 * median).min(followed.worst_hertz.max(2.0 * median)) * scale;
+    let error = Panel {
+        title: format!(
+            "Frequency error: worst {}, rms {}; not proven, the stated band holds in about 95 %",
+            report::hertz(followed.worst_hertz),
+            report::hertz(followed.rms_hertz)
+        ),
+        unit,
+        seen: band(&followed.columns, |column| column.hertz, scale),
+        limit: Limit::Band("stated".to_string(), band(&followed.columns, |column| column.cycles, scale)),
+        largest: most,
+    };
+    Picture { heading: heading.to_vec(), span: followed.span, panels: vec![shift_panel(&followed.columns), error] }
 }
 
 /// Draws into an SVG file.
 ///
 /// # Errors
 /// When the file cannot be written.
-pub fn draw(path: &Path, heading: &str, outcome: &Outcome) -> anyhow::Result<()> {
+pub fn draw(path: &Path, picture: &Picture) -> anyhow::Result<()> {
+    let (width, height) = (WIDTH, HEADING + PANEL * picture.panels.len() as u32 + 20);
     let mut svg = String::new();
     {
-        let root = SVGBackend::with_string(&mut svg, SIZE).into_drawing_area();
-        paint(&root, heading, outcome).map_err(|error| anyhow!("the picture cannot be drawn: {error}"))?;
+        let root = SVGBackend::with_string(&mut svg, (width * FINER, height * FINER)).into_drawing_area();
+        picture.paint(&root).map_err(|error| anyhow!("the picture cannot be drawn: {error}"))?;
     }
-    std::fs::write(path, svg).map_err(|error| anyhow!("{} cannot be written: {error}", path.display()))
+    let drawn = format!("width=\"{}\" height=\"{}\"", width * FINER, height * FINER);
+    let shown = format!("width=\"{width}\" height=\"{height}\"");
+    let svg = svg.replacen(&drawn, &shown, 1);
+    crate::commands::bake::write_whole(path, svg.as_bytes())
 }
 
-fn paint(root: &Area<'_>, heading: &str, outcome: &Outcome) -> Result<(), Box<dyn std::error::Error>> {
-    root.fill(&WHITE)?;
-    let root = root.margin(14, 10, 12, 18);
-    let (top, rest) = root.split_vertically(34);
-    top.draw_text(heading, &("sans-serif", 19).into_font().color(&INK).into_text_style(&root), (6, 4))?;
-    let total = outcome.proven.total();
-    let band = |pick: fn(&Column) -> [f64; 2], scale: f64| {
-        outcome.columns.iter().map(|column| (column.time, pick(column).map(|value| value * scale))).collect::<Vec<_>>()
-    };
-    let shift = |column: &Column| [column.shift, column.shift];
-    let mut panels = vec![
-        Panel {
-            title: "Shift of the carrier".to_string(),
-            unit: "kHz",
-            band: band(shift, 1e-3),
-            bound: None,
-            largest: outcome.columns.iter().fold(0.0, |most, column| column.shift.abs().max(most)) * 1e-3,
-        },
-        Panel {
-            title: format!(
-                "Frequency error: worst {} of {} proven",
-                report::hertz(outcome.worst.hertz),
-                report::hertz(total.hertz)
-            ),
-            unit: "mHz",
-            band: band(|column| column.hertz, 1e3),
-            bound: Some(total.hertz * 1e3),
-            largest: outcome.worst.hertz * 1e3,
-        },
-    ];
-    if total.cycles.is_finite() {
-        panels.push(Panel {
-            title: format!(
-                "Phase error: worst {:.4} of {:.4} cycle proven",
-                outcome.worst.cycles, total.cycles
-            ),
-            unit: "millicycles",
-            band: band(|column| column.cycles, 1e3),
-            bound: Some(total.cycles * 1e3),
-            largest: outcome.worst.cycles * 1e3,
-        });
-    }
-    let areas = rest.split_evenly((panels.len(), 1));
-    let last = panels.len() - 1;
-    for (at, (panel, area)) in panels.iter().zip(&areas).enumerate() {
-        panel.paint(area, outcome.span, at == last)?;
-    }
-    root.present()?;
-    Ok(())
+/// A length of the shown picture in the drawing's pixels.
+fn px(length: f64) -> i32 {
+    (length * f64::from(FINER)) as i32
 }
 
-impl Panel<'_> {
-    fn paint(
-        &self,
-        area: &Area<'_>,
-        span: (f64, f64),
-        names_time: bool,
-    ) -> Result<(), Box<dyn std::error::Error>> {
-        let reach = self.bound.unwrap_or(0.0).max(self.largest) * 1.15;
-        let from = 0.0;
-        let to = span.1 - span.0;
+fn font(size: f64, colour: RGBColor) -> TextStyle<'static> {
+    ("sans-serif", size * f64::from(FINER)).into_font().color(&colour)
+}
+
+impl Picture {
+    fn paint(&self, root: &Area<'_>) -> Drawn {
+        root.fill(&WHITE)?;
+        let (top, rest) = root.split_vertically(px(f64::from(HEADING)));
+        for (line, text) in self.heading.iter().enumerate() {
+            let style = if line == 0 { font(18.0, INK) } else { font(12.0, QUIET) };
+            let below = if line == 0 { 12.0 } else { 22.0 + 15.0 * line as f64 };
+            top.draw_text(text.trim(), &style, (px(20.0), px(below)))?;
+        }
+        let rest = rest.margin(0, px(10.0), px(10.0), px(20.0));
+        let areas = rest.split_evenly((self.panels.len(), 1));
+        let last = self.panels.len() - 1;
+        for (at, (panel, area)) in self.panels.iter().zip(&areas).enumerate() {
+            panel.paint(area, self.span, at == last)?;
+        }
+        root.present()?;
+        Ok(())
+    }
+}
+
+impl Panel {
+    fn reach(&self) -> f64 {
+        let limit = if let Limit::Level(_, level) = &self.limit { *level } else { 0.0 };
+        limit.max(self.largest) * 1.2
+    }
+
+    fn paint(&self, area: &Area<'_>, span: (f64, f64), names_time: bool) -> Drawn {
+        let reach = self.reach();
+        let length = span.1 - span.0;
+        area.draw_text(&self.title, &font(13.0, INK), (px(66.0), px(4.0)))?;
         let mut chart = ChartBuilder::on(area)
-            .caption(&self.title, ("sans-serif", 15).into_font().color(&INK))
-            .x_label_area_size(if names_time { 44 } else { 24 })
-            .y_label_area_size(72)
-            .margin_bottom(6)
-            .build_cartesian_2d(from..to, -reach..reach)?;
-        let label = ("sans-serif", 13).into_font().color(&INK);
+            .margin_top(px(24.0))
+            .margin_right(px(58.0))
+            .x_label_area_size(px(if names_time { 38.0 } else { 20.0 }))
+            .y_label_area_size(px(66.0))
+            .build_cartesian_2d(0.0..length, -reach..reach)?;
         let time_text = |seconds: &f64| format!("{seconds:.0}");
         let value_text = |value: &f64| signed(*value, reach);
         let mut mesh = chart.configure_mesh();
         mesh.light_line_style(TRANSPARENT)
-            .bold_line_style(FAINT)
-            .axis_style(INK)
-            .label_style(label.clone())
-            .axis_desc_style(label)
+            .bold_line_style(FAINT.stroke_width(FINER))
+            .axis_style(QUIET.stroke_width(FINER))
+            .label_style(font(11.5, INK))
+            .axis_desc_style(font(12.0, INK))
+            .set_all_tick_mark_size(px(4.0))
             .y_desc(self.unit)
             .y_labels(7)
             .x_labels(10)
             .x_label_formatter(&time_text)
             .y_label_formatter(&value_text);
         if names_time {
-            mesh.x_desc("seconds from the start of the table");
+            mesh.x_desc("seconds after the start");
         }
         mesh.draw()?;
-        let place = |time: f64| time - span.0;
-        let upper = self.band.iter().map(|(time, [_, most])| (place(*time), *most));
-        let lower = self.band.iter().rev().map(|(time, [least, _])| (place(*time), *least));
-        if self.bound.is_some() {
-            let outline: Vec<(f64, f64)> = upper.chain(lower).collect();
-            chart.draw_series(std::iter::once(Polygon::new(outline.clone(), SEEN.mix(0.35).filled())))?;
-            chart.draw_series(LineSeries::new(outline, SEEN.stroke_width(1)))?;
-        } else {
-            chart.draw_series(LineSeries::new(upper, SEEN.stroke_width(2)))?;
-        }
-        if let Some(bound) = self.bound {
-            for side in [bound, -bound] {
-                chart.draw_series(DashedLineSeries::new([(from, side), (to, side)], 7, 5, BOUND.stroke_width(2)))?;
+        let inside = |value: f64| value.clamp(-reach, reach);
+        let outline = |band: &[(f64, [f64; 2])]| {
+            let upper = band.iter().map(|(time, [_, most])| (time - span.0, inside(*most)));
+            let lower = band.iter().rev().map(|(time, [least, _])| (time - span.0, inside(*least)));
+            upper.chain(lower).collect::<Vec<_>>()
+        };
+        let beside = |text: &str, value: f64, colour: RGBColor| {
+            let style = font(11.5, colour).pos(Pos::new(HPos::Left, VPos::Center));
+            Text::new(text.to_string(), (length * 1.008, inside(value)), style)
+        };
+        match &self.limit {
+            Limit::None => {
+                let curve = self.seen.iter().map(|(time, [value, _])| (time - span.0, *value));
+                chart.draw_series(LineSeries::new(curve, SEEN.stroke_width(2 * FINER)))?;
+                return Ok(());
+            }
+            Limit::Level(name, level) => {
+                for side in [*level, -level] {
+                    let line = [(0.0, side), (length, side)];
+                    let style = BOUND.stroke_width(FINER * 3 / 2);
+                    chart.draw_series(DashedLineSeries::new(line, 7 * FINER, 5 * FINER, style))?;
+                    chart.plotting_area().draw(&beside(name, side, BOUND))?;
+                }
+            }
+            Limit::Band(name, band) => {
+                let shape = outline(band);
+                chart.draw_series([Polygon::new(shape, BOUND.mix(0.22).filled())])?;
+                let last = band.last().map_or(0.0, |(_, [_, most])| *most);
+                chart.plotting_area().draw(&beside(name, last, BOUND))?;
             }
         }
+        let shape = outline(&self.seen);
+        chart.draw_series([Polygon::new(shape.clone(), SEEN.mix(0.45).filled())])?;
+        chart.draw_series(LineSeries::new(shape, SEEN.stroke_width(FINER)))?;
         Ok(())
     }
 }
 
 /// A number of an axis, with its sign and the digits that the axis needs.
 fn signed(value: f64, reach: f64) -> String {
-    let digits = (1.0 - (reach / 4.0).log10().floor()).clamp(0.0, 6.0) as usize;
+    let digits = (1.0 - (reach / 2.0).log10().floor()).clamp(0.0, 6.0) as usize;
     let text = format!("{value:+.digits$}");
     if text.trim_matches(['+', '-', '0', '.']).is_empty() { "0".to_string() } else { text }
 }

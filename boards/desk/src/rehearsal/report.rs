@@ -1,10 +1,12 @@
 //! What a rehearsal prints, what it judges, and `summary.json`.
 
 use super::alternatives::Alternative;
+use super::estimates::{Followed, Stream};
 use super::oscillator::Oscillator;
 use super::{Outcome, Rehearsal, stages::Seen};
 use crate::age::ElementAge;
 use crate::elements::ElementSet;
+use anyhow::ensure;
 use serde::Serialize;
 use shiftkeel::tuning::{Assumed, Assumptions, Bound, Excluded, ProvenPart};
 use std::fmt::Write;
@@ -83,8 +85,19 @@ pub struct Summary {
     pub excluded: Vec<EstimateRow>,
     /// What is commonly done instead.
     pub alternatives: Vec<Alternative>,
+    /// How late the spacecraft is in truth, and what that costs.
+    pub late: Option<Late>,
     /// What the reference itself is uncertain by, Hz.
     pub reference_noise_hz: f64,
+}
+
+/// A late spacecraft.
+#[derive(Clone, Debug, Serialize)]
+pub struct Late {
+    /// Seconds later in its orbit than its elements say.
+    pub seconds: f64,
+    /// What it costs.
+    pub rows: Vec<Alternative>,
 }
 
 fn finite(value: f64) -> Option<f64> {
@@ -140,6 +153,7 @@ impl Summary {
         rehearsal: &Rehearsal<'_>,
         outcome: &Outcome,
         alternatives: Vec<Alternative>,
+        late: Option<(f64, Vec<Alternative>)>,
     ) -> Self {
         let pass = &rehearsal.baked.pass;
         let carrier = rehearsal.baked.order.carrier;
@@ -191,6 +205,7 @@ impl Summary {
                 EstimateRow { part: "troposphere", hz: excluded.troposphere },
             ],
             alternatives,
+            late: late.map(|(seconds, rows)| Late { seconds, rows }),
             reference_noise_hz: outcome.reference_noise.hertz,
         }
     }
@@ -235,10 +250,13 @@ impl Summary {
         text.push_str(&lines(self.assumed.iter().map(estimate)));
         writeln!(text, "\nEXCLUDED: not in the model; estimates above 10 degrees")?;
         text.push_str(&lines(self.excluded.iter().map(estimate)));
+        let measured = |row: &Alternative| vec![row.name.to_string(), hertz(row.worst_hz), hertz(row.rms_hz)];
+        if let Some(late) = &self.late {
+            writeln!(text, "\nLATE by {} s in truth: worst, rms of the table's shift", late.seconds)?;
+            text.push_str(&lines(late.rows.iter().map(measured)));
+        }
         writeln!(text, "\nINSTEAD, on the same pass: worst, rms")?;
-        text.push_str(&lines(
-            self.alternatives.iter().map(|row| vec![row.name.to_string(), hertz(row.worst_hz), hertz(row.rms_hz)]),
-        ));
+        text.push_str(&lines(self.alternatives.iter().map(measured)));
         writeln!(text)?;
         if self.within_bound {
             writeln!(text, "No instant was outside the bound.")?;
@@ -319,4 +337,117 @@ fn lines(rows: impl Iterator<Item = Vec<String>>) -> String {
 
 fn indented(text: &str) -> String {
     text.lines().map(|line| format!("  {line}\n")).collect()
+}
+
+/// What a rehearsal by estimates says.
+#[derive(Clone, Debug, Serialize)]
+pub struct FollowedSummary {
+    /// Name or number of the object.
+    pub object: String,
+    /// Carrier, Hz.
+    pub carrier_hz: f64,
+    /// UTC of the first instant.
+    pub start_utc: String,
+    /// Intervals steered.
+    pub ticks: u64,
+    /// Intervals without a prediction.
+    pub unsteered: u64,
+    /// Estimates that came, and how many of them were wildly wrong.
+    pub estimates: [u64; 2],
+    /// Standard deviation of an estimate, Hz.
+    pub noise_hz: f64,
+    /// The oscillator's mean frequency against the filter's word for it: worst, Hz.
+    pub worst_error_hz: f64,
+    /// What it may be at most, Hz.
+    pub proven_bound_hz: f64,
+    /// The same of the phase, with what is carried forward, cycles.
+    pub worst_error_cycles: f64,
+    /// What it may be at most, cycles.
+    pub proven_bound_cycles: f64,
+    /// Whether no interval was outside of these.
+    pub within_bound: bool,
+    /// Error against the truth: worst, Hz.
+    pub true_error_hz: f64,
+    /// Root of the mean square of it, Hz.
+    pub true_error_rms_hz: f64,
+    /// Uncertainty that the filter states (about 95 %): median and largest, Hz.
+    pub stated_hz: [f64; 2],
+    /// Part of the intervals inside it.
+    pub inside_stated: f64,
+}
+
+/// A stated 95 % that holds less often than this is not honest: many estimates share one error, so that a single
+/// pass scatters by some percent.
+const LEAST_INSIDE: f64 = 0.85;
+
+impl FollowedSummary {
+    /// Of a rehearsal.
+    pub fn new(set: &ElementSet, rehearsal: &Rehearsal<'_>, stream: &Stream, followed: &Followed) -> Self {
+        let pass = &rehearsal.baked.pass;
+        let carrier = rehearsal.baked.order.carrier;
+        Self {
+            object: set.label(),
+            carrier_hz: carrier,
+            start_utc: pass.utc(followed.span.0),
+            ticks: followed.ticks,
+            unsteered: followed.unsteered,
+            estimates: [followed.estimates, followed.outliers],
+            noise_hz: stream.noise * carrier / crate::SPEED_OF_LIGHT,
+            worst_error_hz: followed.steering.hertz,
+            proven_bound_hz: followed.proven.hertz,
+            worst_error_cycles: followed.steering.cycles,
+            proven_bound_cycles: followed.proven.cycles,
+            within_bound: followed.steering.is_within(&followed.proven),
+            true_error_hz: followed.worst_hertz,
+            true_error_rms_hz: followed.rms_hertz,
+            stated_hz: followed.stated_hertz,
+            inside_stated: followed.inside,
+        }
+    }
+
+    /// The blocks for reading.
+    pub fn text(&self) -> String {
+        let [estimates, outliers] = self.estimates;
+        let [median, largest] = self.stated_hz;
+        format!(
+            "PROVEN: the oscillator against the filter's word; {} intervals\n  mean frequency of an interval    {} seen \
+             of {}\n  phase, with what is carried on   {:.2e} seen of {:.2e} cycles\n\nASSUMED: the filter against the \
+             truth; {} estimates of {} each, {} of them wild\n  error        worst {}, rms {}\n  stated (95 %) median {}, \
+             largest {}; {:.1} % of the intervals were inside\n  {} intervals had no prediction\n",
+            thousands(self.ticks),
+            hertz(self.worst_error_hz),
+            hertz(self.proven_bound_hz),
+            self.worst_error_cycles,
+            self.proven_bound_cycles,
+            thousands(estimates),
+            hertz(self.noise_hz),
+            outliers,
+            hertz(self.true_error_hz),
+            hertz(self.true_error_rms_hz),
+            hertz(median),
+            hertz(largest),
+            self.inside_stated * 100.0,
+            thousands(self.unsteered),
+        )
+    }
+
+    /// Whether it stands.
+    ///
+    /// # Errors
+    /// When an interval was outside what is proven, or the stated uncertainty did not hold.
+    pub fn verdict(&self) -> anyhow::Result<()> {
+        ensure!(
+            self.within_bound,
+            "outside the proven bound: {:.3e} Hz seen of {:.3e} Hz",
+            self.worst_error_hz,
+            self.proven_bound_hz
+        );
+        ensure!(
+            self.inside_stated >= LEAST_INSIDE,
+            "the filter's stated uncertainty held in {:.1} % of the intervals only, {:.0} % are the least",
+            self.inside_stated * 100.0,
+            LEAST_INSIDE * 100.0
+        );
+        Ok(())
+    }
 }

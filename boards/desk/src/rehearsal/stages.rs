@@ -3,7 +3,7 @@
 //! | part | what is compared |
 //! |---|---|
 //! | arc | the arc seen from the site, with the orbit itself |
-//! | table | what the crate reads from the table, with the arc seen from the site |
+//! | table | the delays that the crate reads from the table, and their slope over a tenth of a second, with those of the arc seen from the site |
 //! | arithmetic | the mean step that the crate computes for an interval, with the same from exact delays, less what the table is off there |
 //! | word | the step that is made, with the mean step that was wanted |
 //! | ramp, hold | the steering rule in f64 on exact delays, with the frequency and phase of these delays |
@@ -12,6 +12,7 @@
 
 use super::curve::Curve;
 use super::oscillator::{Carrier, Interval, Oscillator};
+use shiftkeel::pass::bake::Audit;
 use shiftkeel::tuning::Bound;
 
 /// Largest error seen.
@@ -175,14 +176,21 @@ pub struct Bench<'a> {
 }
 
 impl Stages {
-    /// Arc and table at an instant: `read` is what the crate read from the table, delay and rapidity.
-    pub fn read(&mut self, bench: &Bench<'_>, t: f64, read: [f64; 2]) -> f64 {
+    /// Begins: the table by the crate's own audit, the arc at the first instant `t`.
+    pub fn begin(bench: &Bench<'_>, audit: &Audit, t: f64, read: [f64; 2]) -> Self {
+        let carrier = bench.truth.carrier;
+        let table = Seen { hertz: carrier * audit.worst_slope, cycles: carrier * audit.worst_delay };
+        let mut stages = Self { table, ..Self::default() };
+        stages.slope_error = stages.read(bench, t, read);
+        stages
+    }
+
+    /// The arc at an instant, and what the slope that was read there (delay and rapidity) is off, Hz.
+    fn read(&mut self, bench: &Bench<'_>, t: f64, read: [f64; 2]) -> f64 {
         let (truth, arc) = (bench.truth.curve.at(t), bench.arc.curve.at(t));
         let scale = bench.truth.carrier;
         self.arc.frequency(scale * (arc[1] - truth[1]));
         self.arc.phase(scale * (arc[0] - truth[0]));
-        self.table.frequency(scale * (read[1] - arc[1]));
-        self.table.phase(scale * (read[0] - arc[0]));
         bench.arc.shift_of(read[1]) - bench.arc.shift_of(arc[1])
     }
 
