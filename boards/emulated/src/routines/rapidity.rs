@@ -1,8 +1,8 @@
 //! The library's rapidities.
 
 use super::{Report, line, sample};
-use fixed::types::{I16F16, I32F32};
-use shiftkeel::rapidity::{Rapidity, narrow};
+use fixed::types::{I1F31, I1F63, I16F16, I32F32};
+use shiftkeel::rapidity::{Rapidity, compose_beta_32, narrow};
 
 /// Speeds to rapidities.
 pub fn from_speeds(report: Report) {
@@ -20,6 +20,42 @@ pub fn from_speeds(report: Report) {
     let float = |index| sample::range_rate(index) as f32;
     line(report, "Rapidity::from_range_rate_f32", float, |rate| {
         Rapidity::from_range_rate_f32(rate).unwrap_or_default().to_bits()
+    });
+}
+
+/// Over the full range: velocity ratios, exact ratios, and back.
+pub fn conversions(report: Report) {
+    let beta = |index| (sample::signed(index, 0.99) * (1u64 << 63) as f64) as i64;
+    let beta_32 = |index| (sample::signed(index, 0.99) * (1u64 << 31) as f64) as i32;
+    let rapidity = |index| (sample::signed(index, 7.9) * (1u64 << 60) as f64) as i64;
+    line(report, "Rapidity::from_beta", beta, |beta| {
+        Rapidity::from_beta(I1F63::from_bits(beta)).unwrap_or_default().to_bits()
+    });
+    line(report, "Rapidity::from_beta_32", beta_32, |beta| {
+        Rapidity::from_beta_32(I1F31::from_bits(beta)).unwrap_or_default().to_bits()
+    });
+    let ratio = |index| {
+        let scrambled = |salt: u32| u64::from(sample::scrambled(index ^ salt)) << 20 | 1 << 50;
+        (scrambled(0), scrambled(0x8000_0000))
+    };
+    line(report, "Rapidity::from_ratio", ratio, |(numerator, denominator)| {
+        Rapidity::from_ratio(numerator, denominator).unwrap_or_default().to_bits()
+    });
+    line(report, "Rapidity::to_factor", rapidity, |rapidity| {
+        let factor = Rapidity::from_bits(rapidity).to_factor();
+        (factor.mantissa(), factor.exponent())
+    });
+    line(report, "Rapidity::to_offset", rapidity, |rapidity| {
+        let offset = Rapidity::from_bits(rapidity).to_offset();
+        (offset.mantissa(), offset.exponent())
+    });
+    line(report, "Rapidity::to_beta", rapidity, |rapidity| Rapidity::from_bits(rapidity).to_beta().to_bits());
+    line(report, "Rapidity::to_beta_32", rapidity, |rapidity| {
+        Rapidity::from_bits(rapidity).to_beta_32().to_bits()
+    });
+    let pair = |index| (beta_32(index), beta_32(sample::scrambled(index) % 256));
+    line(report, "compose_beta_32", pair, |(first, second)| {
+        compose_beta_32(I1F31::from_bits(first), I1F31::from_bits(second)).unwrap_or_default().to_bits()
     });
 }
 
