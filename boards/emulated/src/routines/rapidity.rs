@@ -1,8 +1,8 @@
 //! The library's rapidities.
 
 use super::{Report, line, sample};
-use fixed::types::{I1F31, I1F63, I16F16, I32F32};
-use shiftkeel::rapidity::{Rapidity, compose_beta_32, narrow};
+use fixed::types::{I1F31, I1F63, I4F28, I16F16, I32F32};
+use shiftkeel::rapidity::{Rapidity, compose_beta_32, fixed_32, narrow};
 
 /// Speeds to rapidities.
 pub fn from_speeds(report: Report) {
@@ -69,6 +69,29 @@ pub fn narrow_conversions(report: Report) {
     line(report, "narrow::rapidity_of_slope", any, narrow::rapidity_of_slope);
     line(report, "narrow::slope_of_rapidity", any, narrow::slope_of_rapidity);
     line(report, "narrow::first_order_range_rate", metres_per_second, narrow::first_order_range_rate);
+}
+
+/// The 32-bit conversions over their whole range.
+pub fn fixed_32_conversions(report: Report) {
+    let any = |index| sample::signed(index, 2_147_483_647.0) as i32;
+    line(report, "fixed_32::rapidity_of_beta", any, |beta| {
+        fixed_32::rapidity_of_beta(I1F31::from_bits(beta)).to_bits()
+    });
+    line(report, "fixed_32::beta_of_rapidity", any, |rapidity| {
+        fixed_32::beta_of_rapidity(I4F28::from_bits(rapidity)).to_bits()
+    });
+    line(report, "fixed_32::factor_of_rapidity", any, |rapidity| {
+        let factor = fixed_32::factor_of_rapidity(I4F28::from_bits(rapidity));
+        (factor.mantissa(), factor.exponent())
+    });
+    line(report, "fixed_32::factor_of_beta", any, |beta| {
+        let factor = fixed_32::factor_of_beta(I1F31::from_bits(beta));
+        (factor.mantissa(), factor.exponent())
+    });
+    line(report, "fixed_32::offset_of_rapidity", any, |rapidity| {
+        let offset = fixed_32::offset_of_rapidity(I4F28::from_bits(rapidity));
+        (offset.mantissa(), offset.exponent())
+    });
 }
 
 /// A range rate as I16F16 bits.
