@@ -2,6 +2,9 @@
 //! oscillator is told: the same on every core and on the host.
 #![cfg_attr(target_os = "none", no_std, no_main)]
 
+use shiftkeel::follow::velocity::{
+    Dynamics, Estimate, Gains, Tick, VelocityFilter, VelocitySettings,
+};
 use shiftkeel::nco::Nco;
 use shiftkeel::pass::{Direction, PassTable};
 use shiftkeel::rapidity::{Motion, Rapidity};
@@ -28,6 +31,7 @@ fn walk() {
     show_table("down", &down);
     motions(&down);
     receive(&down);
+    follow(&down);
     let up = bake(&mut buffer, &arc, Direction::Up);
     write_table(c"up.table", &up);
     show_table("up", &up);
@@ -51,12 +55,16 @@ fn motions(table: &PassTable<'_>) {
     let mut digest = Digest::new();
     let mut count = 0;
     for motion in ticks(table) {
-        digest.word(motion.delay.to_bits() as u64);
-        digest.word(motion.rapidity.to_bits() as u64);
-        digest.word(motion.rate.to_bits() as u64);
+        digest_motion(&mut digest, &motion);
         count += 1;
     }
     show("motion", count, digest);
+}
+
+fn digest_motion(digest: &mut Digest, motion: &Motion) {
+    digest.word(motion.delay.to_bits() as u64);
+    digest.word(motion.rapidity.to_bits() as u64);
+    digest.word(motion.rate.to_bits() as u64);
 }
 
 /// A receiver whose software oscillator sweeps: steps, ramps and phases.
@@ -82,6 +90,40 @@ fn receive(table: &PassTable<'_>) {
     }
     show("steps and ramps", count, steps);
     show("phases and outputs", count, phases);
+}
+
+/// A filter that is given noisy estimates of the range rate at 10 Hz, with gaps and wild ones, and steers.
+fn follow(table: &PassTable<'_>) {
+    let settings = VelocitySettings::new(0.1, 0.1, Dynamics::AlphaBetaGamma, Gains::TrackingIndex(0.05))
+        .and_then(|settings| settings.with_gate(5.0));
+    let settings = must(settings, "the filter");
+    let channel = must(plans::receiver(Rapidity::ZERO), "the receiver");
+    let mut filter = VelocityFilter::new();
+    let (mut motions, mut steps) = (Digest::new(), Digest::new());
+    let (mut count, mut noise) = (0u64, 1u32);
+    let mut time = table.start();
+    while let Ok(truth) = table.at(time) {
+        noise = noise.wrapping_mul(1_664_525).wrapping_add(1_013_904_223);
+        // Rapidity of up to 0.1 m/s either way; one estimate in 128 is off by up to 20 times that.
+        let error = i64::from(noise as i32 >> 4) * if noise & 0x7f000 == 0 { 20 } else { 1 };
+        let estimate = Estimate::from_rapidity(time, Rapidity::from_bits(truth.rapidity.to_bits() + error));
+        // Missing now and then for two seconds.
+        let tick = if count % 500 < 20 {
+            Tick::without_estimate(time)
+        } else {
+            Tick::with_estimate(time, estimate)
+        };
+        let outcome = must(filter.step(&settings, tick), "a step of the filter");
+        motions.word(outcome as u64);
+        if let Some(motion) = filter.predict(&settings, GpsTime::from_bits(time.to_bits() + (1 << 26))) {
+            digest_motion(&mut motions, &motion);
+            steps.word(channel.step(motion.rapidity).unwrap_or_default().to_bits());
+        }
+        time = GpsTime::from_bits(time.to_bits() + (1 << GpsTime::FRACTION_BITS) / 10);
+        count += 1;
+    }
+    show("filtered motion", count, motions);
+    show("its steps", count, steps);
 }
 
 /// A transmitter whose synthesiser holds a word of 32 bits: words and phases.

@@ -1,6 +1,7 @@
 //! The routines in the table of costs: ours, and what a user would otherwise write.
 
 mod channel;
+mod follow;
 mod general;
 mod oscillator;
 mod pass;
@@ -16,9 +17,12 @@ pub type Report = fn(&str, &Cost);
 pub fn all(report: Report) {
     pass::table(report);
     channel::channel(report);
+    follow::velocity(report);
     rapidity::from_speeds(report);
+    rapidity::conversions(report);
     general::range_rate(report);
     rapidity::narrow_conversions(report);
+    rapidity::fixed_32_conversions(report);
     general::functions(report);
     oscillator::cosine_and_sine(report);
     general::cosine_and_sine(report);
@@ -41,5 +45,8 @@ pub fn states(report: fn(&str, usize)) {
     report("Channel", size_of::<shiftkeel::tuning::Channel<false>>());
     report("Sweep", size_of::<shiftkeel::tuning::Sweep>());
     report("Hold", size_of::<shiftkeel::tuning::Hold<32>>());
+    report("VelocityFilter", size_of::<shiftkeel::follow::velocity::VelocityFilter>());
+    report("VelocitySettings", size_of::<shiftkeel::follow::velocity::VelocitySettings>());
     report("Nco", size_of::<shiftkeel::nco::Nco>());
+    report("Mixer", size_of::<shiftkeel::nco::Mixer>());
 }

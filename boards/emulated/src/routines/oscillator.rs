@@ -4,7 +4,7 @@ use super::{Report, line, sample};
 use crate::count::in_memory;
 use num_complex::Complex;
 use shiftkeel::frequency::PhaseStep;
-use shiftkeel::nco::{Nco, PhaseRamp, cosine_sine_fine, cosine_sine_quick, cosine_sine_quick_i16};
+use shiftkeel::nco::{Mixer, Nco, PhaseRamp, cosine_sine_fine, cosine_sine_quick, cosine_sine_quick_i16};
 
 /// Cosine and sine of a phase, over the whole turn.
 pub fn cosine_and_sine(report: Report) {
@@ -52,8 +52,29 @@ pub fn oscillator(report: Report) {
     });
     oscillator = start;
     let mut block = [Complex::new(0, 0); 256];
-    line(report, "nco::Nco::fill_i16-of-256", none, |()| {
+    line(report, "nco::Nco::fill_i16,256-outputs", none, |()| {
         let block: &mut [_; 256] = in_memory(&mut block);
         in_memory(&mut oscillator).fill_i16(block);
+    });
+    let mut mixer = Mixer::new(start);
+    let mut samples: [Complex<i16>; 128] = core::array::from_fn(|index| {
+        let bits = sample::scrambled(index as u32);
+        Complex::new(bits as i16, (bits >> 16) as i16)
+    });
+    line(report, "nco::Mixer::mix,128-samples", none, |()| {
+        let samples: &mut [_; 128] = in_memory(&mut samples);
+        let mixer = in_memory(&mut mixer);
+        mixer.mix(samples);
+        let sum = mixer.dump();
+        (sum.re, sum.im)
+    });
+    mixer = Mixer::new(start);
+    let mut real: [i16; 128] = core::array::from_fn(|index| sample::scrambled(index as u32) as i16);
+    line(report, "nco::Mixer::mix_real,128-samples", none, |()| {
+        let samples: &mut [_; 128] = in_memory(&mut real);
+        let mixer = in_memory(&mut mixer);
+        mixer.mix_real(samples);
+        let sum = mixer.dump();
+        (sum.re, sum.im)
     });
 }
