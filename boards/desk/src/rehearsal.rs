@@ -328,6 +328,11 @@ impl Walk<'_> {
         }
         self.oscillator.advance(clocks);
         self.phase(before + clocks, self.oscillator.phase());
+        if self.bench.oscillator.steers_phase() {
+            let own = carrier.cycles(before + clocks) + self.bench.arc.cycles_of(read(motion)[0]);
+            let off = wrapped(self.oscillator.phase() as f64 * (-64f64).exp2() - own);
+            self.outcome.stages.own_cycles = self.outcome.stages.own_cycles.max(off.abs());
+        }
         Ok(())
     }
 

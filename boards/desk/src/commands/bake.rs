@@ -138,6 +138,9 @@ pub struct BakeArguments {
     /// Also write both as source: Rust for a name that ends in .rs, C for .c or .h
     #[arg(long, value_name = "FILE")]
     pub source: Option<PathBuf>,
+    /// What the source calls them: NAME_ARC and NAME_TABLE
+    #[arg(long, default_value = "PASS", requires = "source")]
+    pub name: String,
 }
 
 /// Runs the command.
@@ -151,6 +154,12 @@ pub fn run(arguments: &BakeArguments) -> anyhow::Result<()> {
     };
     let order = arguments.pass.order(tagged_at, arguments.lateness_partial)?;
     let language = arguments.source.as_deref().map(Language::of).transpose()?;
+    let sound = |c: char| c.is_ascii_alphanumeric() || c == '_';
+    ensure!(
+        arguments.name.chars().all(sound) && arguments.name.starts_with(|c: char| c.is_ascii_alphabetic()),
+        "--name {} is no name for a constant; give letters, digits and underscores, such as PASS",
+        arguments.name
+    );
     let file = ElementFile::open(&arguments.elements.elements)?;
     let time = arguments.pass.at.or(arguments.pass.after).unwrap_or_default();
     let set = file.choose(arguments.elements.object.as_deref(), time)?;
@@ -162,7 +171,7 @@ pub fn run(arguments: &BakeArguments) -> anyhow::Result<()> {
     write_whole(&arguments.arc, &bytes(&baked.arc))?;
     write_whole(&arguments.table, &bytes(&baked.table))?;
     if let (Some(path), Some(language)) = (&arguments.source, language) {
-        write_whole(path, source(&baked, set, language).as_bytes())?;
+        write_whole(path, source(&baked, set, language, &arguments.name).as_bytes())?;
     }
     // What counts is what is in the files.
     let arc = words(&std::fs::read(&arguments.arc)?)?;
@@ -245,7 +254,7 @@ impl Language {
 }
 
 /// Arc and table as source.
-fn source(baked: &Baked, set: &ElementSet, language: Language) -> String {
+fn source(baked: &Baked, set: &ElementSet, language: Language, name: &str) -> String {
     let pass = &baked.pass;
     let about = format!(
         "object {:05}, {} to {} UTC, site {:.7} {:.7} degrees {:.0} m",
@@ -260,7 +269,7 @@ fn source(baked: &Baked, set: &ElementSet, language: Language) -> String {
         Language::Rust => format!("// Baked by shiftkeel: {about}.\n"),
         Language::C => format!("/* Baked by shiftkeel: {about}. */\n#include <stdint.h>\n"),
     };
-    for (name, words) in [("PASS_ARC", &baked.arc), ("PASS_TABLE", &baked.table)] {
+    for (name, words) in [(format!("{name}_ARC"), &baked.arc), (format!("{name}_TABLE"), &baked.table)] {
         let (open, close) = match language {
             Language::Rust => (format!("\npub static {name}: [u32; {}] = [\n", words.len()), "];\n"),
             Language::C => (format!("\nstatic const uint32_t {name}[{}] = {{\n", words.len()), "};\n"),

@@ -156,6 +156,8 @@ pub struct Stages {
     pub word: Seen,
     /// Steering rule against the motion.
     pub rule: Seen,
+    /// Phase of the oscillator at interval ends against the table's own, cycles.
+    pub own_cycles: f64,
     /// What the table's slope was off by at the last tick.
     slope_error: f64,
 }
