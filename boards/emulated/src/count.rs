@@ -123,8 +123,11 @@ fn unknown<F: Copy>(function: F) -> F {
     let mut function = function;
     // SAFETY: no instruction is emitted.
     unsafe {
-        core::arch::asm!("/* {0} */", inout(reg) *(&raw mut function).cast::<usize>(),
-            options(nostack, preserves_flags));
+        core::arch::asm!(
+            "/* {0} */",
+            inout(reg) * (&raw mut function).cast::<usize>(),
+            options(nostack, preserves_flags)
+        );
     }
     function
 }

@@ -2,9 +2,7 @@
 //! oscillator is told: the same on every core and on the host.
 #![cfg_attr(target_os = "none", no_std, no_main)]
 
-use shiftkeel::follow::velocity::{
-    Dynamics, Estimate, Gains, Tick, VelocityFilter, VelocitySettings,
-};
+use shiftkeel::follow::velocity::{Dynamics, Estimate, Gains, Tick, VelocityFilter, VelocitySettings};
 use shiftkeel::nco::Nco;
 use shiftkeel::pass::{Direction, PassTable};
 use shiftkeel::rapidity::{Motion, Rapidity};
@@ -108,11 +106,8 @@ fn follow(table: &PassTable<'_>) {
         let error = i64::from(noise as i32 >> 4) * if noise & 0x7f000 == 0 { 20 } else { 1 };
         let estimate = Estimate::from_rapidity(time, Rapidity::from_bits(truth.rapidity.to_bits() + error));
         // Missing now and then for two seconds.
-        let tick = if count % 500 < 20 {
-            Tick::without_estimate(time)
-        } else {
-            Tick::with_estimate(time, estimate)
-        };
+        let tick =
+            if count % 500 < 20 { Tick::without_estimate(time) } else { Tick::with_estimate(time, estimate) };
         let outcome = must(filter.step(&settings, tick), "a step of the filter");
         motions.word(outcome as u64);
         if let Some(motion) = filter.predict(&settings, GpsTime::from_bits(time.to_bits() + (1 << 26))) {

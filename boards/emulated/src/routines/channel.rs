@@ -63,19 +63,24 @@ pub fn steering(report: Report, table: &PassTable<'_>) {
     let mut sweep = must(Sweep::begin(&receiver, &first), "the first sweep");
     let mut oscillator = Nco::at_phase(0);
     let mut missed = 0u32;
-    line(report, "tick=PassTable::at+Sweep::step+retune", |_| (), |()| {
-        let time = in_memory(&mut time);
-        *time += TICK;
-        let (mut table, mut channel) = (table, &receiver);
-        let swept = in_memory(&mut table)
-            .at(GpsTime::from_bits(*time))
-            .ok()
-            .and_then(|next| in_memory(&mut sweep).step(in_memory(&mut channel), &next).ok());
-        match swept {
-            Some(swept) => in_memory(&mut oscillator).retune(swept.first, swept.ramp),
-            None => missed += 1,
-        }
-    });
+    line(
+        report,
+        "tick=PassTable::at+Sweep::step+retune",
+        |_| (),
+        |()| {
+            let time = in_memory(&mut time);
+            *time += TICK;
+            let (mut table, mut channel) = (table, &receiver);
+            let swept = in_memory(&mut table)
+                .at(GpsTime::from_bits(*time))
+                .ok()
+                .and_then(|next| in_memory(&mut sweep).step(in_memory(&mut channel), &next).ok());
+            match swept {
+                Some(swept) => in_memory(&mut oscillator).retune(swept.first, swept.ramp),
+                None => missed += 1,
+            }
+        },
+    );
     if missed != 0 {
         console::fail("the ticks ran out of the pass: fewer repeats are needed");
     }

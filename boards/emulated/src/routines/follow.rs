@@ -3,9 +3,7 @@
 use super::{Report, line, sample};
 use crate::console::{self, must};
 use crate::count::in_memory;
-use shiftkeel::follow::velocity::{
-    Dynamics, Estimate, Gains, Tick, VelocityFilter, VelocitySettings,
-};
+use shiftkeel::follow::velocity::{Dynamics, Estimate, Gains, Tick, VelocityFilter, VelocitySettings};
 use shiftkeel::time::GpsTime;
 
 /// A tick of a tenth of a second with and without an estimate, and a prediction.
@@ -40,11 +38,16 @@ pub fn velocity(report: Report) {
         let tick = estimate.map_or(Tick::without_estimate(time), |rate| Tick::with_estimate(time, rate));
         in_memory(&mut filter).step(&settings, tick).map_or(u32::MAX, |outcome| outcome as u32)
     });
-    line(report, "VelocityFilter::step,none", |_| (), |()| {
-        // So short that all repeats stay within the longest coast.
-        let tick = Tick::without_estimate(after(1000));
-        in_memory(&mut filter).step(&settings, tick).map_or(u32::MAX, |outcome| outcome as u32)
-    });
+    line(
+        report,
+        "VelocityFilter::step,none",
+        |_| (),
+        |()| {
+            // So short that all repeats stay within the longest coast.
+            let tick = Tick::without_estimate(after(1000));
+            in_memory(&mut filter).step(&settings, tick).map_or(u32::MAX, |outcome| outcome as u32)
+        },
+    );
     if filter.predict(&settings, GpsTime::from_bits(now)).is_none() {
         console::fail("the repeats outlasted the longest coast: shorten their interval");
     }

@@ -71,9 +71,12 @@ pub fn functions(report: Report) {
     line(report, "expm1/libm-f32-orbital", small_f32, libm::expm1f);
     line(report, "log1p/libm-f32", wide_f32, libm::log1pf);
     line(report, "exp/micromath-f32", wide_f32, |x| micromath::F32(x).exp().0);
-    line(report, "exp/cordic-i4f28", |index| fixed_angle(sample::signed(index, 0.99)), |bits| {
-        cordic::exp(fixed::types::I4F28::from_bits(bits)).to_bits()
-    });
+    line(
+        report,
+        "exp/cordic-i4f28",
+        |index| fixed_angle(sample::signed(index, 0.99)),
+        |bits| cordic::exp(fixed::types::I4F28::from_bits(bits)).to_bits(),
+    );
 }
 
 fn fixed_angle(radians: f64) -> i32 {
@@ -96,9 +99,14 @@ pub fn cosine_and_sine(report: Report) {
         let (sine, cosine) = micromath::F32(x).sin_cos();
         (cosine.0, sine.0)
     });
-    line(report, "cossin/cordic-i4f28", move |index| fixed_angle(radians(index)), |bits| {
-        let (sine, cosine) = cordic::sin_cos(fixed::types::I4F28::from_bits(bits));
-        (cosine.to_bits(), sine.to_bits())
-    });
+    line(
+        report,
+        "cossin/cordic-i4f28",
+        move |index| fixed_angle(radians(index)),
+        |bits| {
+            let (sine, cosine) = cordic::sin_cos(fixed::types::I4F28::from_bits(bits));
+            (cosine.to_bits(), sine.to_bits())
+        },
+    );
     line(report, "cossin/idsp", |index| sample::scrambled(index) as i32, idsp::cossin);
 }

@@ -45,11 +45,16 @@ pub fn oscillator(report: Report) {
         (output.re, output.im)
     });
     oscillator = start;
-    line(report, "nco::Nco::advance", |index| sample::scrambled(index).into(), |clocks: u64| {
-        let oscillator = in_memory(&mut oscillator);
-        oscillator.advance(clocks);
-        oscillator.phase()
-    });
+    line(
+        report,
+        "nco::Nco::advance",
+        |index| sample::scrambled(index).into(),
+        |clocks: u64| {
+            let oscillator = in_memory(&mut oscillator);
+            oscillator.advance(clocks);
+            oscillator.phase()
+        },
+    );
     oscillator = start;
     let mut block = [Complex::new(0, 0); 256];
     line(report, "nco::Nco::fill_i16,256-outputs", none, |()| {

@@ -1,6 +1,6 @@
 //! Fits `pass.arc` from the references' positions of the synthetic pass: on the host, once.
 
-#[path = "../../../../tests/reference/mod.rs"]
+#[path = "../../../tests/reference/mod.rs"]
 mod reference;
 
 use reference::vectors;
