@@ -83,7 +83,7 @@ const fn reduced(mantissa: u32) -> (usize, i32) {
 ///
 /// z - z^2/2 (1 - 2z/3 + z^2/2); the first left out, z^5/5, is a fifth of a unit.
 #[inline(always)]
-const fn logarithm_of_one_plus(z: i32) -> i32 {
+pub(super) const fn logarithm_of_one_plus(z: i32) -> i32 {
     let square = high_square_i32(z); // 46 fraction bits
     let slope = high_i32(z, 22_369_621).wrapping_sub(square >> 15); // z 2^25 2/3; 32 fraction bits
     let bent = square.wrapping_sub(high_i32(square, slope));
@@ -152,12 +152,12 @@ pub const fn rapidity_of_beta(beta: I1F31) -> I4F28 {
 /// `mantissa` 2^(exponent - 63), where `mantissa` 2^-63 is in [0.997, 1.995).
 pub(super) struct Power32 {
     pub(super) mantissa: u64,
-    exponent: i32,
+    pub(super) exponent: i32,
 }
 
 /// 2^(steps/128) exp(r), r with 39 fraction bits, |r| < 2^-8.3; within 1.2 units of 2^-39.
 #[inline(always)]
-const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
+pub(super) const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
     // -(1/3 + r/12) with 25 fraction bits, the twelfth as 1/16 + 1/64; negative, so that all products are of two
     // signed words. Then r (1 + r/3 + r^2/12) with 39 fraction bits.
     let third = (-11_184_811_i32).wrapping_sub(remainder >> 18).wrapping_sub(remainder >> 20);
@@ -360,20 +360,27 @@ pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     rounded_offset((wide << shift >> 32) as u32, exponent.wrapping_sub(shift as i32), bits >> 31)
 }
 
-/// exp(r) - 1 for |r| < 0.0586.
+/// (exp(r) - 1)/r - 1 with 36 fraction bits of r with 35, |r| < 0.0586; within 2 units.
+///
+/// r/2 + r^2 (1/6 + r (1/24 + r (1/120 + r/720))); the first left out, r^6/5040, is half a unit.
 #[inline(always)]
-const fn small_offset(bits: i32) -> ShiftOffset32 {
-    if bits == 0 {
-        return ShiftOffset32 { mantissa: 0, exponent: 0 };
-    }
-    let r = bits << 7; // 35 fraction bits
+pub(super) const fn small_bend(r: i32) -> i32 {
     let square = high_square_i32(r); // 38 fraction bits
     // 1/6 + r (1/24 + r (1/120 + r/720)) with 33 fraction bits; each step adds 3.
     let tail = 1_118_481_i32.wrapping_add(high_i32(r, 23_302)); // 2^27/120 + r 2^24/720
     let tail = 44_739_243_i32.wrapping_add(high_i32(r, tail)); // 2^30/24 + ...
     let sixth = 1_431_655_765_i32.wrapping_add(high_i32(r, tail)); // 2^33/6 + ...
     // r/2 + r^2 (...) with 36 fraction bits.
-    let bend = r.wrapping_add(high_i32(square, sixth).wrapping_add(1 << 2) >> 3);
+    r.wrapping_add(high_i32(square, sixth).wrapping_add(1 << 2) >> 3)
+}
+
+/// exp(r) - 1 for |r| < 0.0586.
+#[inline(always)]
+const fn small_offset(bits: i32) -> ShiftOffset32 {
+    if bits == 0 {
+        return ShiftOffset32 { mantissa: 0, exponent: 0 };
+    }
+    let bend = small_bend(bits << 7);
     let size = bits.unsigned_abs();
     let shift = size.leading_zeros();
     // 32 significant bits and 2 more, so that what is cut off does not matter to the rounding.
