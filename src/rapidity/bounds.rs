@@ -58,7 +58,7 @@ bounds! {
     RAPIDITY_OF_BETA_32, "fixed_32::rapidity_of_beta", "2^-28", 0.51;
     BETA_OF_RAPIDITY_32, "fixed_32::beta_of_rapidity", "2^-31", 0.52;
     FACTOR_OF_RAPIDITY_32, "fixed_32::factor_of_rapidity", "the mantissa", 0.52;
-    FACTOR_OF_BETA_32, "fixed_32::factor_of_beta", "the mantissa", 0.53;
+    FACTOR_OF_BETA_32, "fixed_32::factor_of_beta", "the mantissa", 0.52;
     OFFSET_OF_RAPIDITY_32, "fixed_32::offset_of_rapidity", "the mantissa", 0.52;
     RAPIDITY_OF_BETA_F32, "float_32::rapidity_of_beta", "the float", 0.5;
     BETA_OF_RAPIDITY_F32, "float_32::beta_of_rapidity", "the float", 0.5;

@@ -79,23 +79,21 @@ const fn reduced(mantissa: u32) -> (usize, i32) {
     (index, middle_u32_u16(mantissa, RECIPROCALS[index]) as i32)
 }
 
-/// ln(1 + z) / 2 with 39 fraction bits of z with 39, |z| < 2^-8; within one unit.
+/// ln(1 + z) with 39 fraction bits of z with 39, |z| < 2^-8; within one unit.
 ///
-/// z - z^2/2 (1 - 2z/3 + z^2/2); the first left out, z^5/5, is a tenth of a unit.
+/// z - z^2/2 (1 - 2z/3 + z^2/2); the first left out, z^5/5, is a fifth of a unit.
 #[inline(always)]
-const fn half_logarithm_of_one_plus(z: i32) -> i32 {
+pub(super) const fn logarithm_of_one_plus(z: i32) -> i32 {
     let square = high_square_i32(z); // 46 fraction bits
     let slope = high_i32(z, 22_369_621).wrapping_sub(square >> 15); // z 2^25 2/3; 32 fraction bits
     let bent = square.wrapping_sub(high_i32(square, slope));
-    z.wrapping_sub(bent.wrapping_add(1 << 7) >> 8) >> 1
+    z.wrapping_sub(bent.wrapping_add(1 << 7) >> 8)
 }
 
-/// ln((1 + b)/(1 - b)) / 2 for 0 <= b < 1 with 31 fraction bits, in three parts:
-/// `exponent` ln 2 / 2 + `table` 2^-32 + `rest` 2^-39.
+/// ln((1 + b)/(1 - b)) / 2 for 0 <= b < 1 with 31 fraction bits: `exponent` ln 2 / 2 + `fraction` 2^-40.
 struct HalfLogarithm {
     exponent: i32,
-    table: i32,
-    rest: i32,
+    fraction: i64,
 }
 
 #[inline(always)]
@@ -105,15 +103,10 @@ const fn half_logarithm_of_ratio(beta: u32) -> HalfLogarithm {
     let exponent = denominator.leading_zeros();
     let (above, z_above) = reduced(ONE.wrapping_add(beta));
     let (below, z_below) = reduced(denominator << exponent);
-    // 63 fraction bits of the logarithm are 64 of its half.
-    let table = LOGARITHMS[above].wrapping_sub(LOGARITHMS[below]) as i64;
-    HalfLogarithm {
-        exponent: exponent as i32,
-        table: (table >> 32) as i32,
-        rest: half_logarithm_of_one_plus(z_above)
-            .wrapping_sub(half_logarithm_of_one_plus(z_below))
-            .wrapping_add((table as u32 >> 25) as i32),
-    }
+    // 39 fraction bits of the logarithm are 40 of its half.
+    let table = LOGARITHMS[above].wrapping_sub(LOGARITHMS[below]) as i64 >> 24;
+    let series = (logarithm_of_one_plus(z_above) as i64).wrapping_sub(logarithm_of_one_plus(z_below) as i64);
+    HalfLogarithm { exponent: exponent as i32, fraction: table.wrapping_add(series) }
 }
 
 /// Rapidity of a velocity ratio: atanh(b).
@@ -140,9 +133,9 @@ const fn half_logarithm_of_ratio(beta: u32) -> HalfLogarithm {
 pub const fn rapidity_of_beta(beta: I1F31) -> I4F28 {
     /// 2^31 tanh(8), rounded up.
     const END: u32 = 2_147_483_165;
-    /// ln 2 / 2 with 28 fraction bits, and what is missing with 39.
+    /// ln 2 / 2 with 28 fraction bits, and what is missing with 40.
     const HALF_LN_2: i32 = 93_032_639;
-    const HALF_LN_2_REST: i32 = 1_524;
+    const HALF_LN_2_REST: i32 = 3_049;
     let bits = beta.to_bits();
     let sign = bits >> 31;
     let size = bits.unsigned_abs();
@@ -150,24 +143,21 @@ pub const fn rapidity_of_beta(beta: I1F31) -> I4F28 {
         return I4F28::from_bits(i32::MAX ^ sign);
     }
     let half = half_logarithm_of_ratio(size);
-    let rest = ((half.table & 15) << 7)
-        .wrapping_add(half.rest)
-        .wrapping_add(half.exponent.wrapping_mul(HALF_LN_2_REST))
-        .wrapping_add(1 << 10)
-        >> 11;
-    let result = half.exponent.wrapping_mul(HALF_LN_2).wrapping_add(half.table >> 4).wrapping_add(rest);
+    let rest = half.exponent.wrapping_mul(HALF_LN_2_REST) as i64;
+    let fraction = half.fraction.wrapping_add(rest).wrapping_add(1 << 11) >> 12;
+    let result = half.exponent.wrapping_mul(HALF_LN_2).wrapping_add(fraction as i32);
     I4F28::from_bits(signed(result, sign))
 }
 
 /// `mantissa` 2^(exponent - 63), where `mantissa` 2^-63 is in [0.997, 1.995).
-struct Power32 {
-    mantissa: u64,
-    exponent: i32,
+pub(super) struct Power32 {
+    pub(super) mantissa: u64,
+    pub(super) exponent: i32,
 }
 
 /// 2^(steps/128) exp(r), r with 39 fraction bits, |r| < 2^-8.3; within 1.2 units of 2^-39.
 #[inline(always)]
-const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
+pub(super) const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
     // -(1/3 + r/12) with 25 fraction bits, the twelfth as 1/16 + 1/64; negative, so that all products are of two
     // signed words. Then r (1 + r/3 + r^2/12) with 39 fraction bits.
     let third = (-11_184_811_i32).wrapping_sub(remainder >> 18).wrapping_sub(remainder >> 20);
@@ -176,7 +166,8 @@ const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
     let offset = remainder.wrapping_add(high_i32(remainder, bent) >> 8);
     let table = EXPONENTIALS[(steps & 0x7f) as usize];
     // table (exp(r) - 1) with 30 + 39 fraction bits.
-    let product = product_i32((table >> 33) as i32, offset);
+    let short = ((table >> 32) as u32).wrapping_add(1) >> 1;
+    let product = product_i32(short as i32, offset);
     Power32 { mantissa: table.wrapping_add((product >> 6) as u64), exponent: steps >> 7 }
 }
 
@@ -262,11 +253,12 @@ pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
     }
     let sign = bits >> 31;
     let half = half_logarithm_of_ratio(bits.unsigned_abs());
-    let coarse = signed(half.table.wrapping_add(half.rest >> 7), sign);
+    let coarse = signed((half.fraction >> 8) as i32, sign);
     let steps = (coarse >> 16).wrapping_mul(STEPS).wrapping_add(1 << 22) >> 23;
-    let remainder = signed((half.table << 7).wrapping_add(half.rest), sign)
+    // The whole steps of the fraction lie beyond the word and fall off.
+    let remainder = signed((half.fraction.wrapping_add(1) >> 1) as i32, sign)
         .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
-        .wrapping_sub(steps.wrapping_mul(STEP_LOW).wrapping_add(1 << 15) >> 16);
+        .wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
     // Half of ln 2 is 64 steps.
     let factor = rounded(power_from_steps(steps.wrapping_add(signed(half.exponent << 6, sign)), remainder));
     // The largest beta rounds to 2^16.
@@ -368,20 +360,27 @@ pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     rounded_offset((wide << shift >> 32) as u32, exponent.wrapping_sub(shift as i32), bits >> 31)
 }
 
-/// exp(r) - 1 for |r| < 0.0586.
+/// (exp(r) - 1)/r - 1 with 36 fraction bits of r with 35, |r| < 0.0586; within 2 units.
+///
+/// r/2 + r^2 (1/6 + r (1/24 + r (1/120 + r/720))); the first left out, r^6/5040, is half a unit.
 #[inline(always)]
-const fn small_offset(bits: i32) -> ShiftOffset32 {
-    if bits == 0 {
-        return ShiftOffset32 { mantissa: 0, exponent: 0 };
-    }
-    let r = bits << 7; // 35 fraction bits
+pub(super) const fn small_bend(r: i32) -> i32 {
     let square = high_square_i32(r); // 38 fraction bits
     // 1/6 + r (1/24 + r (1/120 + r/720)) with 33 fraction bits; each step adds 3.
     let tail = 1_118_481_i32.wrapping_add(high_i32(r, 23_302)); // 2^27/120 + r 2^24/720
     let tail = 44_739_243_i32.wrapping_add(high_i32(r, tail)); // 2^30/24 + ...
     let sixth = 1_431_655_765_i32.wrapping_add(high_i32(r, tail)); // 2^33/6 + ...
     // r/2 + r^2 (...) with 36 fraction bits.
-    let bend = r.wrapping_add(high_i32(square, sixth).wrapping_add(1 << 2) >> 3);
+    r.wrapping_add(high_i32(square, sixth).wrapping_add(1 << 2) >> 3)
+}
+
+/// exp(r) - 1 for |r| < 0.0586.
+#[inline(always)]
+const fn small_offset(bits: i32) -> ShiftOffset32 {
+    if bits == 0 {
+        return ShiftOffset32 { mantissa: 0, exponent: 0 };
+    }
+    let bend = small_bend(bits << 7);
     let size = bits.unsigned_abs();
     let shift = size.leading_zeros();
     // 32 significant bits and 2 more, so that what is cut off does not matter to the rounding.

@@ -17,6 +17,7 @@
 use super::exponential::{
     Normal, Power, offset_of_power, power_near, reciprocal, small_offset, steps_of_half, tanh_of_power,
 };
+use super::float_quick;
 use super::logarithm::logarithm;
 use super::wide_product::{about_high_i64, high_i32, high_u64};
 
@@ -25,9 +26,9 @@ const NAN: f32 = f32::from_bits(0x7fc0_0000);
 
 /// A finite float other than zero: `mantissa` 2^`exponent`, mantissa in [2^23, 2^24).
 #[derive(Clone, Copy)]
-struct Parts {
-    mantissa: u32,
-    exponent: i32,
+pub(super) struct Parts {
+    pub(super) mantissa: u32,
+    pub(super) exponent: i32,
 }
 
 /// Size of a finite float other than zero.
@@ -137,7 +138,11 @@ pub const fn factor_of_rapidity(rapidity: f32) -> f32 {
     if size < 0x3280_0000 {
         return 1.0; // below 2^-26
     }
-    nearest(normal_power(power::<0>(parts(rapidity), sign)), 0)
+    let parts = parts(rapidity);
+    match float_quick::factor_of_rapidity(parts, sign) {
+        Some(factor) => factor,
+        None => nearest(normal_power(power::<0>(parts, sign)), 0),
+    }
 }
 
 /// Offset from one of the frequency factor: exp(r) - 1, positive = approaching.
@@ -173,7 +178,11 @@ pub const fn offset_of_rapidity(rapidity: f32) -> f32 {
     if size >= 0x4190_0000 && sign != 0 {
         return -1.0; // -18 and less
     }
-    nearest(offset::<0>(parts(rapidity), sign), sign)
+    let parts = parts(rapidity);
+    match float_quick::offset_of_rapidity(parts, sign) {
+        Some(offset) => offset,
+        None => nearest(offset::<0>(parts, sign), sign),
+    }
 }
 
 /// Velocity ratio of a rapidity: tanh(r), positive = approaching.
@@ -207,11 +216,15 @@ pub const fn beta_of_rapidity(rapidity: f32) -> f32 {
     if size >= 0x4118_0000 {
         return f32::from_bits(sign | 0x3f80_0000); // 9.5 and more
     }
+    let parts = parts(rapidity);
+    if let Some(beta) = float_quick::beta_of_rapidity(parts, sign) {
+        return beta;
+    }
     if size >= 0x3e00_0000 {
-        return nearest(normal(tanh_of_power(power::<1>(parts(rapidity), NEGATIVE)), 0), sign);
+        return nearest(normal(tanh_of_power(power::<1>(parts, NEGATIVE)), 0), sign);
     }
     // E/2 / (1 + E/2), where 1 + E/2 is below 1.15.
-    let double = offset::<1>(parts(rapidity), 0);
+    let double = offset::<1>(parts, 0);
     let half = Normal { value: double.value, exponent: double.exponent.wrapping_sub(1) };
     let one_more = (1_u64 << 63).wrapping_add(half.value >> half.exponent.unsigned_abs());
     nearest(normal(high_u64(half.value, reciprocal(one_more, 0)), half.exponent), sign)
@@ -254,7 +267,11 @@ pub const fn factor_of_beta(beta: f32) -> f32 {
     if size < 0x3280_0000 {
         return 1.0; // below 2^-26
     }
-    let half = half_logarithm(parts(beta));
+    let parts = parts(beta);
+    if let Some(factor) = float_quick::factor_of_beta(parts, sign) {
+        return factor;
+    }
+    let half = half_logarithm(parts);
     let (exponent, fraction) = if sign == 0 {
         (half.exponent, half.fraction)
     } else {
@@ -295,13 +312,17 @@ pub const fn rapidity_of_beta(beta: f32) -> f32 {
     if size < 0x3980_0000 {
         return beta; // below 2^-12, where b^3/3 is less than half a unit
     }
+    let parts = parts(beta);
+    if let Some(rapidity) = float_quick::rapidity_of_beta(parts, sign) {
+        return rapidity;
+    }
     if size < 0x3d00_0000 {
-        return nearest(small_rapidity(parts(beta)), sign);
+        return nearest(small_rapidity(parts), sign);
     }
     /// ln 2 / 2 with 63 and with 60 fraction bits.
     const HALF_LN_2: u64 = 3_196_577_161_300_663_915;
     const HALF_LN_2_SHORT: u64 = 399_572_145_162_582_989;
-    let half = half_logarithm(parts(beta));
+    let half = half_logarithm(parts);
     let exponent = half.exponent as u64;
     let rapidity = if exponent <= 1 {
         normal(exponent.wrapping_mul(HALF_LN_2).wrapping_add((half.fraction >> 1) as u64), 0)

@@ -31,6 +31,7 @@ mod error;
 mod exponential;
 pub mod fixed_32;
 pub mod float_32;
+mod float_quick;
 mod from_ratio;
 mod from_speed;
 mod logarithm;
