@@ -280,6 +280,21 @@ fn a_narrowed_fence_counts_at_once() {
     assert!(sweep.clone().step(&wide, &next).is_ok());
     assert!(matches!(sweep.step(&narrow, &next), Err(TuningError::OutsideFence { hertz: 370..=372 })));
     assert_eq!(sweep.end(), before);
+    // The start alone is outside, by 1 Hz; the end is inside by as much.
+    let between = Channel::transmit(&plan, 1000, &allow(CARRIER + 4369)).unwrap();
+    let slower = Motion { delay: Delay::from_bits((9.998e-9 * 2f64.powi(56)) as i64), ..at(-9996) };
+    assert!(between.step(slower.rapidity).is_ok());
+    assert!(matches!(sweep.step(&between, &slower), Err(TuningError::OutsideFence { hertz: 2..=3 })));
+    assert_eq!(sweep.end(), before);
+    assert!(sweep.step(&wide, &slower).is_ok());
+    // The motion's own step at the end is inside, but the end that meets the phase would lie outside; one that
+    // does not is radiated.
+    let after = |seconds: f64| Motion { delay: Delay::from_bits((seconds * 2f64.powi(56)) as i64), ..slower };
+    assert!(matches!(
+        sweep.step(&between, &after(9.998e-9 + 9.998e-9)),
+        Err(TuningError::OutsideFence { hertz: 1..=2 })
+    ));
+    assert!(sweep.step(&between, &after(9.998e-9 + 9.996e-9)).is_ok());
     let mut hold = Hold::<32>::begin(&wide, &at(-10_000), 0).unwrap();
     assert!(matches!(hold.step(&narrow, &next, false), Err(TuningError::OutsideFence { .. })));
     assert!(matches!(hold.step(&narrow, &next, true), Err(TuningError::OutsideFence { .. })));
