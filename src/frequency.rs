@@ -166,28 +166,22 @@ impl ClockRatio {
 ///
 /// Shift and subtract, one bit a turn: the one long division of the crate, for set-up. It is small rather than
 /// fast: the compiler's 128-bit division costs 2 KiB of flash on a Cortex-M0.
+#[inline(never)]
 pub(crate) const fn divide_nearest(numerator: u128, denominator: u64) -> (u128, u64) {
-    let mut quotient = 0u128;
+    // The quotient's bits enter from below as the numerator's leave at the top.
+    let mut quotient = numerator;
     let mut fraction = 0u64;
-    let mut rest = 0u128;
+    let mut rest = 0u64;
     let mut bit = 0;
     while bit < 192 {
-        rest <<= 1;
-        if bit < 128 {
-            rest |= numerator >> (127 - bit) & 1;
-        }
-        let subtract = rest >= denominator as u128;
-        if subtract {
-            rest -= denominator as u128;
-        }
-        if bit < 128 {
-            quotient = quotient << 1 | subtract as u128;
-        } else {
-            fraction = fraction << 1 | subtract as u64;
-        }
+        let doubled = rest << 1 | (quotient >> 127) as u64;
+        let subtract = rest >> 63 != 0 || doubled >= denominator;
+        rest = if subtract { doubled.wrapping_sub(denominator) } else { doubled };
+        quotient = quotient << 1 | (fraction >> 63) as u128;
+        fraction = fraction << 1 | subtract as u64;
         bit += 1;
     }
-    if rest >= (denominator as u128).div_ceil(2) {
+    if rest >= denominator.div_ceil(2) {
         fraction = fraction.wrapping_add(1);
         if fraction == 0 {
             quotient += 1;

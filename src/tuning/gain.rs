@@ -16,24 +16,19 @@ pub(super) struct Gain {
 
 impl Gain {
     /// (`whole` + `fraction` 2^-64) 2^`exponent`, below 2^63 and not zero, with a minus sign where `negative`.
+    #[inline(never)]
     pub(super) fn new((whole, fraction): (u128, u64), exponent: i32, negative: bool) -> Self {
-        // floor((whole + fraction 2^-64) 2^places), of which the lowest 96 bits count.
-        let shifted = |places: i32| -> u128 {
-            if places <= 0 {
-                whole.checked_shr(places.unsigned_abs()).unwrap_or(0)
-            } else {
-                let below = u128::from(fraction);
-                let below =
-                    if places <= 64 { below >> (64 - places) } else { below << (places - 64).min(63) };
-                whole.checked_shl(places as u32).unwrap_or(0) | below
-            }
+        // The factor is `bits` 2^places of the lowest word, to at least 64 bits.
+        let (bits, places) = if whole >> 64 == 0 {
+            (whole << 64 | u128::from(fraction), exponent + 32 - 64)
+        } else {
+            (whole, exponent + 32)
         };
-        let mut right = 0;
-        let mut words = shifted(exponent + 32);
-        while right < 31 && words < 1 << 62 {
-            right += 1;
-            words = shifted(exponent + 32 + right);
-        }
+        let length = 128 - bits.leading_zeros() as i32 + places;
+        let right = (63 - length).clamp(0, 31);
+        let places = places + right;
+        // Of what is above 2^96 only whole cycles would come.
+        let words = bits.unbounded_shl(places.max(0) as u32).unbounded_shr((-places).max(0) as u32);
         let words = if negative { words.wrapping_neg() } else { words };
         // Signed words: each takes up the sign of the one below.
         let low = words as i32;

@@ -3,6 +3,7 @@
 use super::TuningError;
 use crate::frequency::Frequency;
 use crate::rapidity::Rapidity;
+use crate::rapidity::wide_product::high_u64;
 
 /// One frequency conversion between the antenna and the oscillator.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -123,23 +124,28 @@ pub(super) fn scaled_frequency(frequency: Frequency, crystal: Rapidity) -> Resul
 }
 
 /// Frequency times exp(`crystal`), in 2^-80 Hz.
+#[inline(never)]
 pub(super) fn scaled(frequency: Frequency, crystal: i64) -> Result<i128, TuningError> {
-    let factor = (1i128 << 60) + i128::from(small_offset(crystal)?);
-    Ok((i128::from(frequency.to_bits()) * factor) >> 4)
+    let offset = small_offset(crystal)?;
+    let whole = frequency.to_bits();
+    let more = i128::from(high(offset, whole)) << 64 | i128::from(whole.wrapping_mul(offset as u64));
+    Ok((i128::from(whole) << 56) + (more >> 4))
 }
 
 /// expm1 of a crystal offset, I4F60, by six terms: below 2^-10 the seventh is under 2^-82.
 fn small_offset(crystal: i64) -> Result<i64, TuningError> {
+    const ONE: i64 = 1 << 60;
     if crystal.unsigned_abs() >= 1 << 50 {
         return Err(TuningError::CrystalTooFar);
     }
-    let x = i128::from(crystal);
-    let mut sum = 0i128;
-    let mut order = 6i128;
-    while order > 0 {
-        // x/n (1 + x/(n+1) (1 + ...)), the division by a small number being set-up.
-        sum = ((x * ((1i128 << 60) + sum)) >> 60) / order;
-        order -= 1;
-    }
-    Ok(sum as i64)
+    let times = |a: i64, b: i64| high(a << 2, (b << 2) as u64);
+    // x/1 (1 + x/2 (1 + ...)).
+    let inverses = [ONE / 6, ONE / 5, ONE / 4, ONE / 3, ONE / 2];
+    let sum = inverses.iter().fold(0, |sum, &inverse| times(times(crystal, ONE.wrapping_add(sum)), inverse));
+    Ok(times(crystal, ONE.wrapping_add(sum)))
+}
+
+/// floor(a b / 2^64) of a signed and an unsigned word: the unsigned product less b where the sign is set.
+fn high(a: i64, b: u64) -> i64 {
+    high_u64(a as u64, b).wrapping_sub(b & (a >> 63) as u64) as i64
 }
