@@ -36,7 +36,8 @@ pub fn rows(rehearsal: &Rehearsal<'_>, baked: &Baked, lateness: f64) -> anyhow::
     ensure!(table.has_lateness(), "this table cannot be told of lateness; bake it with --lateness-partial");
     let reference = baked.pass.reference_gps()?;
     let origin = table.start().seconds_since(reference);
-    let span = (origin + lateness.max(0.0), origin + table.end().seconds_since(table.start()) + lateness.min(0.0));
+    let span =
+        (origin + lateness.max(0.0), origin + table.end().seconds_since(table.start()) + lateness.min(0.0));
     let model = truth_model(baked, lateness)?;
     let late = Curve::hold(span.0, span.1, |t| Ok::<_, OrbitError>([model.delay(t)?, model.rapidity(t)?]))?;
     let geometry = baked.geometry(lateness)?;

@@ -81,7 +81,10 @@ pub fn of_table(heading: &[String], outcome: &Outcome) -> Picture {
     let mut panels = vec![
         shift_panel(&outcome.columns),
         Panel {
-            title: format!("Frequency error: least and largest; worst {worst}, proven {}", report::hertz(total.hertz)),
+            title: format!(
+                "Frequency error: least and largest; worst {worst}, proven {}",
+                report::hertz(total.hertz)
+            ),
             unit,
             seen: band(&outcome.columns, |column| column.hertz, scale),
             limit: Limit::Level("proven".to_string(), total.hertz * scale),
@@ -120,7 +123,11 @@ pub fn of_estimates(heading: &[String], followed: &Followed) -> Picture {
         limit: Limit::Band("stated".to_string(), band(&followed.columns, |column| column.cycles, scale)),
         largest: most,
     };
-    Picture { heading: heading.to_vec(), span: followed.span, panels: vec![shift_panel(&followed.columns), error] }
+    Picture {
+        heading: heading.to_vec(),
+        span: followed.span,
+        panels: vec![shift_panel(&followed.columns), error],
+    }
 }
 
 /// Draws into an SVG file.
