@@ -345,10 +345,11 @@ impl Walk<'_> {
     /// Takes in an error of the frequency.
     fn frequency(&mut self, time: f64, hertz: f64) {
         let outcome = &mut self.outcome;
-        if !(hertz.abs() <= outcome.worst.hertz) {
+        let before = outcome.worst.hertz;
+        outcome.worst.frequency(hertz);
+        if outcome.worst.hertz > before {
             outcome.worst_time = time;
         }
-        outcome.worst.frequency(hertz);
         outcome.instants += 1;
         self.squares += hertz * hertz;
         let column = self.column(time);

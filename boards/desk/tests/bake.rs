@@ -1,7 +1,7 @@
 //! `bake` as a user runs it: files, source, and what it says to bad input.
 
 use shiftkeel::pass::{Arc, Direction, PassTable, TaggedAt};
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 use std::process::{Command, Output};
 
 const SYNTHETIC: &str = concat!(env!("CARGO_MANIFEST_DIR"), "/tests/data/synthetic.txt");
@@ -19,7 +19,7 @@ fn folder(name: &str) -> PathBuf {
 }
 
 /// `bake` of the synthetic pass with some arguments replaced or added.
-fn bake(place: &PathBuf, changes: &[&str]) -> Output {
+fn bake(place: &Path, changes: &[&str]) -> Output {
     let mut arguments = vec!["bake", "--elements", SYNTHETIC, "--site", "45.0,7.5,300"];
     if !changes.contains(&"--at") && !changes.contains(&"--after") {
         arguments.extend(["--at", "2026-06-01T12:12:00Z"]);
@@ -39,7 +39,7 @@ fn succeeds(output: &Output) -> String {
     text(&output.stdout)
 }
 
-fn words(place: &PathBuf, name: &str) -> Vec<u32> {
+fn words(place: &Path, name: &str) -> Vec<u32> {
     let bytes = std::fs::read(place.join(name)).expect("a file");
     assert_eq!(bytes.len() % 4, 0);
     bytes.chunks_exact(4).map(|four| u32::from_le_bytes(four.try_into().expect("four"))).collect()

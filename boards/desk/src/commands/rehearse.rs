@@ -173,7 +173,9 @@ fn by_table(
         outcome.retunes,
         summary.text()
     ))?;
-    keep(&arguments.out, &summary, |path| plot::draw(path, &plot::of_table(&heading, &outcome)))?;
+    keep(&arguments.out, &summary, |path| {
+        plot::draw(path, &plot::of_table(&heading, &outcome, &summary.alternatives))
+    })?;
     verdict(&summary)
 }
 
@@ -197,7 +199,17 @@ fn by_estimates(
     stream.check()?;
     let followed = rehearsal.follow(&stream)?;
     let summary = FollowedSummary::new(set, rehearsal, &stream, &followed);
-    let heading = heading(set, rehearsal, followed.span)?;
+    let mut heading = heading(set, rehearsal, followed.span)?;
+    if let Some(line) = heading.get_mut(2) {
+        // There is a table, but here only the span is taken from it.
+        *line = format!(
+            "  range-rate estimates: {} a second of {} m/s, {} of {} wildly wrong",
+            stream.rate, stream.noise, followed.outliers, followed.estimates
+        );
+        if let Some((from, length)) = stream.gap {
+            write!(line, ", none for {length} s from {from} s on")?;
+        }
+    }
     super::print(&format!("{}\n\n{}", heading.join("\n"), summary.text()))?;
     keep(&arguments.out, &summary, |path| plot::draw(path, &plot::of_estimates(&heading, &followed)))?;
     summary.verdict()

@@ -15,6 +15,9 @@ const LARGEST: f64 = 8.0;
 /// Time between two looks, s.
 const LOOK: f64 = 0.1;
 
+/// Rapidity at a time.
+type Source<'a> = &'a dyn Fn(f64) -> Result<f64, TableError>;
+
 /// Refuses what a table cannot be told.
 ///
 /// # Errors
@@ -46,7 +49,7 @@ pub fn rows(rehearsal: &Rehearsal<'_>, baked: &Baked, lateness: f64) -> anyhow::
     let plain = |t: f64| Ok(rapidity(table.at(reference.plus_seconds(t))?.rapidity.to_bits()));
     let partial = |t: f64| Ok(rapidity(table.at_late(reference.plus_seconds(t), told)?.rapidity.to_bits()));
     let again = |t: f64| Ok(geometry.delay_and_rapidity(t).1);
-    let rows: [(&'static str, &dyn Fn(f64) -> Result<f64, TableError>); 3] = [
+    let rows: [(&'static str, Source<'_>); 3] = [
         ("not told of it", &plain),
         ("told, through the table's partial", &partial),
         ("arc seen anew, as a fresh table would", &again),

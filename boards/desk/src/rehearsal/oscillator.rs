@@ -40,7 +40,7 @@ impl Oscillator {
         );
         let clocks = (clock * tick).round();
         ensure!(
-            clocks >= 1.0 && clocks < 4e9 && tick < 60.0,
+            (1.0..4e9).contains(&clocks) && tick < 60.0,
             "--tick {tick} is not usable: an interval lasts at least one clock and less than a minute"
         );
         ensure!(

@@ -253,10 +253,10 @@ impl Summary {
         text.push_str(&indented(&crate::commands::table(&headings, &rows)));
         writeln!(
             text,
-            "  worst at {}, rms {}; the reference itself is certain to {}\n",
+            "  worst at {}, rms {}. Each part is seen by its own stage: arc against orbit, table against arc,\n  \
+             mean steps against exact delays, words against steps, and the rule of steering against the motion.\n",
             self.worst_utc,
-            hertz(self.rms_error_hz),
-            hertz(self.reference_noise_hz)
+            hertz(self.rms_error_hz)
         )?;
         writeln!(
             text,
@@ -287,22 +287,26 @@ impl Summary {
     }
 }
 
+/// Bounds below these are under the rounding of the f64 comparison itself: no ratio is made of them.
+const COMPARED_HERTZ: f64 = 1e-5;
+const COMPARED_CYCLES: f64 = 1e-7;
+
 impl PartRow {
     fn cells(&self) -> Vec<String> {
         let number =
             |value: Option<f64>| value.map_or_else(|| "-".to_string(), |value| format!("{value:.3e}"));
-        let ratio = |seen: Option<f64>, bound: Option<f64>| match (seen, bound) {
-            (Some(seen), Some(bound)) if bound > 0.0 => format!("{:.2}", seen / bound),
+        let ratio = |seen: Option<f64>, bound: Option<f64>, least: f64| match (seen, bound) {
+            (Some(seen), Some(bound)) if bound > least => format!("{:.2}", seen / bound),
             _ => "-".to_string(),
         };
         vec![
             self.part.to_string(),
             number(self.seen_hz),
             number(Some(self.bound_hz)),
-            ratio(self.seen_hz, Some(self.bound_hz)),
+            ratio(self.seen_hz, Some(self.bound_hz), COMPARED_HERTZ),
             number(self.seen_cycles),
             number(self.bound_cycles),
-            ratio(self.seen_cycles, self.bound_cycles),
+            ratio(self.seen_cycles, self.bound_cycles, COMPARED_CYCLES),
         ]
     }
 }
