@@ -3,7 +3,7 @@
 use crate::SPEED_OF_LIGHT;
 use crate::contacts::{self, Contact};
 use crate::elements::ElementSet;
-use crate::frames::Site;
+use crate::frames::{EARTH_ROTATION, Site};
 use crate::geometric::{Direction, GeometricModel};
 use crate::horizon::Horizon;
 use crate::instant;
@@ -12,7 +12,8 @@ use anyhow::{Context, anyhow, ensure};
 use chrono::{DateTime, Utc};
 use shiftkeel::pass::bake::{Audit, Request, audit, bake_arc};
 use shiftkeel::pass::{
-    Arc, ArcError, ArcModel, ArcSettings, Direction as Signal, Geometry, MAX_ARC_WORDS, PassTable, Site as Ground, TaggedAt,
+    Arc, ArcError, ArcModel, ArcSettings, Direction as Signal, Geometry, MAX_ARC_WORDS, PassTable,
+    Site as Ground, TaggedAt,
 };
 use shiftkeel::time::GpsTime;
 use shiftkeel::tuning::Bound;
@@ -30,12 +31,11 @@ const MOST_TABLE_WORDS: usize = 4096;
 /// Places at which the arc is held against the orbit.
 const ARC_LOOKS: u32 = 1024;
 /// Factor on the largest of these: the residual is a polynomial of degree 27 at most beside the noise, so 1024
-/// places leave out below 1 %; the rest is reserve.
+/// places leave out below 1 %. A jump of SGP4's own position shows in [`Orbit::derivative`] for 3 s, so at some place.
+/// The rest is reserve.
 const ARC_MARGIN_FACTOR: f64 = 1.25;
-/// Jumps of SGP4's own position, m (its Kepler iteration ends at 1e-12 rad).
-const POSITION_NOISE: f64 = 7e-6;
-/// What they make at worst of the differences in [`Orbit::derivative`], m/s: weights 2 (45 + 9 + 1) / 60 over 0.5 s.
-const VELOCITY_NOISE: f64 = POSITION_NOISE * 110.0 / 30.0;
+/// Least reserve: what f64 rounds positions and their rates to, m and m/s.
+const ARC_FLOOR: f64 = 1e-6;
 
 /// Which pass.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -87,7 +87,13 @@ impl Pass {
     ///
     /// # Errors
     /// When there is none, or the orbit cannot be followed there.
-    pub fn find(set: &ElementSet, site: Site, dut1: f64, which: Which, horizon: &Horizon) -> anyhow::Result<Self> {
+    pub fn find(
+        set: &ElementSet,
+        site: Site,
+        dut1: f64,
+        which: Which,
+        horizon: &Horizon,
+    ) -> anyhow::Result<Self> {
         let (time, found) = match which {
             Which::At(time) => (time, Self::search(set, site, dut1, horizon, time, (-0.5, 0.5))?),
             Which::After(time) => {
@@ -138,8 +144,10 @@ impl Pass {
 
     fn of(set: &ElementSet, site: Site, time: DateTime<Utc>, contact: &Contact) -> anyhow::Result<Self> {
         // A whole second, so that UTC, GPS time and f64 seconds all hold it exactly.
-        let middle = instant::after(time, (contact.start + contact.end) / 2.0).context("the pass is beyond the calendar")?;
-        let reference = DateTime::from_timestamp(middle.timestamp(), 0).context("the pass is beyond the calendar")?;
+        let middle = instant::after(time, (contact.start + contact.end) / 2.0)
+            .context("the pass is beyond the calendar")?;
+        let reference =
+            DateTime::from_timestamp(middle.timestamp(), 0).context("the pass is beyond the calendar")?;
         let shift = instant::seconds_between(time, reference);
         Ok(Self {
             orbit: Orbit::new(set, reference)?,
@@ -295,9 +303,12 @@ fn fit(pass: &Pass, set: &ElementSet, order: &Order) -> anyhow::Result<Vec<u32>>
         match Arc::fit(&mut words, &settings, position) {
             Ok(arc) => return Ok(arc.words().to_vec()),
             // A long pass is held less closely, unless it was said how closely.
-            Err(ArcError::TooCurved) if order.arc_millimetres.is_none() && tolerance < LOOSEST_ARC => tolerance *= 2.0,
+            Err(ArcError::TooCurved) if order.arc_millimetres.is_none() && tolerance < LOOSEST_ARC => {
+                tolerance *= 2.0
+            }
             Err(error) => {
-                return Err(error).with_context(|| format!("no arc over the {:.0} s of this pass", 2.0 * half));
+                return Err(error)
+                    .with_context(|| format!("no arc over the {:.0} s of this pass", 2.0 * half));
             }
         }
     }
@@ -307,7 +318,7 @@ fn fit(pass: &Pass, set: &ElementSet, order: &Order) -> anyhow::Result<Vec<u32>>
 ///
 /// The residual of position and velocity against SGP4 is taken at 1024 places; an error of the velocity along the
 /// line of sight counts in full, one of the position across it by the rate at which the line of sight turns. The
-/// largest is raised by a quarter, and what SGP4's own noise may add to it.
+/// largest is raised by a quarter.
 fn arc_bound(pass: &Pass, arc: &Arc<'_>, order: &Order) -> anyhow::Result<Bound> {
     let model = GeometricModel::new(pass.orbit.clone(), pass.site, order.dut1);
     let trajectory = arc.trajectory();
@@ -315,22 +326,24 @@ fn arc_bound(pass: &Pass, arc: &Arc<'_>, order: &Order) -> anyhow::Result<Bound>
     let (mut rate, mut range) = (0.0_f64, 0.0_f64);
     for look in 0..=ARC_LOOKS {
         let t = pass.start + (pass.end - pass.start) * f64::from(look) / f64::from(ARC_LOOKS);
-        let true_state = model.rotation().to_earth_fixed(pass.orbit.derivative(t)?, t);
+        let mut true_state = model.rotation().to_earth_fixed(pass.orbit.derivative(t)?, t);
+        // The derivative of the position, with the rate at which the frame really turns.
+        let slower = EARTH_ROTATION - model.rotation().rate();
+        true_state.velocity = true_state.velocity + true_state.position.swept_about_z(slower);
         let ([x, y, z], [u, v, w]) = trajectory.at(t);
         let off = crate::vector::Vector::new(x, y, z) - true_state.position;
         let off_rate = crate::vector::Vector::new(u, v, w) - true_state.velocity;
         let line = true_state.position - site;
         let unit = line * (1.0 / line.length());
-        let across = |vector: crate::vector::Vector| (vector - unit * unit.dot(vector)).length();
-        let turning = across(true_state.velocity) / line.length();
-        rate = rate.max(unit.dot(off_rate).abs() + across(off) * turning);
+        let across = true_state.velocity - unit * unit.dot(true_state.velocity);
+        rate = rate.max((unit.dot(off_rate) + across.dot(off) / line.length()).abs());
         range = range.max(unit.dot(off).abs());
     }
     let legs = if order.direction == Direction::TwoWay { 2.0 } else { 1.0 };
     let wavelengths = legs * order.carrier / SPEED_OF_LIGHT;
     Ok(Bound {
-        hertz: wavelengths * (ARC_MARGIN_FACTOR * rate + VELOCITY_NOISE),
-        cycles: wavelengths * (ARC_MARGIN_FACTOR * range + POSITION_NOISE),
+        hertz: wavelengths * (ARC_MARGIN_FACTOR * rate + ARC_FLOOR),
+        cycles: wavelengths * (ARC_MARGIN_FACTOR * range + ARC_FLOOR),
     })
 }
 
@@ -344,7 +357,10 @@ pub fn bytes(words: &[u32]) -> Vec<u8> {
 /// # Errors
 /// When their number is not a multiple of four.
 pub fn words(bytes: &[u8]) -> anyhow::Result<Vec<u32>> {
-    ensure!(bytes.len().is_multiple_of(4), "{} bytes are no whole number of 32-bit words: cut short", bytes.len());
+    ensure!(
+        bytes.len().is_multiple_of(4),
+        "{} bytes are no whole number of 32-bit words: cut short",
+        bytes.len()
+    );
     Ok(bytes.chunks_exact(4).map(|four| u32::from_le_bytes([four[0], four[1], four[2], four[3]])).collect())
 }
-

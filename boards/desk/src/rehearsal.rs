@@ -163,7 +163,8 @@ impl<'a> Rehearsal<'a> {
     /// The carrier and the clock, exact.
     fn carrier(&self) -> anyhow::Result<(Frequency, Carrier)> {
         let millihertz = (self.baked.order.carrier * 1e3).round();
-        let frequency = Frequency::from_millihertz_nearest(millihertz as u64).context("the carrier is beyond the format")?;
+        let frequency = Frequency::from_millihertz_nearest(millihertz as u64)
+            .context("the carrier is beyond the format")?;
         Ok((frequency, Carrier::new(frequency, self.oscillator.clock)))
     }
 
@@ -243,7 +244,11 @@ impl<'a> Rehearsal<'a> {
             ticks: carrier.intervals(span, self.oscillator.clocks),
             proven: tuning.rounding(carrier.hertz(), &self.oscillator),
         };
-        ensure!(course.ticks > 0, "the pass is shorter than one interval of {} s", self.oscillator.interval());
+        ensure!(
+            course.ticks > 0,
+            "the pass is shorter than one interval of {} s",
+            self.oscillator.interval()
+        );
         estimates::follow(&course, stream, |motion| Ok(Run::begin(tuning, &self.oscillator, motion)?))
     }
 
@@ -312,7 +317,8 @@ impl Walk<'_> {
             .step(motion, quiet)
             .with_context(|| format!("interval {tick}, {:.3} s into the pass", to - self.origin))?;
         self.outcome.retunes += u64::from(made.retuned);
-        let ruled = self.rule.step(&self.bench.arc, from, to, !made.retuned && !self.bench.oscillator.steers_phase());
+        let ruled =
+            self.rule.step(&self.bench.arc, from, to, !made.retuned && !self.bench.oscillator.steers_phase());
         self.outcome.stages.interval(&self.bench, &made, (from, to), read(motion));
         self.oscillator.retune(made.first, made.ramp);
         for look in 0..=u64::from(LOOKS) {
@@ -339,10 +345,11 @@ impl Walk<'_> {
     /// Takes in an error of the frequency.
     fn frequency(&mut self, time: f64, hertz: f64) {
         let outcome = &mut self.outcome;
-        if !(hertz.abs() <= outcome.worst.hertz) {
+        let before = outcome.worst.hertz;
+        outcome.worst.frequency(hertz);
+        if outcome.worst.hertz > before {
             outcome.worst_time = time;
         }
-        outcome.worst.frequency(hertz);
         outcome.instants += 1;
         self.squares += hertz * hertz;
         let column = self.column(time);

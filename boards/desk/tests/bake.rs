@@ -1,7 +1,7 @@
 //! `bake` as a user runs it: files, source, and what it says to bad input.
 
 use shiftkeel::pass::{Arc, Direction, PassTable, TaggedAt};
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 use std::process::{Command, Output};
 
 const SYNTHETIC: &str = concat!(env!("CARGO_MANIFEST_DIR"), "/tests/data/synthetic.txt");
@@ -19,7 +19,7 @@ fn folder(name: &str) -> PathBuf {
 }
 
 /// `bake` of the synthetic pass with some arguments replaced or added.
-fn bake(place: &PathBuf, changes: &[&str]) -> Output {
+fn bake(place: &Path, changes: &[&str]) -> Output {
     let mut arguments = vec!["bake", "--elements", SYNTHETIC, "--site", "45.0,7.5,300"];
     if !changes.contains(&"--at") && !changes.contains(&"--after") {
         arguments.extend(["--at", "2026-06-01T12:12:00Z"]);
@@ -39,7 +39,7 @@ fn succeeds(output: &Output) -> String {
     text(&output.stdout)
 }
 
-fn words(place: &PathBuf, name: &str) -> Vec<u32> {
+fn words(place: &Path, name: &str) -> Vec<u32> {
     let bytes = std::fs::read(place.join(name)).expect("a file");
     assert_eq!(bytes.len() % 4, 0);
     bytes.chunks_exact(4).map(|four| u32::from_le_bytes(four.try_into().expect("four"))).collect()
@@ -65,7 +65,10 @@ fn files_hold_the_pass() {
     for part in ["276 bytes", "8 segments", "verified", "mHz", "cycles", "71.6 degrees"] {
         assert!(said.contains(part), "no '{part}' in\n{said}");
     }
-    let left: Vec<_> = std::fs::read_dir(&place).expect("a folder").map(|entry| entry.expect("a file").file_name()).collect();
+    let left: Vec<_> = std::fs::read_dir(&place)
+        .expect("a folder")
+        .map(|entry| entry.expect("a file").file_name())
+        .collect();
     assert_eq!(left.len(), 2, "nothing temporary is left: {left:?}");
 }
 
@@ -80,7 +83,16 @@ fn next_pass_direction_tag_and_partial() {
     assert_eq!((table.direction(), table.tagged_at()), (Direction::Up, TaggedAt::Spacecraft));
     // A flag without a value.
     let program = env!("CARGO_BIN_EXE_shiftkeel");
-    let plain = ["bake", "--elements", SYNTHETIC, "--site", "45.0,7.5,300", "--after", "2026-06-01", "--lateness-partial"];
+    let plain = [
+        "bake",
+        "--elements",
+        SYNTHETIC,
+        "--site",
+        "45.0,7.5,300",
+        "--after",
+        "2026-06-01",
+        "--lateness-partial",
+    ];
     let output = Command::new(program).args(plain).current_dir(&place).output().expect("it starts");
     succeeds(&output);
     let table = words(&place, "pass.table");
@@ -92,7 +104,9 @@ fn rust_and_c_source_hold_the_same_words() {
     let place = folder("bake_source");
     succeeds(&bake(&place, &["--source", "pass.rs", "--name", "LUNCH"]));
     succeeds(&bake(&place, &["--source", "pass.h", "--name", "LUNCH"]));
-    for (file, opening) in [("pass.rs", "pub static LUNCH_TABLE: [u32; "), ("pass.h", "static const uint32_t LUNCH_TABLE[")] {
+    for (file, opening) in
+        [("pass.rs", "pub static LUNCH_TABLE: [u32; "), ("pass.h", "static const uint32_t LUNCH_TABLE[")]
+    {
         let source = std::fs::read_to_string(place.join(file)).expect("source");
         let from = source.find(opening).unwrap_or_else(|| panic!("no {opening} in\n{source}"));
         let inside = &source[from + opening.len()..];
@@ -149,7 +163,10 @@ fn what_makes_no_sense_is_refused_and_leaves_no_file() {
         let output = bake(&place, changes);
         let message = text(&output.stderr);
         assert!(!output.status.success(), "{changes:?} succeeded");
-        assert!(message.contains(part) && !message.contains("panicked"), "{changes:?}: '{message}' does not say '{part}'");
+        assert!(
+            message.contains(part) && !message.contains("panicked"),
+            "{changes:?}: '{message}' does not say '{part}'"
+        );
         assert!(!place.join("pass.table").exists(), "{changes:?} left a table");
     }
 }

@@ -12,6 +12,7 @@ use shiftkeel_desk::geometric::Direction;
 use shiftkeel_desk::horizon::Horizon;
 use shiftkeel_desk::instant;
 use shiftkeel_desk::rehearsal::oscillator::Oscillator;
+use shiftkeel_desk::rehearsal::report::{padded, part_rows};
 use shiftkeel_desk::rehearsal::{Outcome, Rehearsal};
 use std::path::{Path, PathBuf};
 use std::process::{Command, Output};
@@ -36,7 +37,8 @@ fn synthetic() -> (ElementSet, Pass) {
     let set = file.sets()[0].clone();
     let time = instant::read("2026-06-01T12:12:00Z").expect("a time");
     let site = "45.0,7.5,300".parse().expect("a site");
-    let pass = Pass::find(&set, site, 0.0, Which::At(time), &Horizon::flat(0.0).expect("flat")).expect("a pass");
+    let pass =
+        Pass::find(&set, site, 0.0, Which::At(time), &Horizon::flat(0.0).expect("flat")).expect("a pass");
     (set, pass)
 }
 
@@ -76,7 +78,10 @@ fn device_of_32_bits_over_the_synthetic_pass() {
     let oscillator = Oscillator::new(100e6, 1e-3, Some(32), 0.0, None).expect("an oscillator");
     let outcome = fly(&set, pass, order(437e6, 1.0, Direction::Down), oscillator);
     let total = outcome.proven.total();
-    println!("proven {total:?}, seen {:?}, word {:?}, rule {:?}", outcome.worst, outcome.stages.word, outcome.stages.rule);
+    println!(
+        "proven {total:?}, seen {:?}, word {:?}, rule {:?}",
+        outcome.worst, outcome.stages.word, outcome.stages.rule
+    );
     assert!(total.hertz <= 0.10, "{total:?}");
     assert!(outcome.is_within(), "{:?} of {total:?}", outcome.worst);
     // At tick ends the phase is off the table's own by what the word could not express, and nothing else.
@@ -89,8 +94,9 @@ fn device_of_32_bits_over_the_synthetic_pass() {
 fn lines(inclination: f64, node: f64, eccentricity: f64, perigee: f64, anomaly: f64, motion: f64) -> String {
     let digits = (eccentricity * 1e7).round();
     let first = "1 90050U 26001A   26152.50000000  .00000000  00000-0  10000-4 0  999";
-    let second =
-        format!("2 90050 {inclination:8.4} {node:8.4} {digits:07.0} {perigee:8.4} {anomaly:8.4} {motion:11.8}    1");
+    let second = format!(
+        "2 90050 {inclination:8.4} {node:8.4} {digits:07.0} {perigee:8.4} {anomaly:8.4} {motion:11.8}    1"
+    );
     [first.to_string(), second]
         .map(|line| {
             let sum: u32 = line.chars().map(|c| if c == '-' { 1 } else { c.to_digit(10).unwrap_or(0) }).sum();
@@ -111,7 +117,8 @@ fn draw(state: &mut u64, low: f64, high: f64) -> f64 {
 /// A random object and a pass of it over a random site; none where the site does not see it for a minute.
 fn random_pass(state: &mut u64) -> Option<(ElementSet, Pass)> {
     let height = draw(state, 350e3, 1500e3);
-    let motion = (3.986_004_418e14 / (6_378_135.0 + height).powi(3)).sqrt() * 86_400.0 / std::f64::consts::TAU;
+    let motion =
+        (3.986_004_418e14 / (6_378_135.0 + height).powi(3)).sqrt() * 86_400.0 / std::f64::consts::TAU;
     let inclination = draw(state, 20.0, 160.0);
     let text = lines(
         inclination,
@@ -123,9 +130,14 @@ fn random_pass(state: &mut u64) -> Option<(ElementSet, Pass)> {
     );
     let set = ElementFile::read("random", &text).expect("elements").sets()[0].clone();
     let reach = inclination.min(180.0 - inclination);
-    let site = Site::from_degrees(draw(state, -reach, reach), draw(state, -180.0, 180.0), draw(state, -400.0, 4500.0));
+    let site = Site::from_degrees(
+        draw(state, -reach, reach),
+        draw(state, -180.0, 180.0),
+        draw(state, -400.0, 4500.0),
+    );
     let after = Which::After(instant::read("2026-06-01T12:00:00Z").expect("a time"));
-    let pass = Pass::find(&set, site.expect("a site"), 0.0, after, &Horizon::flat(0.0).expect("flat")).ok()?;
+    let pass =
+        Pass::find(&set, site.expect("a site"), 0.0, after, &Horizon::flat(0.0).expect("flat")).ok()?;
     (pass.end - pass.start > 60.0).then_some((set, pass))
 }
 
@@ -135,14 +147,18 @@ fn no_instant_of_100_random_passes_is_outside() {
         .into_par_iter()
         .map(|seed| {
             let mut state = seed.wrapping_mul(0xD134_2543_DE82_EF95);
-            let (set, pass) = std::iter::repeat_with(|| random_pass(&mut state)).flatten().next().expect("a pass");
+            let (set, pass) =
+                std::iter::repeat_with(|| random_pass(&mut state)).flatten().next().expect("a pass");
             let direction = if seed % 2 == 0 { Direction::Down } else { Direction::Up };
             let seconds = pass.end - pass.start;
             let outcome = fly(&set, pass, order(437e6, 10.0, direction), software());
             let (worst, total) = (outcome.worst, outcome.proven.total());
             assert!(outcome.ticks as f64 > 99.0 * seconds, "seed {seed}");
             assert!(outcome.is_within(), "seed {seed}, {direction:?}: {worst:?} of {total:?}");
-            assert!(total.hertz <= 0.02 && total.cycles <= 0.05, "seed {seed}: {total:?}");
+            assert!(total.hertz <= 0.011 && total.cycles <= 0.02, "seed {seed}: {total:?}");
+            let rows = part_rows(&outcome, &software());
+            let padded = padded(&rows);
+            assert!(padded.is_empty(), "seed {seed}: {padded:?} in {rows:?}");
             [worst.hertz / total.hertz, worst.cycles / total.cycles]
         })
         .collect();
@@ -152,7 +168,6 @@ fn no_instant_of_100_random_passes_is_outside() {
         (sorted[0], sorted[sorted.len() / 2], sorted[sorted.len() - 1])
     };
     println!("seen over proven, least, median, most: hertz {:?}, cycles {:?}", of(0), of(1));
-    assert!(ratios.iter().all(|[hertz, cycles]| *hertz > 0.1 && *cycles > 0.1), "a bound without substance");
 }
 
 fn run(arguments: &[&str]) -> Output {
@@ -179,11 +194,14 @@ fn summary(folder: &Path) -> serde_json::Value {
 fn bare_program_rehearses_and_writes_its_files() {
     let place = folder("bare");
     std::fs::create_dir_all(&place).expect("a folder");
-    let output = Command::new(env!("CARGO_BIN_EXE_shiftkeel")).current_dir(&place).output().expect("it starts");
+    let output =
+        Command::new(env!("CARGO_BIN_EXE_shiftkeel")).current_dir(&place).output().expect("it starts");
     let said = text(&output.stdout);
     assert!(output.status.success(), "{}", text(&output.stderr));
     // The small number never stands alone.
-    for block in ["PROVEN", "ASSUMED", "EXCLUDED", "INSTEAD", "ionosphere", "crystals", "No instant was outside"] {
+    for block in
+        ["PROVEN", "ASSUMED", "EXCLUDED", "INSTEAD", "ionosphere", "crystals", "No instant was outside"]
+    {
         assert!(said.contains(block), "no {block} in\n{said}");
     }
     assert!(output.stderr.is_empty(), "no terminal, no progress bar: {}", text(&output.stderr));
@@ -192,7 +210,10 @@ fn bare_program_rehearses_and_writes_its_files() {
     assert_eq!(found["within_bound"], true);
     assert!(number("ticks") > 72_000.0);
     assert!(number("worst_error_hz") <= number("proven_bound_hz") && number("proven_bound_hz") <= 0.011);
-    assert!(number("worst_error_cycles") <= number("proven_bound_cycles") && number("proven_bound_cycles") <= 0.02);
+    assert!(
+        number("worst_error_cycles") <= number("proven_bound_cycles")
+            && number("proven_bound_cycles") <= 0.02
+    );
     // One new frequency a second: 136 Hz for its start, 68 Hz for its middle (recomputed for the project's check
     // values: 135.95 Hz/s at the steepest, half a second each way).
     let worst = |name: &str| {
@@ -206,7 +227,9 @@ fn bare_program_rehearses_and_writes_its_files() {
     assert!((0.13..0.17).contains(&worst("first-order")), "{}", worst("first-order"));
     let picture = std::fs::read_to_string(place.join("target/rehearsal/plot.svg")).expect("a picture");
     assert!(picture.starts_with("<svg") && picture.trim_end().ends_with("</svg>"));
-    for words in ["Shift of the carrier", "Frequency error", "Phase error", "seconds after the start", "proven"] {
+    for words in
+        ["Shift of the carrier", "Frequency error", "Phase error", "seconds after the start", "proven"]
+    {
         assert!(picture.contains(words), "no '{words}' in the picture");
     }
 }
@@ -219,7 +242,17 @@ fn table_of_another_site_is_seen() {
     let (arc, table) = (arc.display().to_string(), table.display().to_string());
     let bake = |site: &str| {
         let output = run(&[
-            "bake", "--elements", SYNTHETIC, "--site", site, "--at", "2026-06-01T12:12:00Z", "--arc", &arc, "--table", &table,
+            "bake",
+            "--elements",
+            SYNTHETIC,
+            "--site",
+            site,
+            "--at",
+            "2026-06-01T12:12:00Z",
+            "--arc",
+            &arc,
+            "--table",
+            &table,
         ]);
         assert!(output.status.success(), "{}", text(&output.stderr));
     };
@@ -259,7 +292,10 @@ fn one_wrong_bit_of_a_table_is_seen() {
 /// CRC-32 (ISO-HDLC), bit by bit.
 fn crc32(bytes: &[u8]) -> u32 {
     !bytes.iter().fold(u32::MAX, |sum, byte| {
-        (0..8).fold(sum ^ u32::from(*byte), |sum, _| if sum & 1 == 1 { sum >> 1 ^ 0xEDB8_8320 } else { sum >> 1 })
+        (0..8).fold(
+            sum ^ u32::from(*byte),
+            |sum, _| if sum & 1 == 1 { sum >> 1 ^ 0xEDB8_8320 } else { sum >> 1 },
+        )
     })
 }
 

@@ -238,7 +238,10 @@ fn plan(
     for count in 1..=MOST_SEGMENTS {
         let left = cells - first;
         let covering = 32 - (left - 1).leading_zeros();
-        length = (length + 1).min(covering).min(LONGEST);
+        // The last one reaches past the end rather than be tiny: the rounding of its slope would be what bounds
+        // the whole table's.
+        let least = if count == 1 { 0 } else { length.saturating_sub(2) };
+        length = (length + 1).min(covering.max(least)).min(LONGEST);
         let fitted = loop {
             if let Some(fitted) = fit(units, settings, first, length, delay) {
                 break fitted;

@@ -73,7 +73,10 @@ impl PassArguments {
             ("--arc-millimetres", self.arc_millimetres),
         ];
         for (name, value) in given.into_iter().filter_map(|(name, value)| Some((name, value?))) {
-            ensure!(value > 0.0 && value.is_finite(), "{name} {value} is no tolerance; give a number above 0");
+            ensure!(
+                value > 0.0 && value.is_finite(),
+                "{name} {value} is no tolerance; give a number above 0"
+            );
         }
         let scale = (self.carrier / 437e6).max(1.0);
         Ok(Order {

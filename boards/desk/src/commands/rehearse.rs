@@ -5,10 +5,10 @@ use crate::age::ElementAge;
 use crate::baking::{Baked, words};
 use crate::elements::{ElementFile, ElementSet};
 use crate::frames::Site;
-use crate::instant;
-use crate::rehearsal::oscillator::Oscillator;
 use crate::geometric::Direction;
+use crate::instant;
 use crate::rehearsal::estimates::Stream;
+use crate::rehearsal::oscillator::Oscillator;
 use crate::rehearsal::report::{FollowedSummary, Summary};
 use crate::rehearsal::{Rehearsal, alternatives, lateness, plot};
 use anyhow::{Context, anyhow, bail, ensure};
@@ -60,8 +60,8 @@ impl FromStr for Pair {
 #[command(after_help = "\
 Without --elements an invented pass is flown: object 90001 over 45 N 7.5 E on 2026-06-01, 437 MHz. The oscillator is \
 looked at from the first to the last clock of every interval. The command fails when one instant is outside the proven \
-bound, and when the bound is padded: less than 0.3 of the whole was seen, or less than 0.2 of a part that makes up more \
-than 0.1 of the whole.
+bound, and when the bound is padded: what its parts were seen to do sums to less than 0.3 of it, or to less than 0.2 \
+of a part that makes up more than 0.1 of it.
 
 Examples:
   shiftkeel rehearse --elements pass.txt --site 45.0,7.5,300 --at 2026-06-01T12:12:00Z --carrier 145.9e6
@@ -153,21 +153,38 @@ pub fn run(arguments: &RehearseArguments) -> anyhow::Result<()> {
 }
 
 /// Steered by the table.
-fn by_table(arguments: &RehearseArguments, set: &ElementSet, rehearsal: &Rehearsal<'_>) -> anyhow::Result<()> {
+fn by_table(
+    arguments: &RehearseArguments,
+    set: &ElementSet,
+    rehearsal: &Rehearsal<'_>,
+) -> anyhow::Result<()> {
     let progress = bar();
     let outcome = rehearsal.run(|part| progress.set_position((part * 1000.0) as u64))?;
     progress.finish_and_clear();
     let alternatives = alternatives::all(rehearsal, outcome.span)?;
-    let late = arguments.late.map(|late| Ok::<_, anyhow::Error>((late, lateness::rows(rehearsal, rehearsal.baked, late)?)));
+    let late = arguments
+        .late
+        .map(|late| Ok::<_, anyhow::Error>((late, lateness::rows(rehearsal, rehearsal.baked, late)?)));
     let summary = Summary::new(set, rehearsal, &outcome, alternatives, late.transpose()?);
     let heading = heading(set, rehearsal, outcome.span)?;
-    super::print(&format!("{}\n  retuned {} times\n\n{}", heading.join("\n"), outcome.retunes, summary.text()))?;
-    keep(&arguments.out, &summary, |path| plot::draw(path, &plot::of_table(&heading, &outcome)))?;
+    super::print(&format!(
+        "{}\n  retuned {} times\n\n{}",
+        heading.join("\n"),
+        outcome.retunes,
+        summary.text()
+    ))?;
+    keep(&arguments.out, &summary, |path| {
+        plot::draw(path, &plot::of_table(&heading, &outcome, &summary.alternatives))
+    })?;
     verdict(&summary)
 }
 
 /// Steered by estimates.
-fn by_estimates(arguments: &RehearseArguments, set: &ElementSet, rehearsal: &Rehearsal<'_>) -> anyhow::Result<()> {
+fn by_estimates(
+    arguments: &RehearseArguments,
+    set: &ElementSet,
+    rehearsal: &Rehearsal<'_>,
+) -> anyhow::Result<()> {
     ensure!(
         rehearsal.baked.order.direction == Direction::Down,
         "estimates are measured on the downlink; leave --direction away"
@@ -182,7 +199,17 @@ fn by_estimates(arguments: &RehearseArguments, set: &ElementSet, rehearsal: &Reh
     stream.check()?;
     let followed = rehearsal.follow(&stream)?;
     let summary = FollowedSummary::new(set, rehearsal, &stream, &followed);
-    let heading = heading(set, rehearsal, followed.span)?;
+    let mut heading = heading(set, rehearsal, followed.span)?;
+    if let Some(line) = heading.get_mut(2) {
+        // There is a table, but here only the span is taken from it.
+        *line = format!(
+            "  range-rate estimates: {} a second of {} m/s, {} of {} wildly wrong",
+            stream.rate, stream.noise, followed.outliers, followed.estimates
+        );
+        if let Some((from, length)) = stream.gap {
+            write!(line, ", none for {length} s from {from} s on")?;
+        }
+    }
     super::print(&format!("{}\n\n{}", heading.join("\n"), summary.text()))?;
     keep(&arguments.out, &summary, |path| plot::draw(path, &plot::of_estimates(&heading, &followed)))?;
     summary.verdict()
@@ -209,7 +236,8 @@ fn scenario(arguments: &RehearseArguments) -> anyhow::Result<(ElementSet, Site, 
 }
 
 fn read_table(path: &Path) -> anyhow::Result<Vec<u32>> {
-    let bytes = std::fs::read(path).map_err(|error| anyhow!("cannot read the table {}: {error}", path.display()))?;
+    let bytes =
+        std::fs::read(path).map_err(|error| anyhow!("cannot read the table {}: {error}", path.display()))?;
     words(&bytes).with_context(|| path.display().to_string())
 }
 
@@ -265,9 +293,14 @@ fn heading(set: &ElementSet, rehearsal: &Rehearsal<'_>, span: (f64, f64)) -> any
 }
 
 /// Writes summary and picture.
-fn keep(out: &Path, summary: &impl Serialize, draw: impl Fn(&Path) -> anyhow::Result<()>) -> anyhow::Result<()> {
-    std::fs::create_dir_all(out)
-        .map_err(|error| anyhow!("the folder {} cannot be made: {error}; give another --out", out.display()))?;
+fn keep(
+    out: &Path,
+    summary: &impl Serialize,
+    draw: impl Fn(&Path) -> anyhow::Result<()>,
+) -> anyhow::Result<()> {
+    std::fs::create_dir_all(out).map_err(|error| {
+        anyhow!("the folder {} cannot be made: {error}; give another --out", out.display())
+    })?;
     let json = serde_json::to_string_pretty(summary)? + "\n";
     super::bake::write_whole(&out.join("summary.json"), json.as_bytes())?;
     draw(&out.join("plot.svg"))?;

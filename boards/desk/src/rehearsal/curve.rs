@@ -28,11 +28,10 @@ impl Curve {
         for piece in 0..count {
             let middle = from + (piece as f64 + 0.5) * PIECE;
             let mut values = [[0.0; NODES]; 2];
-            for node in 0..NODES {
+            let [delays, rapidities] = &mut values;
+            for (node, (delay, rapidity)) in delays.iter_mut().zip(rapidities).enumerate() {
                 let place = (PI * (node as f64 + 0.5) / NODES as f64).cos();
-                let [delay, rapidity] = model(middle + PIECE / 2.0 * place)?;
-                values[0][node] = delay;
-                values[1][node] = rapidity;
+                [*delay, *rapidity] = model(middle + PIECE / 2.0 * place)?;
             }
             pieces.push(values.map(|values| series(&values)));
         }

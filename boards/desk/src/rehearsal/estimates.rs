@@ -42,9 +42,16 @@ impl Stream {
     pub fn check(&self) -> anyhow::Result<()> {
         ensure!((1e-3..=1e3).contains(&self.rate), "{} estimates a second: give 0.001 to 1000", self.rate);
         ensure!((1e-6..=1e4).contains(&self.noise), "--noise {} m/s: give 1e-6 to 1e4", self.noise);
-        ensure!((0.0..=0.5).contains(&self.outliers), "--outliers {}: give a part from 0 to 0.5", self.outliers);
+        ensure!(
+            (0.0..=0.5).contains(&self.outliers),
+            "--outliers {}: give a part from 0 to 0.5",
+            self.outliers
+        );
         if let Some((from, length)) = self.gap {
-            ensure!(from >= 0.0 && length >= 0.0, "--gap {from},{length}: give two times in seconds, 0 or more");
+            ensure!(
+                from >= 0.0 && length >= 0.0,
+                "--gap {from},{length}: give two times in seconds, 0 or more"
+            );
         }
         Ok(())
     }
@@ -130,7 +137,11 @@ pub fn follow(
             stated_hertz: [0.0; 2],
             inside: 0.0,
             span: (course.origin, course.origin + length),
-            columns: Column::empty(&course.truth, (course.origin, length), COLUMNS.min(course.ticks as usize)),
+            columns: Column::empty(
+                &course.truth,
+                (course.origin, length),
+                COLUMNS.min(course.ticks as usize),
+            ),
         },
         squares: 0.0,
         stated: Vec::new(),
@@ -162,7 +173,8 @@ impl State<'_> {
     fn tick(&mut self, tick: u64, begin: &impl Fn(&Motion) -> anyhow::Result<Run>) -> anyhow::Result<()> {
         let carrier = self.course.carrier;
         let clocks = u64::from(self.course.oscillator.clocks);
-        let instant = |tick: u64| GpsTime::from_bits(self.course.start.to_bits() + carrier.grid(tick * clocks).0);
+        let instant =
+            |tick: u64| GpsTime::from_bits(self.course.start.to_bits() + carrier.grid(tick * clocks).0);
         let (now, then) = (instant(tick), instant(tick + 1));
         let to = carrier.seconds(((tick + 1) * clocks) as f64);
         while let Some(estimate) = self.source.until(now, &self.course) {

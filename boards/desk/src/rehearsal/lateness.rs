@@ -15,6 +15,9 @@ const LARGEST: f64 = 8.0;
 /// Time between two looks, s.
 const LOOK: f64 = 0.1;
 
+/// Rapidity at a time.
+type Source<'a> = &'a dyn Fn(f64) -> Result<f64, TableError>;
+
 /// Refuses what a table cannot be told.
 ///
 /// # Errors
@@ -36,7 +39,8 @@ pub fn rows(rehearsal: &Rehearsal<'_>, baked: &Baked, lateness: f64) -> anyhow::
     ensure!(table.has_lateness(), "this table cannot be told of lateness; bake it with --lateness-partial");
     let reference = baked.pass.reference_gps()?;
     let origin = table.start().seconds_since(reference);
-    let span = (origin + lateness.max(0.0), origin + table.end().seconds_since(table.start()) + lateness.min(0.0));
+    let span =
+        (origin + lateness.max(0.0), origin + table.end().seconds_since(table.start()) + lateness.min(0.0));
     let model = truth_model(baked, lateness)?;
     let late = Curve::hold(span.0, span.1, |t| Ok::<_, OrbitError>([model.delay(t)?, model.rapidity(t)?]))?;
     let geometry = baked.geometry(lateness)?;
@@ -45,7 +49,7 @@ pub fn rows(rehearsal: &Rehearsal<'_>, baked: &Baked, lateness: f64) -> anyhow::
     let plain = |t: f64| Ok(rapidity(table.at(reference.plus_seconds(t))?.rapidity.to_bits()));
     let partial = |t: f64| Ok(rapidity(table.at_late(reference.plus_seconds(t), told)?.rapidity.to_bits()));
     let again = |t: f64| Ok(geometry.delay_and_rapidity(t).1);
-    let rows: [(&'static str, &dyn Fn(f64) -> Result<f64, TableError>); 3] = [
+    let rows: [(&'static str, Source<'_>); 3] = [
         ("not told of it", &plain),
         ("told, through the table's partial", &partial),
         ("arc seen anew, as a fresh table would", &again),

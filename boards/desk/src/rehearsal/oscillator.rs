@@ -27,14 +27,20 @@ impl Oscillator {
     ///
     /// # Errors
     /// When the interval is no whole number of clocks, or the parts contradict one another.
-    pub fn new(clock: f64, tick: f64, bits: Option<u32>, deadband: f64, quiet: Option<(f64, f64)>) -> anyhow::Result<Self> {
+    pub fn new(
+        clock: f64,
+        tick: f64,
+        bits: Option<u32>,
+        deadband: f64,
+        quiet: Option<(f64, f64)>,
+    ) -> anyhow::Result<Self> {
         ensure!(
             (1.0..=1e10).contains(&clock),
             "--clock {clock} is not an oscillator clock; give hertz from 1 to 1e10, such as 48000"
         );
         let clocks = (clock * tick).round();
         ensure!(
-            clocks >= 1.0 && clocks < 4e9 && tick < 60.0,
+            (1.0..4e9).contains(&clocks) && tick < 60.0,
             "--tick {tick} is not usable: an interval lasts at least one clock and less than a minute"
         );
         ensure!(
@@ -43,8 +49,14 @@ impl Oscillator {
             clock * tick,
             clocks / clock
         );
-        ensure!(bits.is_none_or(|bits| (8..=63).contains(&bits)), "--bits runs from 8 to 63, the width of the device's word");
-        ensure!(deadband >= 0.0 && deadband < clock / 2.0, "--deadband {deadband} is not a change in hertz of 0 or more");
+        ensure!(
+            bits.is_none_or(|bits| (8..=63).contains(&bits)),
+            "--bits runs from 8 to 63, the width of the device's word"
+        );
+        ensure!(
+            deadband >= 0.0 && deadband < clock / 2.0,
+            "--deadband {deadband} is not a change in hertz of 0 or more"
+        );
         if let Some((every, length)) = quiet {
             ensure!(
                 length >= 0.0 && every > length && every.is_finite(),
@@ -56,7 +68,8 @@ impl Oscillator {
             "--deadband and --quiet are for a device that holds its word; give its width with --bits"
         );
         let millihertz = (clock * 1e3).round() as u64;
-        let clock = Frequency::from_millihertz_nearest(millihertz).context("the clock is beyond the format")?;
+        let clock =
+            Frequency::from_millihertz_nearest(millihertz).context("the clock is beyond the format")?;
         Ok(Self { clock, clocks: clocks as u32, bits, deadband, quiet })
     }
 
@@ -95,13 +108,18 @@ impl Tuning {
     ///
     /// # Errors
     /// The crate's own.
-    pub fn new(carrier: Frequency, direction: Direction, oscillator: &Oscillator) -> Result<Self, TuningError> {
+    pub fn new(
+        carrier: Frequency,
+        direction: Direction,
+        oscillator: &Oscillator,
+    ) -> Result<Self, TuningError> {
         let plan = RfPlan::direct(carrier, oscillator.clock);
         if direction == Direction::Up {
             // The fence of the rehearsal: 40 ppm to each side, less where the clock is slow.
             let reach = (carrier.to_bits() / 25_000).min(oscillator.clock.to_bits() / 100 * 49);
             let edge = |bits| Frequency::from_bits(bits);
-            let permission = Permission::to_radiate(edge(carrier.to_bits() - reach), edge(carrier.to_bits() + reach))?;
+            let permission =
+                Permission::to_radiate(edge(carrier.to_bits() - reach), edge(carrier.to_bits() + reach))?;
             return Channel::transmit(&plan, oscillator.clocks, &permission).map(Self::Transmit);
         }
         Channel::receive(&plan, oscillator.clocks).map(Self::Receive)
@@ -234,7 +252,12 @@ impl<const BITS: u32> Holding for Hold<BITS> {
     }
 }
 
-fn holding(bits: u32, tuning: &Tuning, motion: &Motion, deadband: u64) -> Result<Box<dyn Holding>, TuningError> {
+fn holding(
+    bits: u32,
+    tuning: &Tuning,
+    motion: &Motion,
+    deadband: u64,
+) -> Result<Box<dyn Holding>, TuningError> {
     macro_rules! of_width {
         ($($width:literal)*) => {
             match bits {
@@ -249,8 +272,10 @@ fn holding(bits: u32, tuning: &Tuning, motion: &Motion, deadband: u64) -> Result
             }
         };
     }
-    Ok(of_width!(8 9 10 11 12 13 14 15 16 17 18 19 20 21 22 23 24 25 26 27 28 29 30 31 32 33 34 35 36 37 38 39 40
-        41 42 43 44 45 46 47 48 49 50 51 52 53 54 55 56 57 58 59 60 61 62))
+    Ok(
+        of_width!(8 9 10 11 12 13 14 15 16 17 18 19 20 21 22 23 24 25 26 27 28 29 30 31 32 33 34 35 36 37 38 39 40
+        41 42 43 44 45 46 47 48 49 50 51 52 53 54 55 56 57 58 59 60 61 62),
+    )
 }
 
 /// Exact phases of a carrier at a clock: integer and fraction apart, so that no digit is lost over a pass.

@@ -1,5 +1,6 @@
 //! The picture: shift, and errors with their bounds, over time.
 
+use super::alternatives::Alternative;
 use super::estimates::Followed;
 use super::{Column, Outcome, report};
 use anyhow::anyhow;
@@ -14,12 +15,14 @@ const FINER: u32 = 8;
 const WIDTH: u32 = 960;
 const HEADING: u32 = 86;
 const PANEL: u32 = 250;
+const BAR: u32 = 22;
 /// Ink and its lighter companions; the two colours keep apart for any kind of colour vision (Okabe and Ito).
 const INK: RGBColor = RGBColor(38, 42, 48);
 const QUIET: RGBColor = RGBColor(98, 104, 112);
 const FAINT: RGBColor = RGBColor(222, 225, 229);
 const SEEN: RGBColor = RGBColor(0, 114, 178);
 const BOUND: RGBColor = RGBColor(213, 94, 0);
+const OTHER: RGBColor = RGBColor(150, 156, 164);
 
 type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
 type Drawn = Result<(), Box<dyn std::error::Error>>;
@@ -45,12 +48,16 @@ struct Panel {
     largest: f64,
 }
 
+/// Worst errors side by side, each with its name and colour, Hz.
+type Bars = Vec<(String, f64, RGBColor)>;
+
 /// All of it.
 #[derive(Clone, Debug)]
 pub struct Picture {
     heading: Vec<String>,
     span: (f64, f64),
     panels: Vec<Panel>,
+    bars: Bars,
 }
 
 /// A column's band, scaled.
@@ -74,14 +81,14 @@ fn unit_of(hertz: f64) -> (&'static str, f64) {
 }
 
 /// Of a rehearsal by a table.
-pub fn of_table(heading: &[String], outcome: &Outcome) -> Picture {
+pub fn of_table(heading: &[String], outcome: &Outcome, alternatives: &[Alternative]) -> Picture {
     let total = outcome.proven.total();
     let (unit, scale) = unit_of(total.hertz);
     let worst = report::hertz(outcome.worst.hertz);
     let mut panels = vec![
         shift_panel(&outcome.columns),
         Panel {
-            title: format!("Frequency error: least and largest; worst {worst}, proven {}", report::hertz(total.hertz)),
+            title: format!("Frequency error: worst {worst}, proven {}", report::hertz(total.hertz)),
             unit,
             seen: band(&outcome.columns, |column| column.hertz, scale),
             limit: Limit::Level("proven".to_string(), total.hertz * scale),
@@ -100,15 +107,20 @@ pub fn of_table(heading: &[String], outcome: &Outcome) -> Picture {
             largest: outcome.worst.cycles * 1e3,
         });
     }
-    Picture { heading: heading.to_vec(), span: outcome.span, panels }
+    let mut bars = vec![
+        ("this oscillator, seen".to_string(), outcome.worst.hertz, SEEN),
+        ("this oscillator, proven".to_string(), total.hertz, BOUND),
+    ];
+    bars.extend(alternatives.iter().map(|row| (row.name.to_string(), row.worst_hz, OTHER)));
+    Picture { heading: heading.to_vec(), span: outcome.span, panels, bars }
 }
 
 /// Of a rehearsal by estimates.
 pub fn of_estimates(heading: &[String], followed: &Followed) -> Picture {
     let [median, _] = followed.stated_hertz;
     let (unit, scale) = unit_of(median);
-    // A long gap would squeeze everything else: the panel ends at some medians.
-    let most = (6.0 * median).min(followed.worst_hertz.max(2.0 * median)) * scale;
+    // A long gap would squeeze everything else: the panel ends at 25 medians.
+    let most = (25.0 * median).min(followed.worst_hertz.max(2.0 * median)) * scale;
     let error = Panel {
         title: format!(
             "Frequency error: worst {}, rms {}; not proven, the stated band holds in about 95 %",
@@ -120,7 +132,12 @@ pub fn of_estimates(heading: &[String], followed: &Followed) -> Picture {
         limit: Limit::Band("stated".to_string(), band(&followed.columns, |column| column.cycles, scale)),
         largest: most,
     };
-    Picture { heading: heading.to_vec(), span: followed.span, panels: vec![shift_panel(&followed.columns), error] }
+    Picture {
+        heading: heading.to_vec(),
+        span: followed.span,
+        panels: vec![shift_panel(&followed.columns), error],
+        bars: Vec::new(),
+    }
 }
 
 /// Draws into an SVG file.
@@ -128,7 +145,7 @@ pub fn of_estimates(heading: &[String], followed: &Followed) -> Picture {
 /// # Errors
 /// When the file cannot be written.
 pub fn draw(path: &Path, picture: &Picture) -> anyhow::Result<()> {
-    let (width, height) = (WIDTH, HEADING + PANEL * picture.panels.len() as u32 + 20);
+    let (width, height) = (WIDTH, HEADING + PANEL * picture.panels.len() as u32 + picture.bars_height() + 40);
     let mut svg = String::new();
     {
         let root = SVGBackend::with_string(&mut svg, (width * FINER, height * FINER)).into_drawing_area();
@@ -158,13 +175,75 @@ impl Picture {
             let below = if line == 0 { 12.0 } else { 22.0 + 15.0 * line as f64 };
             top.draw_text(text.trim(), &style, (px(20.0), px(below)))?;
         }
-        let rest = rest.margin(0, px(10.0), px(10.0), px(20.0));
-        let areas = rest.split_evenly((self.panels.len(), 1));
+        let mut rest = rest.margin(0, px(10.0), px(10.0), px(20.0));
         let last = self.panels.len() - 1;
-        for (at, (panel, area)) in self.panels.iter().zip(&areas).enumerate() {
-            panel.paint(area, self.span, at == last)?;
+        for (at, panel) in self.panels.iter().enumerate() {
+            let names_time = at == last;
+            let (area, below) = rest.split_vertically(px(f64::from(PANEL + if names_time { 18 } else { 0 })));
+            panel.paint(&area, self.span, names_time)?;
+            rest = below;
+        }
+        if !self.bars.is_empty() {
+            self.paint_bars(&rest)?;
         }
         root.present()?;
+        Ok(())
+    }
+}
+
+impl Picture {
+    fn bars_height(&self) -> u32 {
+        if self.bars.is_empty() { 0 } else { 78 + BAR * self.bars.len() as u32 }
+    }
+
+    /// Worst errors on a logarithmic scale.
+    fn paint_bars(&self, area: &Area<'_>) -> Drawn {
+        let sizes = self.bars.iter().map(|(_, hertz, _)| hertz.max(1e-9));
+        let least = sizes.clone().fold(f64::INFINITY, f64::min);
+        let most = sizes.fold(0.0, f64::max);
+        let (from, to) = (10f64.powf((least / 2.0).log10().floor()), 10f64.powf((most * 3.0).log10().ceil()));
+        area.draw_text(
+            "Worst frequency error, and what others would make of this pass",
+            &font(13.0, INK),
+            (px(66.0), px(10.0)),
+        )?;
+        let count = self.bars.len() as f64;
+        let mut chart = ChartBuilder::on(area)
+            .margin_top(px(30.0))
+            .margin_right(px(58.0))
+            .margin_bottom(px(4.0))
+            .x_label_area_size(px(38.0))
+            .y_label_area_size(px(330.0))
+            .build_cartesian_2d((from..to).log_scale(), 0.0..count)?;
+        let decade =
+            |hertz: &f64| report::hertz(*hertz).replace(".000", "").replace(".00", "").replace(".0 ", " ");
+        chart
+            .configure_mesh()
+            .disable_y_mesh()
+            .disable_y_axis()
+            .light_line_style(TRANSPARENT)
+            .bold_line_style(FAINT.stroke_width(FINER))
+            .axis_style(QUIET.stroke_width(FINER))
+            .label_style(font(11.5, INK))
+            .axis_desc_style(font(12.0, INK))
+            .set_all_tick_mark_size(px(4.0))
+            .x_labels(8)
+            .x_label_formatter(&decade)
+            .x_desc("largest difference from the reference")
+            .draw()?;
+        for (at, (name, hertz, colour)) in self.bars.iter().enumerate() {
+            let middle = count - at as f64 - 0.5;
+            let bar = [(from, middle - 0.28), (hertz.max(from), middle + 0.28)];
+            chart.draw_series([Rectangle::new(bar, colour.filled())])?;
+            let right = font(11.5, INK).pos(Pos::new(HPos::Left, VPos::Center));
+            let beside = hertz.max(from) * (to / from).powf(0.012);
+            chart.plotting_area().draw(&Text::new(report::hertz(*hertz), (beside, middle), right))?;
+            let place = chart.backend_coord(&(from, middle));
+            let left = font(11.5, INK).pos(Pos::new(HPos::Right, VPos::Center));
+            let corner = area.get_pixel_range();
+            let inside = (place.0 - corner.0.start - px(8.0), place.1 - corner.1.start);
+            area.draw_text(name, &left, inside)?;
+        }
         Ok(())
     }
 }
@@ -178,9 +257,9 @@ impl Panel {
     fn paint(&self, area: &Area<'_>, span: (f64, f64), names_time: bool) -> Drawn {
         let reach = self.reach();
         let length = span.1 - span.0;
-        area.draw_text(&self.title, &font(13.0, INK), (px(66.0), px(4.0)))?;
+        area.draw_text(&self.title, &font(13.0, INK), (px(66.0), px(10.0)))?;
         let mut chart = ChartBuilder::on(area)
-            .margin_top(px(24.0))
+            .margin_top(px(30.0))
             .margin_right(px(58.0))
             .x_label_area_size(px(if names_time { 38.0 } else { 20.0 }))
             .y_label_area_size(px(66.0))
@@ -211,7 +290,7 @@ impl Panel {
         };
         let beside = |text: &str, value: f64, colour: RGBColor| {
             let style = font(11.5, colour).pos(Pos::new(HPos::Left, VPos::Center));
-            Text::new(text.to_string(), (length * 1.008, inside(value)), style)
+            Text::new(text.to_string(), (length * 1.013, inside(value)), style)
         };
         match &self.limit {
             Limit::None => {

@@ -11,9 +11,10 @@ use serde::Serialize;
 use shiftkeel::tuning::{Assumed, Assumptions, Bound, Excluded, ProvenPart};
 use std::fmt::Write;
 
-/// The total counts as padded when less than this part of it was seen.
-const LEAST_OF_TOTAL: f64 = 0.3;
-/// A part that makes up more than this of the total ...
+/// Less than this part of the whole bound backed by what its parts were seen to do counts as padded. The parts do
+/// not peak at the same instant, so it is their sum that is held against the bound, not the worst of the whole.
+const LEAST_OF_ALL: f64 = 0.3;
+/// A part that makes up more than this of the whole ...
 const SUBSTANTIAL: f64 = 0.1;
 /// ... counts as padded when less than this of it was seen.
 const LEAST_OF_PART: f64 = 0.2;
@@ -119,28 +120,56 @@ fn seen_of(part: ProvenPart, outcome: &Outcome, oscillator: &Oscillator) -> Opti
     }
 }
 
-/// Parts that count as padded, with the figures.
-fn padded(rows: &[PartRow], total: &Bound, worst: &Seen) -> Vec<String> {
+/// The proven parts that are not zero, with what was seen of each.
+pub fn part_rows(outcome: &Outcome, oscillator: &Oscillator) -> Vec<PartRow> {
+    let parts = ProvenPart::ALL.into_iter().filter(|&part| outcome.proven.part(part) != Bound::default());
+    parts
+        .map(|part| {
+            let bound = outcome.proven.part(part);
+            let seen = seen_of(part, outcome, oscillator);
+            PartRow {
+                part: part.name(),
+                bound_hz: bound.hertz,
+                seen_hz: seen.map(|seen| seen.hertz),
+                bound_cycles: finite(bound.cycles),
+                // The phase of the arithmetic is inside the table's, which is read through it.
+                seen_cycles: seen
+                    .filter(|_| bound.cycles.is_finite() && part != ProvenPart::Arithmetic)
+                    .map(|seen| seen.cycles),
+            }
+        })
+        .collect()
+}
+
+/// Bounds that are far above what was seen, with the figures.
+pub fn padded(rows: &[PartRow]) -> Vec<String> {
+    let hertz: Vec<_> = rows.iter().map(|row| (row.part, row.seen_hz, row.bound_hz)).collect();
+    let cycles: Vec<_> =
+        rows.iter().filter_map(|row| Some((row.part, row.seen_cycles, row.bound_cycles?))).collect();
+    let whole = cycles.len() == rows.len();
+    let mut found = padded_in(&hertz, "Hz");
+    if whole {
+        found.extend(padded_in(&cycles, "cycles"));
+    }
+    found
+}
+
+/// The same in one unit: name, seen, bound.
+fn padded_in(parts: &[(&str, Option<f64>, f64)], unit: &str) -> Vec<String> {
+    let total: f64 = parts.iter().map(|(_, _, bound)| bound).sum();
+    let backed: f64 = parts.iter().filter_map(|(_, seen, _)| *seen).sum();
     let mut found = Vec::new();
-    let mut judge = |name: &str, unit: &str, seen: f64, bound: f64, least: f64| {
+    let mut judge = |name: &str, seen: f64, bound: f64, least: f64| {
         if seen < least * bound {
             found.push(format!("{name}: {seen:.3e} of {bound:.3e} {unit} seen, less than {least}"));
         }
     };
-    judge("all together", "Hz", worst.hertz, total.hertz, LEAST_OF_TOTAL);
-    if total.cycles.is_finite() {
-        judge("all together", "cycles", worst.cycles, total.cycles, LEAST_OF_TOTAL);
-    }
-    for row in rows {
-        if let Some(seen) = row.seen_hz
-            && row.bound_hz > SUBSTANTIAL * total.hertz
+    judge("all parts", backed, total, LEAST_OF_ALL);
+    for &(name, seen, bound) in parts {
+        if let Some(seen) = seen
+            && bound > SUBSTANTIAL * total
         {
-            judge(row.part, "Hz", seen, row.bound_hz, LEAST_OF_PART);
-        }
-        if let (Some(seen), Some(bound)) = (row.seen_cycles, row.bound_cycles)
-            && bound > SUBSTANTIAL * total.cycles
-        {
-            judge(row.part, "cycles", seen, bound, LEAST_OF_PART);
+            judge(name, seen, bound, LEAST_OF_PART);
         }
     }
     found
@@ -158,24 +187,7 @@ impl Summary {
         let pass = &rehearsal.baked.pass;
         let carrier = rehearsal.baked.order.carrier;
         let total = outcome.proven.total();
-        let proven: Vec<PartRow> = ProvenPart::ALL
-            .into_iter()
-            .filter(|&part| outcome.proven.part(part) != Bound::default())
-            .map(|part| {
-                let bound = outcome.proven.part(part);
-                let seen = seen_of(part, outcome, &rehearsal.oscillator);
-                PartRow {
-                    part: part.name(),
-                    bound_hz: bound.hertz,
-                    seen_hz: seen.map(|seen| seen.hertz),
-                    bound_cycles: finite(bound.cycles),
-                    // The phase of the arithmetic is inside the table's, which is read through it.
-                    seen_cycles: seen
-                        .filter(|_| bound.cycles.is_finite() && part != ProvenPart::Arithmetic)
-                        .map(|seen| seen.cycles),
-                }
-            })
-            .collect();
+        let proven = part_rows(outcome, &rehearsal.oscillator);
         let age = ElementAge::new(set, pass.reference());
         let assumptions = Assumptions { lateness: age.lateness, ..Assumptions::default() };
         let assumed = Assumed::of(&assumptions, carrier, rehearsal.table.extremes().rate);
@@ -196,7 +208,7 @@ impl Summary {
             worst_error_cycles: steered.then_some(outcome.worst.cycles),
             proven_bound_cycles: finite(total.cycles),
             within_bound: outcome.is_within(),
-            padded: padded(&proven, &total, &outcome.worst),
+            padded: padded(&proven),
             proven,
             assumed: assumed.parts.map(|(part, hz)| EstimateRow { part, hz }).to_vec(),
             assumed_total_hz: assumed.total(),
@@ -225,7 +237,8 @@ impl Summary {
             count(self.ticks),
             count(self.instants)
         )?;
-        let headings = ["part", "seen Hz", "bound Hz", "seen/bound", "seen cycles", "bound cycles", "seen/bound"];
+        let headings =
+            ["part", "seen Hz", "bound Hz", "seen/bound", "seen cycles", "bound cycles", "seen/bound"];
         let mut rows: Vec<Vec<String>> = self.proven.iter().map(PartRow::cells).collect();
         rows.push(
             PartRow {
@@ -240,12 +253,16 @@ impl Summary {
         text.push_str(&indented(&crate::commands::table(&headings, &rows)));
         writeln!(
             text,
-            "  worst at {}, rms {}; the reference itself is certain to {}\n",
+            "  worst at {}, rms {}. Each part is seen by its own stage: arc against orbit, table against arc,\n  \
+             mean steps against exact delays, words against steps, and the rule of steering against the motion.\n",
             self.worst_utc,
-            hertz(self.rms_error_hz),
-            hertz(self.reference_noise_hz)
+            hertz(self.rms_error_hz)
         )?;
-        writeln!(text, "ASSUMED: one sigma each, common practice; together {}", hertz(self.assumed_total_hz))?;
+        writeln!(
+            text,
+            "ASSUMED: one sigma each, common practice; together {}",
+            hertz(self.assumed_total_hz)
+        )?;
         let estimate = |row: &EstimateRow| vec![row.part.to_string(), hertz(row.hz)];
         text.push_str(&lines(self.assumed.iter().map(estimate)));
         writeln!(text, "\nEXCLUDED: not in the model; estimates above 10 degrees")?;
@@ -270,21 +287,26 @@ impl Summary {
     }
 }
 
+/// Bounds below these are under the rounding of the f64 comparison itself: no ratio is made of them.
+const COMPARED_HERTZ: f64 = 1e-5;
+const COMPARED_CYCLES: f64 = 1e-7;
+
 impl PartRow {
     fn cells(&self) -> Vec<String> {
-        let number = |value: Option<f64>| value.map_or_else(|| "-".to_string(), |value| format!("{value:.3e}"));
-        let ratio = |seen: Option<f64>, bound: Option<f64>| match (seen, bound) {
-            (Some(seen), Some(bound)) if bound > 0.0 => format!("{:.2}", seen / bound),
+        let number =
+            |value: Option<f64>| value.map_or_else(|| "-".to_string(), |value| format!("{value:.3e}"));
+        let ratio = |seen: Option<f64>, bound: Option<f64>, least: f64| match (seen, bound) {
+            (Some(seen), Some(bound)) if bound > least => format!("{:.2}", seen / bound),
             _ => "-".to_string(),
         };
         vec![
             self.part.to_string(),
             number(self.seen_hz),
             number(Some(self.bound_hz)),
-            ratio(self.seen_hz, Some(self.bound_hz)),
+            ratio(self.seen_hz, Some(self.bound_hz), COMPARED_HERTZ),
             number(self.seen_cycles),
             number(self.bound_cycles),
-            ratio(self.seen_cycles, self.bound_cycles),
+            ratio(self.seen_cycles, self.bound_cycles, COMPARED_CYCLES),
         ]
     }
 }

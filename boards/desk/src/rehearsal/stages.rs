@@ -27,23 +27,23 @@ pub struct Seen {
 impl Seen {
     /// Takes in an error of the frequency.
     pub fn frequency(&mut self, hertz: f64) {
-        // Not `max`, which would pass over what is not a number.
-        if !(hertz.abs() <= self.hertz) {
-            self.hertz = hertz.abs();
-        }
+        self.hertz = larger(self.hertz, hertz);
     }
 
     /// Takes in an error of the phase.
     pub fn phase(&mut self, cycles: f64) {
-        if !(cycles.abs() <= self.cycles) {
-            self.cycles = cycles.abs();
-        }
+        self.cycles = larger(self.cycles, cycles);
     }
 
     /// Whether it is inside a bound.
     pub fn is_within(&self, bound: &Bound) -> bool {
         self.hertz <= bound.hertz && self.cycles <= bound.cycles
     }
+}
+
+/// The larger in size; what is not a number counts as infinite and so is never inside a bound.
+fn larger(so_far: f64, error: f64) -> f64 {
+    if error.is_nan() { f64::INFINITY } else { so_far.max(error.abs()) }
 }
 
 /// A phase error brought to half a cycle.
