@@ -15,6 +15,8 @@ pub mod plans;
 #[cfg(feature = "costs")]
 pub mod routines;
 #[cfg(feature = "harness")]
+pub mod stack;
+#[cfg(feature = "harness")]
 mod start;
 
 /// Makes `$main`, a `fn()`, the program: called once, then the emulator exits with success.

@@ -4,8 +4,8 @@ use crate::console;
 use shiftkeel::pass::bake::{Request, bake_arc};
 use shiftkeel::pass::{Arc, Direction, Geometry, MAX_ARC_WORDS, PassTable, Site, TaggedAt};
 
-/// Words of the largest table that the programs make room for: 4 KiB.
-pub const TABLE_WORDS: usize = 1024;
+/// Words of the largest table that the programs make room for: 1 KiB.
+pub const TABLE_WORDS: usize = 256;
 
 /// Words of an arc, as many as there are in the file.
 pub struct ArcFile {

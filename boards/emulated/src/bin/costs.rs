@@ -8,13 +8,15 @@ program!(print);
 fn print() {
     console::text("instructions (not cycles) a call, net of an empty harness\n");
     console::text("routine                                      mean       max  digest of outputs\n");
-    routines::all(report);
-    routines::states(|name, bytes| {
-        console::text("RAM ");
-        console::left(name, 36);
-        console::decimal(bytes as u64, 10);
-        console::text("\n");
-    });
+    routines::all(report, bytes);
+    routines::states(bytes);
+}
+
+fn bytes(name: &str, bytes: usize) {
+    console::text("RAM ");
+    console::left(name, 36);
+    console::decimal(bytes as u64, 10);
+    console::text("\n");
 }
 
 fn report(name: &str, cost: &Cost) {

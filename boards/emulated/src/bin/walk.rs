@@ -142,6 +142,7 @@ fn transmit(table: &PassTable<'_>) {
     show("phases", count, phases);
 }
 
+#[inline(never)]
 fn write_table(file: &core::ffi::CStr, table: &PassTable<'_>) {
     let mut bytes = [0; 4 * TABLE_WORDS];
     for (bytes, word) in bytes.chunks_exact_mut(4).zip(table.words()) {

@@ -13,9 +13,12 @@ use crate::count::{Cost, Opaque, cost};
 /// Takes each routine's name and cost.
 pub type Report = fn(&str, &Cost);
 
+/// Takes a name and bytes of RAM.
+pub type Bytes = fn(&str, usize);
+
 /// Counts every routine.
-pub fn all(report: Report) {
-    pass::table(report);
+pub fn all(report: Report, bytes: Bytes) {
+    pass::table(report, bytes);
     channel::channel(report);
     follow::velocity(report);
     rapidity::from_speeds(report);
@@ -39,7 +42,7 @@ fn line<I: Opaque, O: Opaque>(
 }
 
 /// Bytes of RAM that each state takes.
-pub fn states(report: fn(&str, usize)) {
+pub fn states(report: Bytes) {
     use core::mem::size_of;
     report("PassTable", size_of::<shiftkeel::pass::PassTable<'_>>());
     report("Channel", size_of::<shiftkeel::tuning::Channel<false>>());

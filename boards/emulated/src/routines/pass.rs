@@ -1,22 +1,24 @@
 //! The library's pass: the table at an instant, and once the whole bake.
 
-use super::{Report, channel, line, sample};
+use super::{Bytes, Report, channel, line, sample};
 use crate::count::{INPUTS, in_memory, once};
 use crate::pass::{ArcFile, TABLE_WORDS, bake};
+use crate::stack::depth;
 use shiftkeel::pass::{Direction, PassTable};
 use shiftkeel::rapidity::Motion;
 use shiftkeel::time::GpsTime;
 
 /// Bakes a table from the arc in `pass.arc`, and asks it.
-pub fn table(report: Report) {
+pub fn table(report: Report, bytes: Bytes) {
     let file = ArcFile::read(c"pass.arc");
     let arc = file.arc();
     let mut buffer = [0; TABLE_WORDS];
     let digest = |table: &PassTable<'_>| table.digest().into();
     let (cost, _) = once(|| bake(&mut buffer, &arc, Direction::Up), digest);
     report("pass::bake_arc,thousands", &cost);
-    let (cost, table) = once(|| bake(&mut buffer, &arc, Direction::Down), digest);
+    let (stack, (cost, table)) = depth(|| once(|| bake(&mut buffer, &arc, Direction::Down), digest));
     report("pass::bake_arc-with-lateness,thousands", &cost);
+    bytes("stack:bake_arc", stack);
     let instant = |index| instant(&table, index);
     line(report, "PassTable::at", instant, |time| {
         let mut table = &table;
