@@ -98,7 +98,11 @@ const fn rounded(value: u64, exponent: i32) -> Rounded {
 /// Error: rounding 0.5 units of the mantissa, at most 0.25 for `low`, which is cut off where the value falls
 /// just below a power of two, else 0.125; 0.502 is the most seen.
 pub(crate) const fn factor(x: i64) -> Rounded {
-    let power = power::<60>(x);
+    factor_of_power(power::<60>(x))
+}
+
+/// A power, rounded.
+pub(crate) const fn factor_of_power(power: Power) -> Rounded {
     let shift = (power.high >> 63) ^ 1;
     let value = power.high << shift;
     // 1.995 2^60 at most where the shift is 0, else just below 2^61, which rounding may reach.

@@ -55,6 +55,15 @@ const fn logarithm_of_one_plus(z: i64) -> i64 {
     z.wrapping_sub(about_high_i64(square, half) >> 5)
 }
 
+/// ln((1 + b)/(1 - b)) of a velocity ratio with 63 fraction bits; `None` at -1.
+pub(crate) const fn logarithm_of_beta(beta: i64) -> Option<Logarithm> {
+    const ONE: u64 = 1 << 63;
+    if beta == i64::MIN {
+        return None;
+    }
+    Some(logarithm(ONE.wrapping_add(beta as u64)).minus(logarithm(ONE.wrapping_sub(beta as u64))))
+}
+
 impl Logarithm {
     /// The difference: the logarithm of the ratio.
     pub(crate) const fn minus(self, other: Self) -> Self {
