@@ -64,6 +64,13 @@ impl ShiftOffset32 {
     }
 }
 
+/// 128 / ln 2 with 7 fraction bits.
+pub(super) const STEPS: i32 = 23_637;
+/// ln 2 / 128 with 39 fraction bits, taken modulo 2^-7 ...
+pub(super) const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
+/// ... and the next 16.
+pub(super) const STEP_LOW: i32 = 53_711;
+
 /// `x` where `sign` is 0, -`x` where it is -1.
 #[inline(always)]
 const fn signed(x: i32, sign: i32) -> i32 {
@@ -175,10 +182,6 @@ pub(super) const fn power_from_steps<const NEAREST: bool>(steps: i32, remainder:
 /// exp(x) of x with 28 or 27 fraction bits.
 #[inline(always)]
 const fn power<const FRACTION_BITS: u32>(x: i32) -> Power32 {
-    // 128 / ln 2 with 7 fraction bits; ln 2 / 128 with 39 fraction bits, and the next 16.
-    const STEPS: i32 = 23_637;
-    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
-    const STEP_LOW: i32 = 53_711;
     let steps = (x >> 16).wrapping_mul(STEPS).wrapping_add(1 << (FRACTION_BITS - 10)) >> (FRACTION_BITS - 9);
     let remainder = (x << (39 - FRACTION_BITS))
         .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
@@ -245,9 +248,6 @@ pub const fn factor_of_rapidity(rapidity: I4F28) -> ShiftFactor32 {
 /// assert!(factor.mantissa() - (1 << 31) < 4); // 0.6 in 31 bits is 0.2 steps high
 /// ```
 pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
-    const STEPS: i32 = 23_637;
-    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
-    const STEP_LOW: i32 = 53_711;
     let bits = beta.to_bits();
     if bits == i32::MIN {
         return ShiftFactor32 { mantissa: 0, exponent: 0 };

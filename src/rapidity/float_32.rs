@@ -129,10 +129,10 @@ pub const fn factor_of_rapidity(rapidity: f32) -> f32 {
     let bits = rapidity.to_bits();
     let (size, sign) = (bits & 0x7fff_ffff, sign(rapidity));
     let parts = parts(rapidity);
-    if size.wrapping_sub(LEAST) < MOST - LEAST {
-        if let Some(factor) = float_quick::factor_of_rapidity(parts, sign) {
-            return factor;
-        }
+    if size.wrapping_sub(LEAST) < MOST - LEAST
+        && let Some(factor) = float_quick::factor_of_rapidity(parts, sign)
+    {
+        return factor;
     }
     if size > 0x7f80_0000 {
         return NAN;

@@ -4,7 +4,9 @@
 //! functions of [`super::float_32`] go on in 64 bits. That happens for one float in 128.
 
 use super::coefficients::{LOGARITHMS, RECIPROCALS};
-use super::fixed_32::{Power32, logarithm_of_one_plus, offset_of_power, power_from_steps, small_bend};
+use super::fixed_32::{
+    Power32, STEP_HIGH, STEP_LOW, STEPS, logarithm_of_one_plus, offset_of_power, power_from_steps, small_bend,
+};
 use super::float_32::Parts;
 use super::wide_product::{high_i32, high_square_i32, middle_u32_u16, product_i32};
 
@@ -41,10 +43,8 @@ const fn clear_power(power: Power32) -> Option<f32> {
 /// exp(x) of 2^-25 <= |x| < 127, times 2^`DOUBLINGS`; within 2^-37.
 #[inline(always)]
 pub(super) const fn power<const DOUBLINGS: i32>(parts: Parts, sign: u32) -> Power32 {
-    /// 128 / ln 2 with 22 fraction bits; ln 2 / 128 with 39 fraction bits, and the next 16.
+    /// 128 / ln 2 with 22 fraction bits.
     const STEPS: i32 = 774_541_002;
-    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
-    const STEP_LOW: i32 = 53_711;
     let mantissa = if sign == 0 { parts.mantissa as i32 } else { (parts.mantissa as i32).wrapping_neg() };
     let exponent = parts.exponent.wrapping_add(DOUBLINGS);
     // With 24 fraction bits, then with 39; what lies beyond the word falls off.
@@ -171,9 +171,6 @@ pub(super) const fn rapidity_of_beta(parts: Parts, sign: u32) -> Option<f32> {
 /// sqrt((1 + b)/(1 - b)), 2^-26 <= |b| < 1.
 #[inline(always)]
 pub(super) const fn factor_of_beta(parts: Parts, sign: u32) -> Option<f32> {
-    const STEPS: i32 = 23_637;
-    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
-    const STEP_LOW: i32 = 53_711;
     let (exponent, fraction) = half_logarithm(parts);
     let (exponent, fraction) =
         if sign == 0 { (exponent, fraction) } else { (exponent.wrapping_neg(), fraction.wrapping_neg()) };
