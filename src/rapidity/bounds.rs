@@ -42,9 +42,10 @@ bounds! {
     FREQUENCIES, "Rapidity::from_frequencies", "2^-60", 0.85;
     PARTS_PER_BILLION, "Rapidity::from_parts_per_billion", "2^-60", 0.82;
     POTENTIAL, "Rapidity::from_potential", "2^-60", 0.51;
+    FACTOR_OF_BETA, "ShiftFactor::from_beta", "the mantissa", 0.75;
     TO_FACTOR, "Rapidity::to_factor", "the mantissa", 0.52;
     TO_OFFSET, "Rapidity::to_offset", "the mantissa", 0.85;
-    TO_BETA, "Rapidity::to_beta", "2^-63", 0.55;
+    TO_BETA, "Rapidity::to_beta", "2^-63", 0.6;
     TO_BETA_SHORT, "Rapidity::to_beta_32", "2^-31", 0.51;
     COMPOSE_BETA, "compose_beta_32", "2^-31", 0.51;
     NARROW_RAPIDITY_OF_BETA, "narrow::rapidity_of_beta", "2^-44", 0.501;

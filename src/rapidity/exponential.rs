@@ -23,8 +23,6 @@ pub(crate) struct Power {
 }
 
 /// exp(x) of x with 60 or 59 fraction bits.
-///
-/// Error: below 2^-68 of the value (remainder r 2^-70, series 2^-69, product 2^-69, table 2^-71).
 const fn power<const FRACTION_BITS: u32>(x: i64) -> Power {
     // x >> 32 times 128/ln 2 has FRACTION_BITS - 46 fraction bits in the high word.
     let steps = high_i32((x >> 32) as i32, STEPS);
@@ -41,36 +39,41 @@ pub(crate) const fn steps_of_half(x: i32) -> i32 {
 pub(crate) const fn power_near(steps: i32, x: i64, more: i32) -> Power {
     let whole = x.wrapping_sub((steps as i64).wrapping_mul(STEP_HIGH));
     // Both terms wrap; their difference, below 2^-8.5, does not.
-    let remainder = whole.wrapping_sub((steps as i64).wrapping_mul(STEP_LOW) >> 32);
+    let low = (steps as i64).wrapping_mul(STEP_LOW).wrapping_add(1 << 31) >> 32;
+    let remainder = whole.wrapping_sub(low);
     power_of(steps.wrapping_add(more), remainder)
 }
 
-/// 2^(steps/128) exp(r), r with 70 fraction bits, |r| < 2^-8.
+/// 2^(steps/128) exp(r), r with 70 fraction bits, |r| < 2^-8.5.
+///
+/// Error in units of 2^-70 2^exponent: r 0.5, its product with the series 0.5 and 0.4, all three times the table
+/// (1 to 2); the last product 1; the table 0.5. At most 4.3, 2.9 near a power of two from above.
 const fn power_of(steps: i32, remainder: i64) -> Power {
     let index = (steps & 0x7f) as usize;
     let table = EXPONENTIALS[index];
-    let series = series(remainder);
-    let offset = remainder.wrapping_add(about_high_i64(remainder, series) >> 6);
-    // table (exp(r) - 1) with 69 fraction bits, below 2^61.6.
+    let bend = about_high_i64(remainder, series(remainder)).wrapping_add(1 << 5) >> 6;
+    // exp(r) - 1 with 71 fraction bits, its product with the table with 70, below 2^62.6.
+    let offset = remainder.wrapping_add(bend) << 1;
     let product = high_u64(table, offset as u64).wrapping_sub(table & (offset >> 63) as u64) as i64;
-    let low = (((product & 0x3f) << 2) as u64).wrapping_add(EXPONENTIAL_RESTS[index] as u64);
+    let low = (((product & 0x7f) << 1) as u64).wrapping_add(EXPONENTIAL_RESTS[index] as u64);
     Power {
-        high: table.wrapping_add((product >> 6) as u64).wrapping_add(low >> 8),
+        high: table.wrapping_add((product >> 7) as u64).wrapping_add(low >> 8),
         low: low & 0xff,
         exponent: steps >> 7,
     }
 }
 
-/// (exp(r) - 1)/r - 1 with 70 fraction bits, of r with 70 fraction bits, |r| < 2^-8.5; error below 2^-62
-/// for |r| < 2^-9.
+/// (exp(r) - 1)/r - 1 with 70 fraction bits, of r with 70 fraction bits, |r| < 2^-8.5; error below 2^-63, below
+/// 2^-65 for |r| < 2^-8.9.
 ///
-/// r (1/2 + r (1/6 + r (1/24 + r (1/120 + r/720)))); the first left out, r^6/5040, is under 2^-63.
+/// r (1/2 + r (1/6 + r (1/24 + r (1/120 + r/720)))); the first left out, r^6/5040, is 2^-63.3 and 2^-65.7. A step of
+/// a scale loses at most one unit of it, and each product with r divides that by 2^8.5.
 const fn series(remainder: i64) -> i64 {
-    // The high word has 38 fraction bits, so each step takes 6 bits off the scale.
+    // The high word has 38 fraction bits, so its product with 27 has 33.
     let high = (remainder >> 32) as i32;
-    let tail = 4_473_924_i32.wrapping_add(high_i32(high, 11_651)); // 2^29/120 + r 2^29/720
-    let tail = 1_431_655_766_i32.wrapping_add(high_i32(high, tail)); // 2^35/24 and half a unit for the cut
-    let sixth = 1_537_228_672_809_129_301_i64.wrapping_add(high_i64_i32(remainder, tail) >> 10); // 2^63/6
+    let tail = 71_582_788_i32.wrapping_add(high_i32(high, 186_414)); // 2^33/120 + r 2^27/720
+    let tail = 384_307_168_202_282_325_i64.wrapping_add(high_i64_i32(remainder, tail) >> 8); // 2^63/24
+    let sixth = 1_537_228_672_809_129_301_i64.wrapping_add(about_high_i64(remainder, tail) >> 6); // 2^63/6
     let half = (1_i64 << 62).wrapping_add(about_high_i64(remainder, sixth) >> 6); // 2^63/2
     about_high_i64(remainder, half) << 1
 }
@@ -95,10 +98,14 @@ const fn rounded(value: u64, exponent: i32) -> Rounded {
 
 /// exp(x) of x with 60 fraction bits.
 ///
-/// Error: rounding 0.5 units of the mantissa, at most 0.25 for `low`, which is cut off where the value falls
-/// just below a power of two, else 0.125; 0.502 is the most seen.
+/// Error: at most 0.52 units of the mantissa: rounding 0.5, `power_of` 2^-67; `low` is cut off before rounding, which
+/// changes nothing.
 pub(crate) const fn factor(x: i64) -> Rounded {
-    let power = power::<60>(x);
+    factor_of_power(power::<60>(x))
+}
+
+/// A power, rounded.
+pub(crate) const fn factor_of_power(power: Power) -> Rounded {
     let shift = (power.high >> 63) ^ 1;
     let value = power.high << shift;
     // 1.995 2^60 at most where the shift is 0, else just below 2^61, which rounding may reach.
@@ -112,11 +119,13 @@ pub(crate) const fn factor(x: i64) -> Rounded {
 
 /// |exp(x) - 1| of x with 60 fraction bits, x not zero.
 ///
-/// Error: at most 1 unit of the mantissa. Below 2^-7: rounding 0.5, the last product 0.25, the series
-/// 0.2. Above: rounding 0.5; `power` 2^-68 and the cut 2^-70, both of at most 1.01, on a value of 2^-7 with
-/// units of 2^-67: 0.5 and 0.13, less for all larger ones.
+/// Error: at most 0.85 units of the mantissa. Small ones: rounding 0.5, the last product 0.25, the series 0.03.
+/// Others: rounding 0.5; `power_of` 2.9 2^-70 on a value of 2^-7 with units of 2^-67, 0.36 (0.27 below one), less for
+/// all larger ones.
 pub(crate) const fn offset_magnitude(x: i64) -> Rounded {
-    if x.unsigned_abs() < 1 << 53 {
+    /// A little above 2^-7, so that exp(x) - 1 is 2^-7 and more in size from here on.
+    const SMALL: u64 = (1 << 53) + (1 << 46);
+    if x.unsigned_abs() < SMALL {
         return small_offset_magnitude(x);
     }
     let normal = offset_of_power(power::<60>(x), x < 0);
@@ -153,14 +162,14 @@ pub(crate) const fn offset_of_power(power: Power, negative: bool) -> Normal {
     }
 }
 
-/// |exp(x) - 1| for |x| < 2^-7.
+/// |exp(x) - 1| for |x| < 2^-6.9.
 const fn small_offset_magnitude(x: i64) -> Rounded {
     let shift = x.unsigned_abs().leading_zeros().wrapping_sub(1);
     let value = small_offset(x << 8, (x.unsigned_abs() << shift) as i64);
     rounded(value, 3_i32.wrapping_sub(shift as i32))
 }
 
-/// `magnitude` (exp(x) - 1)/x for |x| < 2^-7, where `magnitude` is in [2^62, 2^63) and `quarter` is x/4 with 70
+/// `magnitude` (exp(x) - 1)/x for |x| < 2^-6.9, where `magnitude` is in [2^62, 2^63) and `quarter` is x/4 with 70
 /// fraction bits: (1 + p)(1 + q1/2)(1 + q2/2), where q1 = exp(x/4) - 1 = x/4 (1 + p) and
 /// q2 = exp(x/2) - 1 = 2 q1 + q1^2.
 pub(crate) const fn small_offset(quarter: i64, magnitude: i64) -> u64 {
@@ -181,7 +190,7 @@ const fn one_plus_product(a: i64, b: i64) -> i64 {
 /// tanh = 2/(1 + X) - 1 with X = exp(-2|x|); 1/(1 + X) = r (1 + y), where r is a table's reciprocal,
 /// z = r (1 + X) - 1 is exact to 2^-70 and y = -z + z^2 - z^3 + ...
 ///
-/// Error: at most 0.6 units of 2^-63: rounding of the last sum 0.5, y and X below 2^-66.
+/// Error: at most 0.6 units of 2^-63: rounding of the last sum 0.5, X 2^-68, z 2^-68, y 2^-67.
 pub(crate) const fn tanh_magnitude(x: i64) -> u64 {
     let magnitude = x.saturating_abs();
     let tanh = tanh_of_power(power::<59>(magnitude.wrapping_neg()));

@@ -64,6 +64,13 @@ impl ShiftOffset32 {
     }
 }
 
+/// 128 / ln 2 with 7 fraction bits.
+pub(super) const STEPS: i32 = 23_637;
+/// ln 2 / 128 with 39 fraction bits, taken modulo 2^-7 ...
+pub(super) const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
+/// ... and the next 16.
+pub(super) const STEP_LOW: i32 = 53_711;
+
 /// `x` where `sign` is 0, -`x` where it is -1.
 #[inline(always)]
 const fn signed(x: i32, sign: i32) -> i32 {
@@ -155,9 +162,10 @@ pub(super) struct Power32 {
     pub(super) exponent: i32,
 }
 
-/// 2^(steps/128) exp(r), r with 39 fraction bits, |r| < 2^-8.3; within 1.2 units of 2^-39.
+/// 2^(steps/128) exp(r), r with 39 fraction bits, |r| < 2^-8.3; within 1.7 units of 2^-39 of the value, 1.4 where
+/// the table's word is rounded to the `NEAREST`.
 #[inline(always)]
-pub(super) const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
+pub(super) const fn power_from_steps<const NEAREST: bool>(steps: i32, remainder: i32) -> Power32 {
     // -(1/3 + r/12) with 25 fraction bits, the twelfth as 1/16 + 1/64; negative, so that all products are of two
     // signed words. Then r (1 + r/3 + r^2/12) with 39 fraction bits.
     let third = (-11_184_811_i32).wrapping_sub(remainder >> 18).wrapping_sub(remainder >> 20);
@@ -166,7 +174,7 @@ pub(super) const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
     let offset = remainder.wrapping_add(high_i32(remainder, bent) >> 8);
     let table = EXPONENTIALS[(steps & 0x7f) as usize];
     // table (exp(r) - 1) with 30 + 39 fraction bits.
-    let short = ((table >> 32) as u32).wrapping_add(1) >> 1;
+    let short = ((table >> 32) as u32).wrapping_add(NEAREST as u32) >> 1;
     let product = product_i32(short as i32, offset);
     Power32 { mantissa: table.wrapping_add((product >> 6) as u64), exponent: steps >> 7 }
 }
@@ -174,15 +182,11 @@ pub(super) const fn power_from_steps(steps: i32, remainder: i32) -> Power32 {
 /// exp(x) of x with 28 or 27 fraction bits.
 #[inline(always)]
 const fn power<const FRACTION_BITS: u32>(x: i32) -> Power32 {
-    // 128 / ln 2 with 7 fraction bits; ln 2 / 128 with 39 fraction bits, and the next 16.
-    const STEPS: i32 = 23_637;
-    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
-    const STEP_LOW: i32 = 53_711;
     let steps = (x >> 16).wrapping_mul(STEPS).wrapping_add(1 << (FRACTION_BITS - 10)) >> (FRACTION_BITS - 9);
     let remainder = (x << (39 - FRACTION_BITS))
         .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
         .wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
-    power_from_steps(steps, remainder)
+    power_from_steps::<false>(steps, remainder)
 }
 
 /// A power rounded to 32 bits; just below a power of two the mantissa may round to 2^32, that is to 0.
@@ -244,9 +248,6 @@ pub const fn factor_of_rapidity(rapidity: I4F28) -> ShiftFactor32 {
 /// assert!(factor.mantissa() - (1 << 31) < 4); // 0.6 in 31 bits is 0.2 steps high
 /// ```
 pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
-    const STEPS: i32 = 23_637;
-    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
-    const STEP_LOW: i32 = 53_711;
     let bits = beta.to_bits();
     if bits == i32::MIN {
         return ShiftFactor32 { mantissa: 0, exponent: 0 };
@@ -260,7 +261,8 @@ pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
         .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
         .wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
     // Half of ln 2 is 64 steps.
-    let factor = rounded(power_from_steps(steps.wrapping_add(signed(half.exponent << 6, sign)), remainder));
+    let factor =
+        rounded(power_from_steps::<true>(steps.wrapping_add(signed(half.exponent << 6, sign)), remainder));
     // The largest beta rounds to 2^16.
     let carry = factor.mantissa == 0;
     ShiftFactor32 {
@@ -311,14 +313,33 @@ pub const fn beta_of_rapidity(rapidity: I4F28) -> I1F31 {
     I1F31::from_bits(signed(size, sign))
 }
 
-/// `value` 2^(exponent - 31) with its top bit set, to the nearest 29 bits, with a sign of 0 or -1.
+/// `value` 2^(exponent - 63) to the nearest 29 bits, with a sign of 0 or -1; the high word is not zero.
 #[inline(always)]
-const fn rounded_offset(value: u32, exponent: i32, sign: i32) -> ShiftOffset32 {
-    let mantissa = (value >> 3).wrapping_add((value >> 2) & 1);
+const fn rounded_offset(value: u64, exponent: i32, sign: i32) -> ShiftOffset32 {
+    let (high, low) = ((value >> 32) as u32, value as u32);
+    let shift = high.leading_zeros() & 31;
+    let top = high << shift | (low >> 1) >> (31 - shift);
+    let mantissa = (top >> 3).wrapping_add((top >> 2) & 1);
     let carry = mantissa >> 29;
     ShiftOffset32 {
         mantissa: signed((mantissa >> carry) as i32, sign),
-        exponent: exponent.wrapping_add(carry as i32),
+        exponent: exponent.wrapping_sub(shift as i32).wrapping_add(carry as i32),
+    }
+}
+
+/// |P - 1| of a power as `value` 2^(exponent - 63), at least 0.056; `negative` where P is below one. Powers go from
+/// 2^-30; above 2^32 the one is left out.
+#[inline(always)]
+pub(super) const fn offset_of_power(power: Power32, negative: bool) -> (u64, i32) {
+    let (high, low) = ((power.mantissa >> 32) as u32, power.mantissa as u32);
+    if negative {
+        // 1 - P with 64 fraction bits; the one is 2^64 and falls off.
+        let shift = power.exponent.wrapping_add(1).wrapping_neg() as u32 & 31;
+        let low = low >> shift | (high << 1) << (31 - shift);
+        ((((high >> shift) as u64) << 32 | low as u64).wrapping_neg(), -1)
+    } else {
+        let one = 1_u32.unbounded_shl(31_u32.wrapping_sub(power.exponent as u32));
+        ((high.wrapping_sub(one) as u64) << 32 | low as u64, power.exponent)
     }
 }
 
@@ -350,14 +371,8 @@ pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
         return small_offset(bits);
     }
     let power = power::<28>(bits);
-    let (wide, exponent) = if bits < 0 {
-        // 1 - exp(r) with 64 fraction bits; the one is 2^64 and falls off.
-        ((power.mantissa >> power.exponent.wrapping_add(1).unsigned_abs()).wrapping_neg(), -1)
-    } else {
-        (power.mantissa.wrapping_sub(1 << 63_u32.wrapping_sub(power.exponent as u32)), power.exponent)
-    };
-    let shift = wide.leading_zeros();
-    rounded_offset((wide << shift >> 32) as u32, exponent.wrapping_sub(shift as i32), bits >> 31)
+    let (value, exponent) = offset_of_power(power, bits < 0);
+    rounded_offset(value, exponent, bits >> 31)
 }
 
 /// (exp(r) - 1)/r - 1 with 36 fraction bits of r with 35, |r| < 0.0586; within 2 units.
@@ -365,13 +380,13 @@ pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
 /// r/2 + r^2 (1/6 + r (1/24 + r (1/120 + r/720))); the first left out, r^6/5040, is half a unit.
 #[inline(always)]
 pub(super) const fn small_bend(r: i32) -> i32 {
-    let square = high_square_i32(r); // 38 fraction bits
-    // 1/6 + r (1/24 + r (1/120 + r/720)) with 33 fraction bits; each step adds 3.
-    let tail = 1_118_481_i32.wrapping_add(high_i32(r, 23_302)); // 2^27/120 + r 2^24/720
-    let tail = 44_739_243_i32.wrapping_add(high_i32(r, tail)); // 2^30/24 + ...
-    let sixth = 1_431_655_765_i32.wrapping_add(high_i32(r, tail)); // 2^33/6 + ...
+    // All with the other sign, so that all products are of two signed words. Each step adds 3 to the scale:
+    // 2^27/120 + r 2^24/720, 2^30/24 + ..., 2^33/6 + ...
+    let tail = (-1_118_481_i32).wrapping_sub(high_i32(r, 23_302));
+    let tail = (-44_739_243_i32).wrapping_add(high_i32(r, tail));
+    let sixth = (-1_431_655_765_i32).wrapping_add(high_i32(r, tail));
     // r/2 + r^2 (...) with 36 fraction bits.
-    r.wrapping_add(high_i32(square, sixth).wrapping_add(1 << 2) >> 3)
+    r.wrapping_sub(high_i32(r, high_i32(r, sixth)).wrapping_sub(1 << 2) >> 3)
 }
 
 /// exp(r) - 1 for |r| < 0.0586.
@@ -382,10 +397,9 @@ const fn small_offset(bits: i32) -> ShiftOffset32 {
     }
     let bend = small_bend(bits << 7);
     let size = bits.unsigned_abs();
-    let shift = size.leading_zeros();
-    // 32 significant bits and 2 more, so that what is cut off does not matter to the rounding.
-    let normal = size << shift.wrapping_sub(1);
+    let shift = size.leading_zeros().wrapping_sub(1) & 31;
+    let normal = size << shift;
+    // The product has 30 + 36 fraction bits, the value 30; what is cut off does not matter to the rounding.
     let value = normal.wrapping_add((high_i32(normal as i32, bend) >> 4) as u32);
-    let top = value.leading_zeros();
-    rounded_offset(value << top, 4_i32.wrapping_sub(shift as i32).wrapping_sub(top as i32), bits >> 31)
+    rounded_offset((value as u64) << 32, 3_i32.wrapping_sub(shift as i32), bits >> 31)
 }

@@ -24,21 +24,17 @@ use super::wide_product::{about_high_i64, high_i32, high_u64};
 /// The one NaN of this module.
 const NAN: f32 = f32::from_bits(0x7fc0_0000);
 
-/// A finite float other than zero: `mantissa` 2^`exponent`, mantissa in [2^23, 2^24).
+/// Size of a normal float: `mantissa` 2^`exponent`, mantissa in [2^23, 2^24).
 #[derive(Clone, Copy)]
 pub(super) struct Parts {
     pub(super) mantissa: u32,
     pub(super) exponent: i32,
 }
 
-/// Size of a finite float other than zero.
+/// Size of a normal float.
 const fn parts(x: f32) -> Parts {
-    let bits = x.to_bits() & 0x7fff_ffff;
-    let shift = bits.leading_zeros().saturating_sub(8);
-    if bits >> 23 == 0 {
-        return Parts { mantissa: bits << shift, exponent: (-149_i32).wrapping_sub(shift as i32) };
-    }
-    Parts { mantissa: bits & 0x7f_ffff | 0x80_0000, exponent: ((bits >> 23) as i32).wrapping_sub(150) }
+    let bits = x.to_bits();
+    Parts { mantissa: bits & 0x7f_ffff | 0x80_0000, exponent: ((bits >> 23 & 0xff) as i32).wrapping_sub(150) }
 }
 
 /// The sign bit of a float.
@@ -127,22 +123,27 @@ const fn normal_power(power: Power) -> Normal {
 /// assert_eq!(factor_of_rapidity(f32::NEG_INFINITY), 0.0);
 /// ```
 pub const fn factor_of_rapidity(rapidity: f32) -> f32 {
+    /// 2^-25, below which the nearest float is one; 87, up to which all results are normal.
+    const LEAST: u32 = 0x3300_0000;
+    const MOST: u32 = 0x42ae_0000;
     let bits = rapidity.to_bits();
     let (size, sign) = (bits & 0x7fff_ffff, sign(rapidity));
+    let parts = parts(rapidity);
+    if size.wrapping_sub(LEAST) < MOST - LEAST
+        && let Some(factor) = float_quick::factor_of_rapidity(parts, sign)
+    {
+        return factor;
+    }
     if size > 0x7f80_0000 {
         return NAN;
     }
     if size >= 0x42d0_0000 {
         return if sign == 0 { f32::INFINITY } else { 0.0 }; // 104 and more
     }
-    if size < 0x3280_0000 {
-        return 1.0; // below 2^-26
+    if size < LEAST {
+        return 1.0;
     }
-    let parts = parts(rapidity);
-    match float_quick::factor_of_rapidity(parts, sign) {
-        Some(factor) => factor,
-        None => nearest(normal_power(power::<0>(parts, sign)), 0),
-    }
+    nearest(normal_power(power::<0>(parts, sign)), 0)
 }
 
 /// Offset from one of the frequency factor: exp(r) - 1, positive = approaching.
@@ -164,25 +165,32 @@ pub const fn factor_of_rapidity(rapidity: f32) -> f32 {
 /// assert_eq!(offset_of_rapidity(-0.0).to_bits(), (-0.0_f32).to_bits());
 /// ```
 pub const fn offset_of_rapidity(rapidity: f32) -> f32 {
+    /// 2^-25, below which the nearest float is the rapidity; 87; 18, from which on it is -1 the other way.
+    const LEAST: u32 = 0x3300_0000;
+    const MOST: u32 = 0x42ae_0000;
+    const MOST_NEGATIVE: u32 = 0x4190_0000;
     let bits = rapidity.to_bits();
     let (size, sign) = (bits & 0x7fff_ffff, sign(rapidity));
+    let parts = parts(rapidity);
+    if size.wrapping_sub(LEAST) < if sign == 0 { MOST - LEAST } else { MOST_NEGATIVE - LEAST } {
+        return match float_quick::offset_of_rapidity(parts, sign) {
+            Some(offset) => offset,
+            None => nearest(offset::<0>(parts, sign), sign),
+        };
+    }
     if size > 0x7f80_0000 {
         return NAN;
     }
-    if size < 0x3300_0000 {
-        return rapidity; // below 2^-25
+    if size < LEAST {
+        return rapidity;
     }
-    if size >= 0x42c0_0000 && sign == 0 {
+    if sign != 0 {
+        return -1.0;
+    }
+    if size >= 0x42c0_0000 {
         return f32::INFINITY; // 96 and more
     }
-    if size >= 0x4190_0000 && sign != 0 {
-        return -1.0; // -18 and less
-    }
-    let parts = parts(rapidity);
-    match float_quick::offset_of_rapidity(parts, sign) {
-        Some(offset) => offset,
-        None => nearest(offset::<0>(parts, sign), sign),
-    }
+    nearest(offset::<0>(parts, sign), sign)
 }
 
 /// Velocity ratio of a rapidity: tanh(r), positive = approaching.

@@ -1,55 +1,70 @@
 //! Quick first tries of the float functions, in 32-bit arithmetic good to about 2^-35.
 //!
 //! A result so close to the middle between two floats that its error could move it across is not given; then the
-//! functions of [`super::float_32`] go on in 64 bits. That happens for one float in some hundreds to thousands.
+//! functions of [`super::float_32`] go on in 64 bits. That happens for one float in 128.
 
 use super::coefficients::{LOGARITHMS, RECIPROCALS};
-use super::fixed_32::{Power32, logarithm_of_one_plus, power_from_steps, small_bend};
+use super::fixed_32::{
+    Power32, STEP_HIGH, STEP_LOW, STEPS, logarithm_of_one_plus, offset_of_power, power_from_steps, small_bend,
+};
 use super::float_32::Parts;
 use super::wide_product::{high_i32, high_square_i32, middle_u32_u16, product_i32};
 
-/// `value` 2^(exponent - 63) as the nearest float, where it is a normal one and farther than 2^`DOUBT` from the
-/// middle between two. The top bit of the value may be one place lower or the value as it is.
+/// `value` 2^(exponent - 31), good to half a unit and cut off, as the nearest float, where the value is not within a
+/// unit of the middle between two. The top bit of the value is set; the float is a normal one.
 #[inline(always)]
-const fn clear<const DOUBT: u32>(value: u64, exponent: i32, sign: u32) -> Option<f32> {
-    let shift = (value >> 63) as u32 ^ 1;
-    let value = if shift == 1 { value << 1 } else { value };
-    let biased = exponent.wrapping_sub(shift as i32).wrapping_add(126);
-    // The 40 bits cut off, without their last DOUBT, and one more: 2^(39 - DOUBT) is the middle.
-    let mask = (1_u32 << (40 - DOUBT)) - 1;
-    let cut = ((value >> DOUBT) as u32).wrapping_add(1) & mask;
-    let doubtful = cut == 1 << (39 - DOUBT) || cut == (1 << (39 - DOUBT)) + 1;
-    if doubtful || biased < 0 || biased > 253 {
+const fn clear(value: u32, exponent: i32, sign: u32) -> Option<f32> {
+    // The eight bits cut off are 127 or 128: in doubt.
+    if value.wrapping_add(1) & 0xfe == 0x80 {
         return None;
     }
-    let high = (value >> 32) as u32;
-    let kept = (high >> 8).wrapping_add((high >> 7) & 1);
-    Some(f32::from_bits(sign | ((biased as u32) << 23).wrapping_add(kept)))
+    let biased = exponent.wrapping_add(126) as u32;
+    let kept = (value >> 8).wrapping_add((value >> 7) & 1);
+    Some(f32::from_bits(sign | (biased << 23).wrapping_add(kept)))
 }
 
-/// exp(x) of 2^-26 <= |x| < 127, times 2^`DOUBLINGS`, as in [`super::float_32`]; within 2^-37.
+/// Top word of `value` 2^(exponent - 63), shifted up until its top bit is set; the high word is not zero.
+#[inline(always)]
+const fn clear_top(value: u64, exponent: i32, sign: u32) -> Option<f32> {
+    let (high, low) = ((value >> 32) as u32, value as u32);
+    let shift = high.leading_zeros() & 31;
+    clear(high << shift | (low >> 1) >> (31 - shift), exponent.wrapping_sub(shift as i32), sign)
+}
+
+/// A power as a float.
+#[inline(always)]
+const fn clear_power(power: Power32) -> Option<f32> {
+    let (high, low) = ((power.mantissa >> 32) as u32, power.mantissa as u32);
+    let short = high >> 31 == 0;
+    let value = if short { high << 1 | low >> 31 } else { high };
+    clear(value, power.exponent.wrapping_sub(short as i32), 0)
+}
+
+/// exp(x) of 2^-25 <= |x| < 127, times 2^`DOUBLINGS`; within 2^-37.
 #[inline(always)]
 pub(super) const fn power<const DOUBLINGS: i32>(parts: Parts, sign: u32) -> Power32 {
-    /// 128 / ln 2 with 22 fraction bits; ln 2 / 128 with 39 fraction bits, and the next 16.
+    /// 128 / ln 2 with 22 fraction bits.
     const STEPS: i32 = 774_541_002;
-    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
-    const STEP_LOW: i32 = 53_711;
     let mantissa = if sign == 0 { parts.mantissa as i32 } else { (parts.mantissa as i32).wrapping_neg() };
     let exponent = parts.exponent.wrapping_add(DOUBLINGS);
-    // With 49 fraction bits; 24 and 39 of them are used.
-    let wide = (mantissa as i64) << (exponent.wrapping_add(49) as u32 & 63);
-    let steps = high_i32((wide >> 25) as i32, STEPS).wrapping_add(1 << 13) >> 14;
-    let remainder = ((wide >> 10) as i32)
-        .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
-        .wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
-    power_from_steps(steps, remainder)
+    // With 24 fraction bits, then with 39; what lies beyond the word falls off.
+    let coarse = (mantissa << 7) >> ((-17_i32).wrapping_sub(exponent) as u32 & 31);
+    let fine = if exponent >= -39 {
+        mantissa << (exponent.wrapping_add(39) as u32 & 31)
+    } else {
+        mantissa >> ((-39_i32).wrapping_sub(exponent) as u32 & 31)
+    };
+    let steps = high_i32(coarse, STEPS).wrapping_add(1 << 13) >> 14;
+    let remainder =
+        fine.wrapping_sub(steps.wrapping_mul(STEP_HIGH)).wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
+    power_from_steps::<true>(steps, remainder)
 }
 
-/// exp(r), 2^-26 <= |r| < 127.
+/// exp(r), 2^-25 <= |r| < 87.
 #[inline(always)]
 pub(super) const fn factor_of_rapidity(parts: Parts, sign: u32) -> Option<f32> {
     let power = power::<0>(parts, sign);
-    clear::<27>(power.mantissa, power.exponent, 0)
+    clear_power(power)
 }
 
 /// `mantissa` 2^`exponent` with `BITS` fraction bits in a word, cut off, at most 2^(BITS - 31) in size.
@@ -62,34 +77,25 @@ const fn fixed<const BITS: i32>(parts: Parts) -> i32 {
 
 /// x (1 + bend), the bend with 36 fraction bits, |bend| < 1/8.
 #[inline(always)]
-const fn scaled<const DOUBT: u32>(parts: Parts, bend: i32, sign: u32) -> Option<f32> {
+const fn scaled(parts: Parts, bend: i32, sign: u32) -> Option<f32> {
     let mantissa = (parts.mantissa << 7) as i32;
     // 62 fraction bits.
     let value = (((mantissa as i64) << 32).wrapping_add(product_i32(mantissa, bend) >> 4)) as u64;
-    let below = value >> 62 == 0;
-    let value = if below { value << 1 } else { value };
-    clear::<DOUBT>(value, parts.exponent.wrapping_add(24).wrapping_sub(below as i32), sign)
+    clear_top(value, parts.exponent.wrapping_add(24), sign)
 }
 
-/// exp(r) - 1, 2^-25 <= |r| < 96.
+/// exp(r) - 1, 2^-25 <= r < 87 or -18 < r <= -2^-25.
 #[inline(always)]
 pub(super) const fn offset_of_rapidity(parts: Parts, sign: u32) -> Option<f32> {
     /// 0.0586 with 35 fraction bits, so that the bend fits its word.
     const SMALL: i32 = 15 << 27;
     if parts.exponent <= -28 && fixed::<35>(parts) < SMALL {
         let r = fixed::<35>(parts);
-        return scaled::<29>(parts, small_bend(if sign == 0 { r } else { r.wrapping_neg() }), sign);
+        return scaled(parts, small_bend(if sign == 0 { r } else { r.wrapping_neg() }), sign);
     }
     let power = power::<0>(parts, sign);
-    let (value, exponent) = if sign != 0 {
-        // 1 - exp(r) with 64 fraction bits; the one is 2^64 and falls off.
-        (power.mantissa.unbounded_shr(power.exponent.wrapping_add(1).unsigned_abs()).wrapping_neg(), -1)
-    } else {
-        let one = 1_u64.unbounded_shl(63_u32.wrapping_sub(power.exponent as u32));
-        (power.mantissa.wrapping_sub(one), power.exponent)
-    };
-    let shift = value.leading_zeros();
-    clear::<31>(value << shift, exponent.wrapping_sub(shift as i32), sign)
+    let (value, exponent) = offset_of_power(power, sign != 0);
+    clear_top(value, exponent, sign)
 }
 
 /// tanh(r), 2^-12 <= |r| < 9.5.
@@ -103,7 +109,7 @@ pub(super) const fn beta_of_rapidity(parts: Parts, sign: u32) -> Option<f32> {
         let series = (-905_437_i32).wrapping_add(high_i32(square, series));
         let series = 35_791_394_i32.wrapping_add(high_i32(square, series));
         let series = (-1_431_655_765_i32).wrapping_add(high_i32(square, series));
-        return scaled::<29>(parts, high_i32(square, series), sign);
+        return scaled(parts, high_i32(square, series), sign);
     }
     let power = power::<1>(parts, 1 << 31);
     let sum = (1_u64 << 63).saturating_add(power.mantissa >> power.exponent.unsigned_abs());
@@ -113,10 +119,8 @@ pub(super) const fn beta_of_rapidity(parts: Parts, sign: u32) -> Option<f32> {
     let slope = (z >> 7).wrapping_sub(square >> 14); // 32 fraction bits
     let y = (square.wrapping_sub(high_i32(square, slope)) >> 7).wrapping_sub(z);
     let half = ((reciprocal as i64) << 39).wrapping_add(product_i32(y, reciprocal));
-    // 2/(1 + X) - 1 with 54 fraction bits.
-    let value = half.wrapping_sub(1 << 54) as u64;
-    let shift = value.leading_zeros();
-    clear::<31>(value << shift, 9_i32.wrapping_sub(shift as i32), sign)
+    // 2/(1 + X) - 1 with 54 fraction bits, then with 63.
+    clear_top((half.wrapping_sub(1 << 54) as u64) << 9, 0, sign)
 }
 
 /// A reciprocal r with 16 fraction bits and r m - 1 with 39, of m in [1, 2) with 63 fraction bits.
@@ -155,22 +159,18 @@ pub(super) const fn rapidity_of_beta(parts: Parts, sign: u32) -> Option<f32> {
         let series = 2_396_745_i32.wrapping_add(high_i32(square, series));
         let series = 53_687_091_i32.wrapping_add(high_i32(square, series));
         let series = 1_431_655_765_i32.wrapping_add(high_i32(square, series));
-        return scaled::<29>(parts, high_i32(square, series), sign);
+        return scaled(parts, high_i32(square, series), sign);
     }
     /// ln 2 / 2 with 40 fraction bits.
     const HALF_LN_2: i64 = 381_061_692_393;
     let (exponent, fraction) = half_logarithm(parts);
     let value = (exponent as i64).wrapping_mul(HALF_LN_2).wrapping_add(fraction) as u64;
-    let shift = value.leading_zeros();
-    clear::<30>(value << shift, 23_i32.wrapping_sub(shift as i32), sign)
+    clear_top(value << 20, 3, sign)
 }
 
 /// sqrt((1 + b)/(1 - b)), 2^-26 <= |b| < 1.
 #[inline(always)]
 pub(super) const fn factor_of_beta(parts: Parts, sign: u32) -> Option<f32> {
-    const STEPS: i32 = 23_637;
-    const STEP_HIGH: i32 = 2_977_044_471_u32 as i32;
-    const STEP_LOW: i32 = 53_711;
     let (exponent, fraction) = half_logarithm(parts);
     let (exponent, fraction) =
         if sign == 0 { (exponent, fraction) } else { (exponent.wrapping_neg(), fraction.wrapping_neg()) };
@@ -179,6 +179,6 @@ pub(super) const fn factor_of_beta(parts: Parts, sign: u32) -> Option<f32> {
         .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
         .wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
     // Half of ln 2 is 64 steps.
-    let power = power_from_steps(steps.wrapping_add(exponent << 6), remainder);
-    clear::<28>(power.mantissa, power.exponent, 0)
+    let power = power_from_steps::<true>(steps.wrapping_add(exponent << 6), remainder);
+    clear_power(power)
 }

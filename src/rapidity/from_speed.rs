@@ -1,6 +1,6 @@
 //! Rapidities from speeds: range rate, velocity ratio, transverse motion.
 
-use super::logarithm::{Logarithm, logarithm};
+use super::logarithm::{Logarithm, logarithm, logarithm_of_beta};
 use super::wide_product::{about_high_i64, high_i32};
 use super::{Rapidity, RapidityError};
 use fixed::types::{I1F31, I1F63, I16F16, I32F32};
@@ -180,12 +180,10 @@ impl Rapidity {
     /// assert!((half.to_bits() - 633_306_866_415_404_364).abs() <= 1); // ln(3)/2 2^60
     /// ```
     pub const fn from_beta(beta: I1F63) -> Result<Self, RapidityError> {
-        let bits = beta.to_bits();
-        if bits == i64::MIN {
-            return Err(RapidityError::NotBelowLight);
+        match logarithm_of_beta(beta.to_bits()) {
+            Some(logarithm) => half(logarithm),
+            None => Err(RapidityError::NotBelowLight),
         }
-        let one = 1_u64 << 63;
-        half_logarithm_of_ratio(one.wrapping_add(bits as u64), one.wrapping_sub(bits as u64))
     }
 
     /// From a velocity ratio v/c, I1F31, open (-1, 1), positive = approaching.
@@ -242,14 +240,10 @@ impl Rapidity {
     }
 }
 
-/// -atanh(v/c) of a receding speed in units of 2^-34 m/s, |v| < c.
+/// -atanh(v/c) = ln((c - v)/(c + v))/2 of a receding speed in units of 2^-34 m/s, |v| < c.
 const fn receding(speed: i64) -> Result<Rapidity, RapidityError> {
-    half_logarithm_of_ratio(LIGHT.wrapping_sub(speed) as u64, LIGHT.wrapping_add(speed) as u64)
-}
-
-/// ln(numerator/denominator) / 2 of two positive integers.
-const fn half_logarithm_of_ratio(numerator: u64, denominator: u64) -> Result<Rapidity, RapidityError> {
-    half(logarithm(numerator).minus(logarithm(denominator)))
+    let slow = logarithm(LIGHT.wrapping_sub(speed) as u64);
+    half(slow.minus(logarithm(LIGHT.wrapping_add(speed) as u64)))
 }
 
 /// Half of a logarithm as a rapidity.

@@ -21,8 +21,8 @@ pub(crate) struct Logarithm {
 
 /// ln(x) of a positive integer; of 0 like of 1.
 ///
-/// Error of the fraction: at most 1.5 units of 2^-63 (table 0.5, last shift 0.5, series 0.4 from
-/// `tail`, all else below 0.05).
+/// Error of the fraction: at most 1.1 units of 2^-63: the table 0.5, the last shift 0.5, the series 0.1 (the term
+/// left out, z^8/8, is 2^-67).
 pub(crate) const fn logarithm(x: u64) -> Logarithm {
     let x = x | ((x == 0) as u64);
     let shift = x.leading_zeros();
@@ -40,19 +40,30 @@ pub(crate) const fn logarithm(x: u64) -> Logarithm {
     }
 }
 
-/// ln(1 + z), both with 70 fraction bits, |z| < 2^-8; error below 2^-64.
+/// ln(1 + z), both with 70 fraction bits, |z| < 2^-8; error below 2^-66.7.
 ///
-/// z - z^2 (1/2 - z (1/3 - z (1/4 - z (1/5 - z (1/6 - z/7))))); the first left out, z^8/8, is under 2^-66.
+/// z - z^2 (1/2 - z (1/3 - z (1/4 - z (1/5 - z (1/6 - z/7))))). A step of a scale loses at most one unit of it, and
+/// each product with z divides that by 2^8: 2^-39, 2^-47, 2^-55 in turn, and 2^-71 after the square.
 const fn logarithm_of_one_plus(z: i64) -> i64 {
-    // The high word of z has 38 fraction bits, so each step below takes 6 bits off the scale.
-    let z_high = (z >> 32) as i32;
-    let tail = 174_763_i32.wrapping_sub(high_i32(z_high, 2_341)); // 2^20/6 - z 2^14/7
-    let tail = 13_421_773_i32.wrapping_sub(high_i32(z_high, tail)); // 2^26/5 - ...
-    let tail = (1_i32 << 30).wrapping_sub(high_i32(z_high, tail)); // 2^32/4 - ...
-    let third = 3_074_457_345_618_258_603_i64.wrapping_sub(high_i64_i32(z, tail) >> 7); // 2^63/3 - ...
+    // The high word of z has 38 fraction bits, so each product with it adds 6 to the scale.
+    let high = (z >> 32) as i32;
+    let tail = 22_369_621_i32.wrapping_sub(high_i32(high, 299_593)); // 2^27/6 - z 2^21/7
+    let tail = 1_717_986_918_i32.wrapping_sub(high_i32(high, tail)); // 2^33/5 - ...
+    let tail = high_i32(high, tail); // z (1/5 - ...) with 39 fraction bits
+    // 2^63/3 - z/4 + z (...)
+    let third = 3_074_457_345_618_258_603_i64.wrapping_sub(z >> 9).wrapping_add(high_i64_i32(z, tail) >> 14);
     let half = (1_i64 << 62).wrapping_sub(about_high_i64(z, third) >> 6); // 2^63/2 - ...
     let square = about_high_i64(z, z); // 76 fraction bits
     z.wrapping_sub(about_high_i64(square, half) >> 5)
+}
+
+/// ln((1 + b)/(1 - b)) of a velocity ratio with 63 fraction bits; `None` at -1.
+pub(crate) const fn logarithm_of_beta(beta: i64) -> Option<Logarithm> {
+    const ONE: u64 = 1 << 63;
+    if beta == i64::MIN {
+        return None;
+    }
+    Some(logarithm(ONE.wrapping_add(beta as u64)).minus(logarithm(ONE.wrapping_sub(beta as u64))))
 }
 
 impl Logarithm {
@@ -82,7 +93,7 @@ impl Logarithm {
             return None;
         }
         let exponent = self.exponent as i64;
-        let rest = exponent.wrapping_mul(LN_2_REST) >> 8;
+        let rest = exponent.wrapping_mul(LN_2_REST).wrapping_add(1 << 7) >> 8;
         let fraction = self.fraction.wrapping_add(rest).wrapping_add(4) >> 3;
         // |exponent| ln 2 + |fraction| < 9.1: a sum beyond 8 wraps to the other sign and no further.
         let sum = exponent.wrapping_mul(LN_2_HIGH).wrapping_add(fraction);
@@ -95,7 +106,7 @@ impl Logarithm {
             return None;
         }
         let exponent = self.exponent as i64;
-        let rest = exponent.wrapping_mul(LN_2_REST) >> 8;
+        let rest = exponent.wrapping_mul(LN_2_REST).wrapping_add(1 << 7) >> 8;
         let fraction = self.fraction.wrapping_add(rest).wrapping_add(8) >> 4;
         let sum = exponent.wrapping_mul(LN_2_HIGH / 2).wrapping_add(fraction);
         if (exponent > 1 && sum < 0) || (exponent < -1 && sum >= 0) { None } else { Some(sum) }

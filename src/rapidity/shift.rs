@@ -1,6 +1,9 @@
 //! Back from a rapidity: frequency factor, offset from one, velocity ratio.
 
-use super::exponential::{factor, offset_magnitude, tanh_magnitude};
+use super::exponential::{
+    factor, factor_of_power, offset_magnitude, power_near, steps_of_half, tanh_magnitude,
+};
+use super::logarithm::logarithm_of_beta;
 use super::{Rapidity, RapidityError};
 use crate::frequency::Frequency;
 use fixed::types::{I1F31, I1F63, I40F24};
@@ -23,9 +26,40 @@ impl ShiftFactor {
         self.mantissa
     }
 
-    /// The power of two: -12 to 11.
+    /// The power of two: -12 to 11 of a rapidity, -32 to 32 of a velocity ratio.
     pub const fn exponent(self) -> i32 {
         self.exponent
+    }
+
+    /// Factor of a velocity ratio v/c, I1F63, positive = approaching = a factor above one:
+    /// sqrt((1 + b)/(1 - b)), without the step of a rapidity in between.
+    ///
+    /// # Accuracy
+    /// [`super::bounds::FACTOR_OF_BETA`] units of the mantissa (`tests/rapidity_back.rs`).
+    ///
+    /// # Errors
+    /// `NotBelowLight` at -1.
+    ///
+    /// # Cost
+    /// Two 64-bit logarithms and an exponential, no division.
+    ///
+    /// # Source
+    /// exp((ln(1 + b) - ln(1 - b))/2), the logarithm with 63 fraction bits and its multiple of ln 2 exactly.
+    ///
+    /// ```
+    /// use fixed::types::I1F63;
+    /// use shiftkeel::rapidity::ShiftFactor;
+    /// let two = ShiftFactor::from_beta(I1F63::lit("0.6")).unwrap();
+    /// assert!(two.mantissa() - (1 << 60) <= 1 && two.exponent() == 1);
+    /// ```
+    pub const fn from_beta(beta: I1F63) -> Result<Self, RapidityError> {
+        let Some(logarithm) = logarithm_of_beta(beta.to_bits()) else {
+            return Err(RapidityError::NotBelowLight);
+        };
+        // The fraction of the logarithm has 63 bits, that of its half 64; half of ln 2 is 64 steps.
+        let steps = steps_of_half((logarithm.fraction >> 32) as i32);
+        let factor = factor_of_power(power_near(steps, logarithm.fraction << 6, logarithm.exponent << 6));
+        Ok(Self { mantissa: factor.mantissa, exponent: factor.exponent })
     }
 
     /// The frequency times the factor, to the nearest 2^-24 Hz; `None` above the format of a frequency.
@@ -39,7 +73,7 @@ impl ShiftFactor {
     /// assert_eq!(down, Frequency::from_hertz(8_415_000_000).unwrap());
     /// ```
     pub const fn of(self, frequency: Frequency) -> Option<Frequency> {
-        let shift = 60_u32.wrapping_sub(self.exponent as u32); // 49 to 72
+        let shift = 60_u32.wrapping_sub(self.exponent as u32); // 28 to 92
         let product = frequency.to_bits() as u128 * self.mantissa as u128; // below 2^125
         let bits = product.wrapping_add(1 << (shift - 1)) >> shift;
         if bits >> 64 == 0 { Some(Frequency::from_bits(bits as u64)) } else { None }
