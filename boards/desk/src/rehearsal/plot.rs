@@ -215,8 +215,10 @@ impl Picture {
             .x_label_area_size(px(38.0))
             .y_label_area_size(px(330.0))
             .build_cartesian_2d((from..to).log_scale(), 0.0..count)?;
-        let decade =
-            |hertz: &f64| report::hertz(*hertz).replace(".000", "").replace(".00", "").replace(".0 ", " ");
+        let decade = |hertz: &f64| {
+            let (number, unit) = if *hertz < 0.1 { (hertz * 1e3, "mHz") } else { (*hertz, "Hz") };
+            format!("{} {unit}", (number * 1e6).round() / 1e6)
+        };
         chart
             .configure_mesh()
             .disable_y_mesh()
