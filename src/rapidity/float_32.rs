@@ -172,11 +172,13 @@ pub const fn offset_of_rapidity(rapidity: f32) -> f32 {
     const LEAST: u32 = 0x3300_0000;
     const MOST: u32 = 0x42ae_0000;
     const MOST_NEGATIVE: u32 = 0x4190_0000;
+    /// 15/256, where the quick power series ends.
+    const SMALL: u32 = 0x3d70_0000;
     let bits = rapidity.to_bits();
     let (size, sign) = (bits & 0x7fff_ffff, sign(rapidity));
     let parts = parts(rapidity);
     if size.wrapping_sub(LEAST) < if sign == 0 { MOST - LEAST } else { MOST_NEGATIVE - LEAST } {
-        return match float_quick::offset_of_rapidity(parts, sign) {
+        return match float_quick::offset_of_rapidity(parts, sign, size < SMALL) {
             Some(offset) => offset,
             None => nearest(offset::<0>(parts, sign), sign),
         };
