@@ -40,16 +40,16 @@ const fn clear_power(power: Power32) -> Option<f32> {
     clear(value, power.exponent.wrapping_sub(short as i32), 0)
 }
 
-/// exp(x) of 2^-25 <= |x| < 127, times 2^`DOUBLINGS`; within 2^-37.
+/// exp(x) of |x| < 127, times 2^`DOUBLINGS`, from 2^-25 where it may be `SMALL`, else from 2^-5; within 2^-37.
 #[inline(always)]
-pub(super) const fn power<const DOUBLINGS: i32>(parts: Parts, sign: u32) -> Power32 {
+const fn power<const DOUBLINGS: i32, const SMALL: bool>(parts: Parts, sign: u32) -> Power32 {
     /// 128 / ln 2 with 22 fraction bits.
     const STEPS: i32 = 774_541_002;
     let mantissa = if sign == 0 { parts.mantissa as i32 } else { (parts.mantissa as i32).wrapping_neg() };
     let exponent = parts.exponent.wrapping_add(DOUBLINGS);
     // With 24 fraction bits, then with 39; what lies beyond the word falls off.
     let coarse = (mantissa << 7) >> ((-17_i32).wrapping_sub(exponent) as u32 & 31);
-    let fine = if exponent >= -39 {
+    let fine = if !SMALL || exponent >= -39 {
         mantissa << (exponent.wrapping_add(39) as u32 & 31)
     } else {
         mantissa >> ((-39_i32).wrapping_sub(exponent) as u32 & 31)
@@ -57,13 +57,13 @@ pub(super) const fn power<const DOUBLINGS: i32>(parts: Parts, sign: u32) -> Powe
     let steps = high_i32(coarse, STEPS).wrapping_add(1 << 13) >> 14;
     let remainder =
         fine.wrapping_sub(steps.wrapping_mul(STEP_HIGH)).wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
-    power_from_steps::<true>(steps, remainder)
+    power_from_steps::<false>(steps, remainder)
 }
 
 /// exp(r), 2^-25 <= |r| < 87.
 #[inline(always)]
 pub(super) const fn factor_of_rapidity(parts: Parts, sign: u32) -> Option<f32> {
-    let power = power::<0>(parts, sign);
+    let power = power::<0, true>(parts, sign);
     clear_power(power)
 }
 
@@ -84,16 +84,14 @@ const fn scaled(parts: Parts, bend: i32, sign: u32) -> Option<f32> {
     clear_top(value, parts.exponent.wrapping_add(24), sign)
 }
 
-/// exp(r) - 1, 2^-25 <= r < 87 or -18 < r <= -2^-25.
+/// exp(r) - 1, 2^-25 <= r < 87 or -18 < r <= -2^-25, `small` where |r| < 0.0586.
 #[inline(always)]
-pub(super) const fn offset_of_rapidity(parts: Parts, sign: u32) -> Option<f32> {
-    /// 0.0586 with 35 fraction bits, so that the bend fits its word.
-    const SMALL: i32 = 15 << 27;
-    if parts.exponent <= -28 && fixed::<35>(parts) < SMALL {
+pub(super) const fn offset_of_rapidity(parts: Parts, sign: u32, small: bool) -> Option<f32> {
+    if small {
         let r = fixed::<35>(parts);
         return scaled(parts, small_bend(if sign == 0 { r } else { r.wrapping_neg() }), sign);
     }
-    let power = power::<0>(parts, sign);
+    let power = power::<0, false>(parts, sign);
     let (value, exponent) = offset_of_power(power, sign != 0);
     clear_top(value, exponent, sign)
 }
@@ -111,7 +109,7 @@ pub(super) const fn beta_of_rapidity(parts: Parts, sign: u32) -> Option<f32> {
         let series = (-1_431_655_765_i32).wrapping_add(high_i32(square, series));
         return scaled(parts, high_i32(square, series), sign);
     }
-    let power = power::<1>(parts, 1 << 31);
+    let power = power::<1, false>(parts, 1 << 31);
     let sum = (1_u64 << 63).saturating_add(power.mantissa >> power.exponent.unsigned_abs());
     let (reciprocal, z) = reduced(sum);
     // y = 1/(1 + z) - 1 = -z + z^2 (1 - z + z^2), and r (1 + y) with 16 + 39 fraction bits.

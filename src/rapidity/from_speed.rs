@@ -1,7 +1,7 @@
 //! Rapidities from speeds: range rate, velocity ratio, transverse motion.
 
 use super::logarithm::{Logarithm, logarithm, logarithm_of_beta};
-use super::wide_product::{about_high_i64, high_i32};
+use super::wide_product::{about_high_i64, high_i32, high_u32_i32, product_i32, product_u32_i32};
 use super::{Rapidity, RapidityError};
 use fixed::types::{I1F31, I1F63, I16F16, I32F32};
 
@@ -19,8 +19,8 @@ const MM_PER_S_SCALE: u64 = 0xeab9_90bd_a198_6bde;
 
 /// floor(v scale / 2^32), at most one too small.
 const fn scaled(v: i32, scale: u64) -> i64 {
-    let high = (v as i64).wrapping_mul((scale >> 32) as i64);
-    high.wrapping_add((v as i64).wrapping_mul(scale as u32 as i64) >> 32)
+    let low = high_u32_i32(scale as u32, v) as i64;
+    product_u32_i32((scale >> 32) as u32, v).wrapping_add(low)
 }
 
 impl Rapidity {
@@ -48,7 +48,7 @@ impl Rapidity {
         let beta = scaled(range_rate.to_bits(), RANGE_RATE_SCALE);
         let high = (beta >> 32) as i32;
         let cube = high_i32(high_i32(high, high), high); // 68 fraction bits
-        let third = (cube as i64).wrapping_mul(1_431_655_765) >> 24; // 2^32/3; 76 fraction bits
+        let third = product_i32(cube, 1_431_655_765) >> 24; // 2^32/3; 76 fraction bits
         Self::from_bits((beta.wrapping_add(third).wrapping_add(1 << 15) >> 16).wrapping_neg())
     }
 

@@ -14,7 +14,16 @@
 //! | crystals | [`Rapidity::from_parts_per_billion`] |
 //! | measured frequencies | [`Rapidity::from_frequencies`] |
 //!
-//! The kernels of every tick, 32 bits wide and below 2^-13, are in [`narrow`].
+//! Back: [`Rapidity::to_factor`], [`Rapidity::to_offset`], [`Rapidity::to_beta`].
+//!
+//! | kernels | of | for |
+//! |---|---|---|
+//! | [`narrow`] | 32 bits, below 2^-13 (36.6 km/s) | every tick |
+//! | [`fixed_32`] | 32 bits, full range, one step 1.6 Hz at 437 MHz | general use |
+//! | [`float_32`] | `f32`, correctly rounded | general use |
+//! | [`Rapidity`] | 64 bits, full range | set-up, exact sums |
+//!
+//! The worst error of each is in [`bounds`].
 //!
 //! ```
 //! use fixed::types::{I16F16, I32F32};

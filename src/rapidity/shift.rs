@@ -134,7 +134,7 @@ impl Rapidity {
     /// [`super::bounds::TO_FACTOR`] units of the mantissa (`tests/rapidity_back.rs`).
     ///
     /// # Cost
-    /// 4 products of 64 by 64 bits, 1 of 64 by 32, 3 of 32 by 32; no division.
+    /// 5 products of 64 by 64 bits, 3 of 64 by 32, 2 of 32 by 32; no division.
     ///
     /// # Source
     /// exp(x) = 2^k 2^(j/128) exp(r), the last by its power series.
@@ -187,7 +187,7 @@ impl Rapidity {
     /// [`super::bounds::TO_BETA`] units of 2^-63 (`tests/rapidity_back.rs`).
     ///
     /// # Cost
-    /// 7 products of 64 by 64 bits, 2 of 64 by 32, 6 of 32 by 32; no division.
+    /// 9 products of 64 by 64 bits, 4 of 64 by 32, 10 of 32 by 32; no division.
     ///
     /// # Source
     /// tanh(r) = 2/(1 + exp(-2r)) - 1; the reciprocal by table and power series.

@@ -203,6 +203,7 @@ mod tests {
             let word = i128::from(a as i32);
             assert_eq!(high_i64_i32(x as i64, a as i32), (i128::from(x as i64) * word >> 32) as i64);
             assert_eq!(product_u32(a, b), u64::from(a) * u64::from(b));
+            assert_eq!(product_u32_i32(a, b as i32), i64::from(a) * i64::from(b as i32));
             assert_eq!(product_i32(a as i32, b as i32), i64::from(a as i32) * i64::from(b as i32));
         }
     }
