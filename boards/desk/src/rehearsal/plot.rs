@@ -5,6 +5,7 @@ use super::estimates::Followed;
 use super::{Column, Outcome, report};
 use anyhow::anyhow;
 use plotters::coord::Shift;
+use plotters::coord::types::RangedCoordf64;
 use plotters::prelude::*;
 use plotters::style::text_anchor::{HPos, Pos, VPos};
 use std::path::Path;
@@ -25,6 +26,7 @@ const BOUND: RGBColor = RGBColor(213, 94, 0);
 const OTHER: RGBColor = RGBColor(150, 156, 164);
 
 type Area<'a> = DrawingArea<SVGBackend<'a>, Shift>;
+type Chart<'a, 'b> = ChartContext<'a, SVGBackend<'b>, Cartesian2d<RangedCoordf64, RangedCoordf64>>;
 type Drawn = Result<(), Box<dyn std::error::Error>>;
 
 /// What limits an error.
@@ -189,9 +191,7 @@ impl Picture {
         root.present()?;
         Ok(())
     }
-}
 
-impl Picture {
     fn bars_height(&self) -> u32 {
         if self.bars.is_empty() { 0 } else { 78 + BAR * self.bars.len() as u32 }
     }
@@ -284,14 +284,19 @@ impl Panel {
             mesh.x_desc("seconds after the start");
         }
         mesh.draw()?;
+        self.paint_inside(&mut chart, span)
+    }
+
+    fn paint_inside(&self, chart: &mut Chart<'_, '_>, span: (f64, f64)) -> Drawn {
+        let (reach, length) = (self.reach(), span.1 - span.0);
         let inside = |value: f64| value.clamp(-reach, reach);
         let outline = |band: &[(f64, [f64; 2])]| {
             let upper = band.iter().map(|(time, [_, most])| (time - span.0, inside(*most)));
             let lower = band.iter().rev().map(|(time, [least, _])| (time - span.0, inside(*least)));
             upper.chain(lower).collect::<Vec<_>>()
         };
-        let beside = |text: &str, value: f64, colour: RGBColor| {
-            let style = font(11.5, colour).pos(Pos::new(HPos::Left, VPos::Center));
+        let beside = |text: &str, value: f64| {
+            let style = font(11.5, BOUND).pos(Pos::new(HPos::Left, VPos::Center));
             Text::new(text.to_string(), (length * 1.013, inside(value)), style)
         };
         match &self.limit {
@@ -305,14 +310,13 @@ impl Panel {
                     let line = [(0.0, side), (length, side)];
                     let style = BOUND.stroke_width(FINER * 3 / 2);
                     chart.draw_series(DashedLineSeries::new(line, 7 * FINER, 5 * FINER, style))?;
-                    chart.plotting_area().draw(&beside(name, side, BOUND))?;
+                    chart.plotting_area().draw(&beside(name, side))?;
                 }
             }
             Limit::Band(name, band) => {
-                let shape = outline(band);
-                chart.draw_series([Polygon::new(shape, BOUND.mix(0.22).filled())])?;
+                chart.draw_series([Polygon::new(outline(band), BOUND.mix(0.22).filled())])?;
                 let last = band.last().map_or(0.0, |(_, [_, most])| *most);
-                chart.plotting_area().draw(&beside(name, last, BOUND))?;
+                chart.plotting_area().draw(&beside(name, last))?;
             }
         }
         let shape = outline(&self.seen);

@@ -1,15 +1,17 @@
 //! What a rehearsal prints, what it judges, and `summary.json`.
 
 use super::alternatives::Alternative;
-use super::estimates::{Followed, Stream};
 use super::oscillator::Oscillator;
 use super::{Outcome, Rehearsal, stages::Seen};
 use crate::age::ElementAge;
 use crate::elements::ElementSet;
-use anyhow::ensure;
 use serde::Serialize;
 use shiftkeel::tuning::{Assumed, Assumptions, Bound, Excluded, ProvenPart};
 use std::fmt::Write;
+
+mod followed;
+
+pub use followed::FollowedSummary;
 
 /// Less than this part of the whole bound backed by what its parts were seen to do counts as padded. The parts do
 /// not peak at the same instant, so it is their sum that is held against the bound, not the worst of the whole.
@@ -230,43 +232,8 @@ impl Summary {
     }
 
     fn write(&self, text: &mut String) -> std::fmt::Result {
-        let count = |value: u64| thousands(value);
-        writeln!(
-            text,
-            "PROVEN: how far the oscillator may be from what the model says; {} intervals, {} instants looked at",
-            count(self.ticks),
-            count(self.instants)
-        )?;
-        let headings =
-            ["part", "seen Hz", "bound Hz", "seen/bound", "seen cycles", "bound cycles", "seen/bound"];
-        let mut rows: Vec<Vec<String>> = self.proven.iter().map(PartRow::cells).collect();
-        rows.push(
-            PartRow {
-                part: "all together",
-                bound_hz: self.proven_bound_hz,
-                seen_hz: Some(self.worst_error_hz),
-                bound_cycles: self.proven_bound_cycles,
-                seen_cycles: self.worst_error_cycles,
-            }
-            .cells(),
-        );
-        text.push_str(&indented(&crate::commands::table(&headings, &rows)));
-        writeln!(
-            text,
-            "  worst at {}, rms {}. Each part is seen by its own stage: arc against orbit, table against arc,\n  \
-             mean steps against exact delays, words against steps, and the rule of steering against the motion.\n",
-            self.worst_utc,
-            hertz(self.rms_error_hz)
-        )?;
-        writeln!(
-            text,
-            "ASSUMED: one sigma each, common practice; together {}",
-            hertz(self.assumed_total_hz)
-        )?;
-        let estimate = |row: &EstimateRow| vec![row.part.to_string(), hertz(row.hz)];
-        text.push_str(&lines(self.assumed.iter().map(estimate)));
-        writeln!(text, "\nEXCLUDED: not in the model; estimates above 10 degrees")?;
-        text.push_str(&lines(self.excluded.iter().map(estimate)));
+        self.write_proven(text)?;
+        self.write_estimates(text)?;
         let measured = |row: &Alternative| vec![row.name.to_string(), hertz(row.worst_hz), hertz(row.rms_hz)];
         if let Some(late) = &self.late {
             writeln!(text, "\nLATE by {} s in truth: worst, rms of the table's shift", late.seconds)?;
@@ -274,39 +241,85 @@ impl Summary {
         }
         writeln!(text, "\nINSTEAD, on the same pass: worst, rms")?;
         text.push_str(&lines(self.alternatives.iter().map(measured)));
-        writeln!(text)?;
-        if self.within_bound {
-            writeln!(text, "No instant was outside the bound.")?;
+        let verdict = if self.within_bound {
+            "No instant was outside the bound."
         } else {
-            writeln!(text, "OUTSIDE: at least one instant was outside the bound.")?;
-        }
+            "OUTSIDE: at least one instant was outside the bound."
+        };
+        writeln!(text, "\n{verdict}")?;
         for part in &self.padded {
             writeln!(text, "PADDED: {part} of the bound.")?;
         }
         Ok(())
     }
+
+    fn write_proven(&self, text: &mut String) -> std::fmt::Result {
+        writeln!(
+            text,
+            "PROVEN: how far the oscillator may be from what the model says; {} intervals, {} instants looked at",
+            thousands(self.ticks),
+            thousands(self.instants)
+        )?;
+        let (unit, scale) = if self.proven_bound_hz < 0.5 { ("mHz", 1e3) } else { ("Hz", 1.0) };
+        let (seen, bound) = (format!("seen {unit}"), format!("bound {unit}"));
+        let headings = ["part", &seen, &bound, "seen/bound", "seen cycles", "bound cycles", "seen/bound"];
+        let whole = PartRow {
+            part: "all together",
+            bound_hz: self.proven_bound_hz,
+            seen_hz: Some(self.worst_error_hz),
+            bound_cycles: self.proven_bound_cycles,
+            seen_cycles: self.worst_error_cycles,
+        };
+        let rows: Vec<Vec<String>> =
+            self.proven.iter().chain([&whole]).map(|row| row.cells(&whole, scale)).collect();
+        text.push_str(&indented(&crate::commands::table(&headings, &rows)));
+        writeln!(
+            text,
+            "  worst at {}, rms {}. Each part is seen by its own stage: arc against orbit, table against arc,\n  \
+             mean steps against exact delays, words against steps, and the rule of steering against the motion.\n",
+            self.worst_utc,
+            hertz(self.rms_error_hz)
+        )
+    }
+
+    fn write_estimates(&self, text: &mut String) -> std::fmt::Result {
+        let row = |row: &EstimateRow| vec![row.part.to_string(), hertz(row.hz)];
+        let total = hertz(self.assumed_total_hz);
+        writeln!(text, "ASSUMED: one sigma each, common practice; together {total}")?;
+        text.push_str(&lines(self.assumed.iter().map(row)));
+        writeln!(text, "\nEXCLUDED: not in the model; estimates above 10 degrees")?;
+        text.push_str(&lines(self.excluded.iter().map(row)));
+        Ok(())
+    }
 }
 
-/// Bounds below these are under the rounding of the f64 comparison itself: no ratio is made of them.
-const COMPARED_HERTZ: f64 = 1e-5;
-const COMPARED_CYCLES: f64 = 1e-7;
+/// A bound below this part of the whole gets no ratio: the f64 comparison itself rounds there.
+const NEGLIGIBLE: f64 = 1e-4;
 
 impl PartRow {
-    fn cells(&self) -> Vec<String> {
-        let number =
-            |value: Option<f64>| value.map_or_else(|| "-".to_string(), |value| format!("{value:.3e}"));
-        let ratio = |seen: Option<f64>, bound: Option<f64>, least: f64| match (seen, bound) {
-            (Some(seen), Some(bound)) if bound > least => format!("{:.2}", seen / bound),
+    /// Its cells, in a table that ends with the `whole`; hertz times `scale`.
+    fn cells(&self, whole: &Self, scale: f64) -> Vec<String> {
+        let number = |value: Option<f64>, digits: usize| match value {
+            None => "-".to_string(),
+            Some(value) if value != 0.0 && value < 0.5 * 0.1f64.powi(digits as i32) => {
+                format!("<{:.digits$}", 0.1f64.powi(digits as i32))
+            }
+            Some(value) => format!("{value:.digits$}"),
+        };
+        let ratio = |seen: Option<f64>, bound: Option<f64>, whole: Option<f64>| match (seen, bound, whole) {
+            (Some(seen), Some(bound), Some(whole)) if bound > NEGLIGIBLE * whole => {
+                format!("{:.2}", seen / bound)
+            }
             _ => "-".to_string(),
         };
         vec![
             self.part.to_string(),
-            number(self.seen_hz),
-            number(Some(self.bound_hz)),
-            ratio(self.seen_hz, Some(self.bound_hz), COMPARED_HERTZ),
-            number(self.seen_cycles),
-            number(self.bound_cycles),
-            ratio(self.seen_cycles, self.bound_cycles, COMPARED_CYCLES),
+            number(self.seen_hz.map(|hertz| hertz * scale), 4),
+            number(Some(self.bound_hz * scale), 4),
+            ratio(self.seen_hz, Some(self.bound_hz), Some(whole.bound_hz)),
+            number(self.seen_cycles, 6),
+            number(self.bound_cycles, 6),
+            ratio(self.seen_cycles, self.bound_cycles, whole.bound_cycles),
         ]
     }
 }
@@ -359,117 +372,4 @@ fn lines(rows: impl Iterator<Item = Vec<String>>) -> String {
 
 fn indented(text: &str) -> String {
     text.lines().map(|line| format!("  {line}\n")).collect()
-}
-
-/// What a rehearsal by estimates says.
-#[derive(Clone, Debug, Serialize)]
-pub struct FollowedSummary {
-    /// Name or number of the object.
-    pub object: String,
-    /// Carrier, Hz.
-    pub carrier_hz: f64,
-    /// UTC of the first instant.
-    pub start_utc: String,
-    /// Intervals steered.
-    pub ticks: u64,
-    /// Intervals without a prediction.
-    pub unsteered: u64,
-    /// Estimates that came, and how many of them were wildly wrong.
-    pub estimates: [u64; 2],
-    /// Standard deviation of an estimate, Hz.
-    pub noise_hz: f64,
-    /// The oscillator's mean frequency against the filter's word for it: worst, Hz.
-    pub worst_error_hz: f64,
-    /// What it may be at most, Hz.
-    pub proven_bound_hz: f64,
-    /// The same of the phase, with what is carried forward, cycles.
-    pub worst_error_cycles: f64,
-    /// What it may be at most, cycles.
-    pub proven_bound_cycles: f64,
-    /// Whether no interval was outside of these.
-    pub within_bound: bool,
-    /// Error against the truth: worst, Hz.
-    pub true_error_hz: f64,
-    /// Root of the mean square of it, Hz.
-    pub true_error_rms_hz: f64,
-    /// Uncertainty that the filter states (about 95 %): median and largest, Hz.
-    pub stated_hz: [f64; 2],
-    /// Part of the intervals inside it.
-    pub inside_stated: f64,
-}
-
-/// A stated 95 % that holds less often than this is not honest: many estimates share one error, so that a single
-/// pass scatters by some percent.
-const LEAST_INSIDE: f64 = 0.85;
-
-impl FollowedSummary {
-    /// Of a rehearsal.
-    pub fn new(set: &ElementSet, rehearsal: &Rehearsal<'_>, stream: &Stream, followed: &Followed) -> Self {
-        let pass = &rehearsal.baked.pass;
-        let carrier = rehearsal.baked.order.carrier;
-        Self {
-            object: set.label(),
-            carrier_hz: carrier,
-            start_utc: pass.utc(followed.span.0),
-            ticks: followed.ticks,
-            unsteered: followed.unsteered,
-            estimates: [followed.estimates, followed.outliers],
-            noise_hz: stream.noise * carrier / crate::SPEED_OF_LIGHT,
-            worst_error_hz: followed.steering.hertz,
-            proven_bound_hz: followed.proven.hertz,
-            worst_error_cycles: followed.steering.cycles,
-            proven_bound_cycles: followed.proven.cycles,
-            within_bound: followed.steering.is_within(&followed.proven),
-            true_error_hz: followed.worst_hertz,
-            true_error_rms_hz: followed.rms_hertz,
-            stated_hz: followed.stated_hertz,
-            inside_stated: followed.inside,
-        }
-    }
-
-    /// The blocks for reading.
-    pub fn text(&self) -> String {
-        let [estimates, outliers] = self.estimates;
-        let [median, largest] = self.stated_hz;
-        format!(
-            "PROVEN: the oscillator against the filter's word; {} intervals\n  mean frequency of an interval    {} seen \
-             of {}\n  phase, with what is carried on   {:.2e} seen of {:.2e} cycles\n\nASSUMED: the filter against the \
-             truth; {} estimates of {} each, {} of them wild\n  error        worst {}, rms {}\n  stated (95 %) median {}, \
-             largest {}; {:.1} % of the intervals were inside\n  {} intervals had no prediction\n",
-            thousands(self.ticks),
-            hertz(self.worst_error_hz),
-            hertz(self.proven_bound_hz),
-            self.worst_error_cycles,
-            self.proven_bound_cycles,
-            thousands(estimates),
-            hertz(self.noise_hz),
-            outliers,
-            hertz(self.true_error_hz),
-            hertz(self.true_error_rms_hz),
-            hertz(median),
-            hertz(largest),
-            self.inside_stated * 100.0,
-            thousands(self.unsteered),
-        )
-    }
-
-    /// Whether it stands.
-    ///
-    /// # Errors
-    /// When an interval was outside what is proven, or the stated uncertainty did not hold.
-    pub fn verdict(&self) -> anyhow::Result<()> {
-        ensure!(
-            self.within_bound,
-            "outside the proven bound: {:.3e} Hz seen of {:.3e} Hz",
-            self.worst_error_hz,
-            self.proven_bound_hz
-        );
-        ensure!(
-            self.inside_stated >= LEAST_INSIDE,
-            "the filter's stated uncertainty held in {:.1} % of the intervals only, {:.0} % are the least",
-            self.inside_stated * 100.0,
-            LEAST_INSIDE * 100.0
-        );
-        Ok(())
-    }
 }
