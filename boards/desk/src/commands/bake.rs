@@ -8,7 +8,7 @@ use crate::frames::Site;
 use crate::geometric::Direction;
 use crate::horizon::Horizon;
 use crate::instant;
-use anyhow::{Context, bail, ensure};
+use anyhow::{bail, ensure};
 use chrono::{DateTime, Utc};
 use clap::ValueEnum;
 use shiftkeel::pass::{Arc, PassTable, TaggedAt};
@@ -110,7 +110,7 @@ impl PassArguments {
 #[command(after_help = "\
 The arc is the spacecraft's Earth-fixed path: it serves every site, carrier and direction. The table is the delay of \
 the signal for one site and direction. Both are files of little-endian 32-bit words; the table is checked once with \
-its CRC-32 and then read in place. What is written is read back and held against the arc again before it counts.
+its CRC-32 and then read in place. The table is held against the arc before it is written, and read back after.
 
 Examples:
   shiftkeel bake --elements pass.txt --site 45.0,7.5,300 --at 2026-06-01T12:12:00Z --carrier 437e6
@@ -171,16 +171,21 @@ pub fn run(arguments: &BakeArguments) -> anyhow::Result<()> {
         super::warn(&text);
     }
     let baked = Baked::new(pass, set, order)?;
+    // Nothing that does not stand the audit reaches a file.
+    let seen = baked.verify(&baked.table, AUDIT_STEP)?;
     write_whole(&arguments.arc, &bytes(&baked.arc))?;
     write_whole(&arguments.table, &bytes(&baked.table))?;
     if let (Some(path), Some(language)) = (&arguments.source, language) {
         write_whole(path, source(&baked, set, language, &arguments.name).as_bytes())?;
     }
-    // What counts is what is in the files.
     let arc = words(&std::fs::read(&arguments.arc)?)?;
     ensure!(Arc::new(&arc)?.words() == baked.arc, "{} does not read back", arguments.arc.display());
     let table = words(&std::fs::read(&arguments.table)?)?;
-    let seen = baked.verify(&table, AUDIT_STEP).with_context(|| arguments.table.display().to_string())?;
+    ensure!(
+        PassTable::new(&table)?.words() == baked.table,
+        "{} does not read back",
+        arguments.table.display()
+    );
     super::print(&summary(&baked, set, arguments, seen.instants)?)
 }
 
@@ -216,7 +221,7 @@ fn summary(baked: &Baked, set: &ElementSet, arguments: &BakeArguments, looks: u3
         f64::from(table.proven_delay()) * unit * carrier
     )?;
     writeln!(text, "carrier   {carrier} Hz; both bounds grow in proportion to it")?;
-    writeln!(text, "verified  read back and held against the arc at {looks} instants")?;
+    writeln!(text, "verified  held against the arc at {looks} instants, and read back")?;
     if let Some(path) = &arguments.source {
         writeln!(text, "source    {}", path.display())?;
     }
