@@ -365,9 +365,9 @@ pub(super) const fn offset_of_power(power: Power32, negative: bool) -> (u64, i32
 /// ```
 pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     /// 0.0586, so that r/2 + r^2/6 fits a word with 36 fraction bits.
-    const SMALL: u32 = 15 << 20;
+    const SMALL: i32 = 15 << 20;
     let bits = rapidity.to_bits();
-    if bits.unsigned_abs() < SMALL {
+    if (bits.wrapping_add(SMALL) as u32) < 2 * SMALL as u32 {
         return small_offset(bits);
     }
     let power = power::<28>(bits);
@@ -375,7 +375,7 @@ pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     rounded_offset(value, exponent, bits >> 31)
 }
 
-/// (exp(r) - 1)/r - 1 with 36 fraction bits of r with 35, |r| < 0.0586; within 2 units.
+/// (exp(r) - 1)/r - 1 with 36 fraction bits of r with 35, |r| up to 0.0586; within 2 units.
 ///
 /// r/2 + r^2 (1/6 + r (1/24 + r (1/120 + r/720))); the first left out, r^6/5040, is half a unit.
 #[inline(always)]
@@ -389,7 +389,7 @@ pub(super) const fn small_bend(r: i32) -> i32 {
     r.wrapping_sub(high_i32(r, high_i32(r, sixth)).wrapping_sub(1 << 2) >> 3)
 }
 
-/// exp(r) - 1 for |r| < 0.0586.
+/// exp(r) - 1 for |r| up to 0.0586.
 #[inline(always)]
 const fn small_offset(bits: i32) -> ShiftOffset32 {
     if bits == 0 {
