@@ -327,8 +327,8 @@ const fn rounded_offset(value: u64, exponent: i32, sign: i32) -> ShiftOffset32 {
     }
 }
 
-/// |P - 1| of a power as `value` 2^(exponent - 63), at least 0.056; `negative` where P is below one. Powers go from
-/// 2^-30; above 2^32 the one is left out.
+/// |P - 1| of a power as `value` 2^(exponent - 63), at least 0.056; `negative` where P is below one. P is from 2^-30
+/// to 2^31.
 #[inline(always)]
 pub(super) const fn offset_of_power(power: Power32, negative: bool) -> (u64, i32) {
     let (high, low) = ((power.mantissa >> 32) as u32, power.mantissa as u32);
@@ -338,7 +338,7 @@ pub(super) const fn offset_of_power(power: Power32, negative: bool) -> (u64, i32
         let low = low >> shift | (high << 1) << (31 - shift);
         ((((high >> shift) as u64) << 32 | low as u64).wrapping_neg(), -1)
     } else {
-        let one = 1_u32.unbounded_shl(31_u32.wrapping_sub(power.exponent as u32));
+        let one = (1_u32 << 31) >> (power.exponent as u32 & 31);
         ((high.wrapping_sub(one) as u64) << 32 | low as u64, power.exponent)
     }
 }
