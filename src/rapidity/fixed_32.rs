@@ -41,7 +41,7 @@ impl ShiftFactor32 {
 }
 
 /// (Received over transmitted frequency) - 1: `mantissa` 2^(`exponent` - 28), the size of the mantissa in
-/// [2^28, 2^29) or zero: a step of it is never coarser than half a step of the rapidity.
+/// [2^28, 2^29) or zero: 29 significant bits, as many as a rapidity of one has.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct ShiftOffset32 {
