@@ -41,7 +41,7 @@ impl ShiftFactor32 {
 }
 
 /// (Received over transmitted frequency) - 1: `mantissa` 2^(`exponent` - 28), the size of the mantissa in
-/// [2^28, 2^29) or zero: a step of it is never coarser than half a step of the rapidity.
+/// [2^28, 2^29) or zero: 29 significant bits, as many as a rapidity of one has.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct ShiftOffset32 {
@@ -327,8 +327,8 @@ const fn rounded_offset(value: u64, exponent: i32, sign: i32) -> ShiftOffset32 {
     }
 }
 
-/// |P - 1| of a power as `value` 2^(exponent - 63), at least 0.056; `negative` where P is below one. Powers go from
-/// 2^-30; above 2^32 the one is left out.
+/// |P - 1| of a power as `value` 2^(exponent - 63), at least 0.056; `negative` where P is below one. P is from 2^-30
+/// to 2^31.
 #[inline(always)]
 pub(super) const fn offset_of_power(power: Power32, negative: bool) -> (u64, i32) {
     let (high, low) = ((power.mantissa >> 32) as u32, power.mantissa as u32);
@@ -338,7 +338,7 @@ pub(super) const fn offset_of_power(power: Power32, negative: bool) -> (u64, i32
         let low = low >> shift | (high << 1) << (31 - shift);
         ((((high >> shift) as u64) << 32 | low as u64).wrapping_neg(), -1)
     } else {
-        let one = 1_u32.unbounded_shl(31_u32.wrapping_sub(power.exponent as u32));
+        let one = (1_u32 << 31) >> (power.exponent as u32 & 31);
         ((high.wrapping_sub(one) as u64) << 32 | low as u64, power.exponent)
     }
 }
@@ -365,9 +365,9 @@ pub(super) const fn offset_of_power(power: Power32, negative: bool) -> (u64, i32
 /// ```
 pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     /// 0.0586, so that r/2 + r^2/6 fits a word with 36 fraction bits.
-    const SMALL: u32 = 15 << 20;
+    const SMALL: i32 = 15 << 20;
     let bits = rapidity.to_bits();
-    if bits.unsigned_abs() < SMALL {
+    if (bits.wrapping_add(SMALL) as u32) < 2 * SMALL as u32 {
         return small_offset(bits);
     }
     let power = power::<28>(bits);
@@ -375,7 +375,7 @@ pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     rounded_offset(value, exponent, bits >> 31)
 }
 
-/// (exp(r) - 1)/r - 1 with 36 fraction bits of r with 35, |r| < 0.0586; within 2 units.
+/// (exp(r) - 1)/r - 1 with 36 fraction bits of r with 35, |r| up to 0.0586; within 2 units.
 ///
 /// r/2 + r^2 (1/6 + r (1/24 + r (1/120 + r/720))); the first left out, r^6/5040, is half a unit.
 #[inline(always)]
@@ -389,7 +389,7 @@ pub(super) const fn small_bend(r: i32) -> i32 {
     r.wrapping_sub(high_i32(r, high_i32(r, sixth)).wrapping_sub(1 << 2) >> 3)
 }
 
-/// exp(r) - 1 for |r| < 0.0586.
+/// exp(r) - 1 for |r| up to 0.0586.
 #[inline(always)]
 const fn small_offset(bits: i32) -> ShiftOffset32 {
     if bits == 0 {

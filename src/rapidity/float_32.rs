@@ -168,16 +168,15 @@ pub const fn factor_of_rapidity(rapidity: f32) -> f32 {
 /// assert_eq!(offset_of_rapidity(-0.0).to_bits(), (-0.0_f32).to_bits());
 /// ```
 pub const fn offset_of_rapidity(rapidity: f32) -> f32 {
-    /// 2^-25, below which the nearest float is the rapidity; 87; 18, from which on it is -1 the other way.
+    /// 2^-25, below which the nearest float is the rapidity; 18, from which on it is -1 the other way.
     const LEAST: u32 = 0x3300_0000;
-    const MOST: u32 = 0x42ae_0000;
-    const MOST_NEGATIVE: u32 = 0x4190_0000;
+    const MOST: u32 = 0x4190_0000;
     /// 15/256, where the quick power series ends.
     const SMALL: u32 = 0x3d70_0000;
     let bits = rapidity.to_bits();
     let (size, sign) = (bits & 0x7fff_ffff, sign(rapidity));
     let parts = parts(rapidity);
-    if size.wrapping_sub(LEAST) < if sign == 0 { MOST - LEAST } else { MOST_NEGATIVE - LEAST } {
+    if size.wrapping_sub(LEAST) < MOST - LEAST {
         return match float_quick::offset_of_rapidity(parts, sign, size < SMALL) {
             Some(offset) => offset,
             None => nearest(offset::<0>(parts, sign), sign),

@@ -84,7 +84,7 @@ const fn scaled(parts: Parts, bend: i32, sign: u32) -> Option<f32> {
     clear_top(value, parts.exponent.wrapping_add(24), sign)
 }
 
-/// exp(r) - 1, 2^-25 <= r < 87 or -18 < r <= -2^-25, `small` where |r| < 0.0586.
+/// exp(r) - 1, 2^-25 <= |r| < 18, `small` where |r| < 0.0586.
 #[inline(always)]
 pub(super) const fn offset_of_rapidity(parts: Parts, sign: u32, small: bool) -> Option<f32> {
     if small {
