@@ -184,14 +184,17 @@ mod tests {
     #[test]
     fn halves_give_the_same_words_as_long_products() {
         for (a, b) in pairs() {
-            let unsigned = (u64::from(a) * u64::from(b) >> 32) as u32;
-            let signed = (i64::from(a as i32) * i64::from(b as i32) >> 32) as i32;
+            let unsigned = ((u64::from(a) * u64::from(b)) >> 32) as u32;
+            let signed = ((i64::from(a as i32) * i64::from(b as i32)) >> 32) as i32;
             assert_eq!(halves::high_u32(a, b), unsigned);
             assert_eq!(halves::high_i32(a as i32, b as i32), signed);
             let mixed = halves::high_i32(a as i32, b as i32).wrapping_add(b as i32 & (a as i32 >> 31));
             assert_eq!(mixed, high_u32_i32(a, b as i32));
             assert_eq!(halves::high_square_i32(a as i32), high_i32(a as i32, a as i32));
-            assert_eq!(halves::middle_u32_u16(a, b as u16), (u64::from(a) * u64::from(b as u16) >> 8) as u32);
+            assert_eq!(
+                halves::middle_u32_u16(a, b as u16),
+                ((u64::from(a) * u64::from(b as u16)) >> 8) as u32
+            );
         }
     }
 
@@ -199,11 +202,11 @@ mod tests {
     fn long_products_are_exact() {
         for ((a, b), (c, d)) in pairs().zip(pairs().skip(777)) {
             let (x, y) = (u64::from(a) << 32 | u64::from(c), u64::from(d) << 32 | u64::from(b));
-            assert_eq!(high_u64(x, y), (u128::from(x) * u128::from(y) >> 64) as u64);
-            let floor = (i128::from(x as i64) * i128::from(y as i64) >> 64) as i64;
+            assert_eq!(high_u64(x, y), ((u128::from(x) * u128::from(y)) >> 64) as u64);
+            let floor = ((i128::from(x as i64) * i128::from(y as i64)) >> 64) as i64;
             assert!((0..=3).contains(&(floor - about_high_i64(x as i64, y as i64))));
             let word = i128::from(a as i32);
-            assert_eq!(high_i64_i32(x as i64, a as i32), (i128::from(x as i64) * word >> 32) as i64);
+            assert_eq!(high_i64_i32(x as i64, a as i32), ((i128::from(x as i64) * word) >> 32) as i64);
             assert_eq!(product_u32(a, b), u64::from(a) * u64::from(b));
             assert_eq!(product_u32_i32(a, b as i32), i64::from(a) * i64::from(b as i32));
             assert_eq!(product_i32(a as i32, b as i32), i64::from(a as i32) * i64::from(b as i32));
