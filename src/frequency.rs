@@ -26,6 +26,11 @@ impl Frequency {
     }
 
     /// From whole millihertz, rounded to the nearest 2^-24 Hz. `None` above the format.
+    #[allow(
+        clippy::arithmetic_side_effects,
+        clippy::cast_possible_truncation,
+        reason = "88 bits in 128; the bits above 64 are tested"
+    )]
     pub const fn from_millihertz_nearest(millihertz: u64) -> Option<Self> {
         let bits = (((millihertz as u128) << 24) + 500) / 1000;
         if bits >> 64 != 0 { None } else { Some(Self::from_bits(bits as u64)) }
@@ -87,12 +92,14 @@ impl PhaseStep {
     }
 
     /// The word of a device with `BITS` bits (1 to 63), rounded to the nearest, modulo 2^`BITS`.
+    #[allow(clippy::arithmetic_side_effects, reason = "`BITS` is from 1 to 63, at compile time")]
     pub const fn to_word_nearest<const BITS: u32>(self) -> u64 {
         const { assert!(BITS >= 1 && BITS <= 63, "a phase word has 1 to 63 bits") };
         self.to_bits().wrapping_add(1 << (63 - BITS)) >> (64 - BITS)
     }
 
     /// The step that a device with `BITS` bits makes of a word.
+    #[allow(clippy::arithmetic_side_effects, reason = "`BITS` is from 1 to 63, at compile time")]
     pub const fn from_word<const BITS: u32>(word: u64) -> Self {
         const { assert!(BITS >= 1 && BITS <= 63, "a phase word has 1 to 63 bits") };
         Self::from_bits(word << (64 - BITS))
@@ -166,6 +173,10 @@ impl ClockRatio {
 ///
 /// Shift and subtract, one bit a turn: the one long division of the crate, for set-up. It is small rather than
 /// fast: the compiler's 128-bit division costs 2 KiB of flash on a Cortex-M0.
+#[allow(
+    clippy::arithmetic_side_effects,
+    reason = "a count to 192; the quotient is not above the numerator, so it may carry"
+)]
 #[inline(never)]
 pub(crate) const fn divide_nearest(numerator: u128, denominator: u64) -> (u128, u64) {
     // The quotient's bits enter from below as the numerator's leave at the top.

@@ -43,6 +43,15 @@
 //! ```
 #![no_std]
 #![forbid(unsafe_code)]
+#![deny(missing_docs)]
+#![warn(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    clippy::panic,
+    clippy::indexing_slicing,
+    clippy::arithmetic_side_effects,
+    clippy::cast_possible_truncation
+)]
 
 pub mod follow;
 pub mod frequency;

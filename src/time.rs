@@ -3,6 +3,18 @@
 //! A radio that follows a motion needs time that neither jumps nor repeats; GPS time does that. UTC exists
 //! only at the edges, where the leap table below turns it into GPS time and back. One step (0.93 ns) moves a
 //! low orbit's shift at 437 MHz by at most 0.13 microhertz.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "set-up: years have 16 bits and seconds 33, so days, seconds and their scaled sums stay far inside 64"
+)]
+#![allow(
+    clippy::cast_possible_truncation,
+    reason = "set-up: tested before, or a cast from a float, which saturates"
+)]
+#![allow(
+    clippy::indexing_slicing,
+    reason = "set-up: a month from 1 to 12, and a count below the table's length"
+)]
 
 use fugit::Duration;
 

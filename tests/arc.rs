@@ -140,7 +140,7 @@ fn random_passes_fit() {
 fn a_whole_revolution_is_followed() {
     let radius = EQUATOR_RADIUS + 9.6e6;
     let rate = (reference::EARTH_GM / radius.powi(3)).sqrt();
-    let span = [0.0, 6.283 / rate];
+    let span = [0.0, std::f64::consts::TAU / rate];
     let position = |t: f64| {
         let (sine, cosine) = (rate * t).sin_cos();
         [radius * cosine, radius * sine * 0.6, radius * sine * 0.8]
@@ -184,9 +184,9 @@ fn header_fields_come_back() {
 /// A span that is no multiple of the format's 2^-10 s is widened, never narrowed.
 #[test]
 fn an_odd_span_is_covered() {
-    let words = synthetic([354.000_3, 1073.999_9]);
+    let words = synthetic([354.000_3, 1_073.999_9]);
     let arc = Arc::new(&words).unwrap();
-    let (start, end) = (epoch().plus_seconds(354.000_3), epoch().plus_seconds(1073.999_9));
+    let (start, end) = (epoch().plus_seconds(354.000_3), epoch().plus_seconds(1_073.999_9));
     assert!(arc.start() <= start && start.seconds_since(arc.start()) < 2e-3);
     assert!(arc.end() >= end && arc.end().seconds_since(end) < 2e-3);
 }

@@ -36,7 +36,7 @@ fn table(lateness_partial: bool) -> Vec<u32> {
 }
 
 fn refused(words: &[u32]) -> TableError {
-    PassTable::new(words).err().expect("a refusal")
+    PassTable::new(words).expect_err("a refusal")
 }
 
 /// Cut short at every length.
@@ -208,7 +208,7 @@ fn flyby(t: f64) -> f64 {
 fn bake_refuses_by_name() {
     let mut buffer = [0; 512];
     let mut refusal = |settings: &BakeSettings, delay: &dyn Fn(f64) -> f64| {
-        bake(&mut buffer, settings, delay, None).err().expect("a refusal")
+        bake(&mut buffer, settings, delay, None).expect_err("a refusal")
     };
     let later = |seconds: f64| GpsTime::default().plus_seconds(seconds);
     for end in [0.0, -1.0, 49.0 * 86_400.0] {
@@ -355,5 +355,5 @@ fn refusals_speak() {
         assert!(message.len() > 25 && !message.ends_with('.'), "{message}");
         assert!(!messages[..k].contains(message), "{message}");
     }
-    assert!(MAX_ARC_WORDS * 4 == 232);
+    assert_eq!(MAX_ARC_WORDS * 4, 232);
 }

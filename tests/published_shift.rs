@@ -2,6 +2,7 @@
 //!
 //! Marks: [S] seen in the source, [M] source recalled and not seen, [V] recomputed with 25 to 40 digits or
 //! exact fractions. Range rate positive = receding; a receding motion is a negative rapidity.
+#![allow(clippy::excessive_precision, clippy::approx_constant, reason = "digits as published")]
 
 #![allow(clippy::excessive_precision, reason = "published digits are kept as they stand")]
 

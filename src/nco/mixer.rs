@@ -151,8 +151,8 @@ impl Turning {
 
     /// Cosine and sine of the phase, then one clock.
     #[inline(always)]
-    // Eight bits index 256 entries; the lower half is meant to be cut out.
-    #[allow(clippy::indexing_slicing, clippy::cast_possible_truncation)]
+    #[allow(clippy::indexing_slicing, reason = "eight bits index 256 entries")]
+    #[allow(clippy::cast_possible_truncation, reason = "the lower half is cut out on purpose")]
     fn next(&mut self) -> (i32, i32) {
         // The sine above, the cosine below.
         let entry = MIXER_WAVE[(self.phase >> 24) as usize] as i32;

@@ -75,7 +75,7 @@ pub const fn cosine_sine_quick_i16(phase: u32) -> Complex<i16> {
 /// Sine at the step of the circle that `place` lies in; in the second half the complement, half a unit of 2^-31
 /// from the negative.
 #[inline(always)]
-#[allow(clippy::indexing_slicing)] // Eight bits index 256 entries.
+#[allow(clippy::indexing_slicing, reason = "eight bits index 256 entries")]
 const fn from_table(place: u32) -> i32 {
     HALF_WAVE[(place << 1 >> 24) as usize] as i32 ^ (place as i32 >> 31)
 }

@@ -1,4 +1,12 @@
 //! The spacecraft's Earth-fixed position over a pass, free of site, carrier and direction.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "set-up: counts of at most 64 words, orders up to 15, quanta from 2^-9 to 2^16"
+)]
+#![allow(
+    clippy::cast_possible_truncation,
+    reason = "set-up: fields are held below their width before, and words are cut out on purpose"
+)]
 
 use super::chebyshev::{self, Cosines};
 use super::packing::{BitReader, BitWriter, checksum};

@@ -4,6 +4,7 @@
 //! order, so host and board get the same bits.
 //!
 //! Source: J. C. Mason and D. C. Handscomb, Chebyshev Polynomials, 2003 (chapters 2 and 6), from memory.
+#![allow(clippy::arithmetic_side_effects, reason = "set-up: orders and counts of points, below 100")]
 
 use core::f64::consts::PI;
 

@@ -6,6 +6,10 @@
 //!
 //! Source: G. Petit and B. Luzum (eds.), IERS Conventions (2010), chapter 10, for the clock; light time as in
 //! any textbook on orbit determination; both from memory.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "set-up: the only integers are the clock series' orders, up to 9, and 128 grid places"
+)]
 
 use super::arc::{Arc, Trajectory};
 use super::chebyshev::{self, Cosines};

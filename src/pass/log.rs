@@ -3,6 +3,14 @@
 //! Each sample becomes a slope of the delay. Between two samples the slope is the cubic that has their values and
 //! the derivatives of the polynomial through the five samples around each (Hermite interpolation); the delay is
 //! its integral, exact but for rounding.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "set-up: indices of a log of at least five samples, each inside it"
+)]
+#![allow(
+    clippy::cast_possible_truncation,
+    reason = "set-up: the range is tested before, and a cast from a float saturates"
+)]
 
 use fixed::types::I16F16;
 

@@ -1,4 +1,9 @@
 //! Words, bits and checksums that arcs and tables share.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "set-up: widths from 1 to 32 and positions inside the words"
+)]
+#![allow(clippy::cast_possible_truncation, reason = "words are cut out on purpose")]
 
 use crc::{CRC_32_ISO_HDLC, Crc, NoTable};
 

@@ -1,4 +1,5 @@
 //! Sums of rapidities: exact, saturating, and a saturated sum stays saturated.
+#![allow(clippy::arithmetic_side_effects, reason = "the operators of a rapidity saturate")]
 
 use super::{Rapidity, RapidityRate};
 use core::iter::Sum;

@@ -3,6 +3,15 @@
 //! exp(x) = 2^k 2^(j/128) (1 + q) with q = exp(r) - 1, where x = (128 k + j) ln 2 / 128 + r and
 //! |r| < 2^-8.5. The table holds 71 bits of 2^(j/128), and sums carry 8 bits below the word, so that what
 //! is left of a difference from one still has 60 good bits.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "constants of a format less one another: shifts by 1 to 15 places"
+)]
+#![allow(clippy::indexing_slicing, reason = "seven bits index 128 entries")]
+#![allow(
+    clippy::cast_possible_truncation,
+    reason = "a word is cut out on purpose, and counts of bits are below 64"
+)]
 
 use super::coefficients::{EXPONENTIAL_RESTS, EXPONENTIALS, RECIPROCALS};
 use super::wide_product::{about_high_i64, high_i32, high_i64_i32, high_u64};

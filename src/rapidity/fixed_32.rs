@@ -12,6 +12,15 @@
 //! | [`offset_of_rapidity`] | r | exp(r) - 1 |
 //!
 //! No division, no loop. The worst error over all 2^32 inputs of each is in [`super::bounds`].
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "constants of a format less one another: shifts by 11 to 19 places"
+)]
+#![allow(clippy::indexing_slicing, reason = "seven bits index 128 entries")]
+#![allow(
+    clippy::cast_possible_truncation,
+    reason = "a word is cut out on purpose, or the bound beside it keeps the value inside"
+)]
 
 use super::coefficients::{EXPONENTIALS, LOGARITHMS, RECIPROCALS};
 use super::wide_product::{high_i32, high_square_i32, middle_u32_u16, product_i32};

@@ -14,6 +14,7 @@
 //! A first try in 32-bit arithmetic serves all but one float in 128; the rest go on in 64 bits.
 //!
 //! A float near one has 24 bits, 26 Hz at 437 MHz: carry offsets, never factors, in floats.
+#![allow(clippy::cast_possible_truncation, reason = "25 bits at most are left after the shift")]
 
 use super::exponential::{
     Normal, Power, offset_of_power, power_near, reciprocal, small_offset, steps_of_half, tanh_of_power,

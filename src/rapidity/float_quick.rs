@@ -2,6 +2,15 @@
 //!
 //! A result so close to the middle between two floats that its error could move it across is not given; then the
 //! functions of [`super::float_32`] go on in 64 bits. That happens for one float in 128.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "constants of a format less one another: shifts by 8 to 13 places"
+)]
+#![allow(clippy::indexing_slicing, reason = "seven bits index 128 entries")]
+#![allow(
+    clippy::cast_possible_truncation,
+    reason = "a word is cut out on purpose, or the bound beside it keeps the value inside"
+)]
 
 use super::coefficients::{LOGARITHMS, RECIPROCALS};
 use super::fixed_32::{

@@ -1,4 +1,9 @@
 //! Rapidities from speeds: range rate, velocity ratio, transverse motion.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "a float's exponent and its 24 bits, inside the ranges tested beside"
+)]
+#![allow(clippy::cast_possible_truncation, reason = "the lower word is cut out on purpose")]
 
 use super::logarithm::{Logarithm, logarithm, logarithm_of_beta};
 use super::wide_product::{about_high_i64, high_i32, high_u32_i32, product_i32, product_u32_i32};

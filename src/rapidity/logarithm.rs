@@ -2,6 +2,8 @@
 //!
 //! ln(m) = -ln(r) + ln(1 + z) with z = m r - 1, where r is one of 128 reciprocals that keeps |z| below
 //! 2^-8, and ln(1 + z) is the power series. No division.
+#![allow(clippy::indexing_slicing, reason = "seven bits index 128 entries")]
+#![allow(clippy::cast_possible_truncation, reason = "the lower word is cut out on purpose")]
 
 use super::coefficients::{LOGARITHMS, RECIPROCALS};
 use super::wide_product::{about_high_i64, high_i32, high_i64_i32};

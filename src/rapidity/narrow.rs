@@ -20,6 +20,7 @@
 //! | [`rapidity_of_slope`] | s | ln(1 - s) |
 //! | [`slope_of_rapidity`] | r | 1 - exp(r) |
 //! | [`first_order_range_rate`] | v | v', where exp(-atanh(v/c)) - 1 = -v'/c |
+#![allow(clippy::cast_possible_truncation, reason = "cut only to be compared with the whole")]
 
 use super::Rapidity;
 pub use super::bounds::{

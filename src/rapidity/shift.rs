@@ -1,4 +1,6 @@
 //! Back from a rapidity: frequency factor, offset from one, velocity ratio.
+#![allow(clippy::arithmetic_side_effects, reason = "64 bits times 61, and a shift of at least 49 places")]
+#![allow(clippy::cast_possible_truncation, reason = "the bits above are tested before")]
 
 use super::exponential::{
     factor, factor_of_power, offset_magnitude, power_near, steps_of_half, tanh_magnitude,

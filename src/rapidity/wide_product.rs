@@ -3,6 +3,8 @@
 //! All of these are exact floors, so the bits are the same on every target. A core without a long
 //! multiplication (Armv6-M, told here by its lack of atomics) forms the high word from 16-bit halves in
 //! about 20 instructions, where the compiler would call a routine of about 50.
+#![allow(clippy::arithmetic_side_effects, reason = "places are masked to 31 before")]
+#![allow(clippy::cast_possible_truncation, reason = "words and half words are cut out on purpose")]
 
 /// Whether the target multiplies 32 by 32 bits to 32 only.
 pub(crate) const SHORT_PRODUCTS: bool = cfg!(all(target_arch = "arm", not(target_has_atomic = "32")));

@@ -206,7 +206,7 @@ impl Proven {
     ) -> Self {
         let extremes = table.extremes();
         let interval = steering.interval();
-        let place = steering.clock * libm::ldexp(1.0, -(bits as i32));
+        let place = steering.clock * libm::ldexp(1.0, (bits as i32).wrapping_neg());
         let steered = deadband == 0.0 && quiet == 0.0;
         // Half a place of rounding, and half a place carried from the last interval.
         let word = Bound {

@@ -55,6 +55,11 @@ pub(super) struct RampUnits {
 
 impl RampUnits {
     /// `steepest`: log2 of what the steepest motion makes of the step in an interval, in 2^-64 cycle per clock.
+    #[allow(
+        clippy::arithmetic_side_effects,
+        clippy::cast_possible_truncation,
+        reason = "set-up: the reciprocal is at most 2^31, the clocks' logarithm below 32"
+    )]
     fn new(clocks: u32, steepest: i32) -> Self {
         let shift = clocks.ilog2();
         let (reciprocal, _) = divide_nearest(1 << (31 + shift), u64::from(clocks));
@@ -75,6 +80,7 @@ impl RampUnits {
     /// An even ramp per clock that makes `change` over an interval, and the change that it really makes: less by
     /// up to two units a clock and 2^-30 of it.
     #[inline]
+    #[allow(clippy::cast_possible_truncation, reason = "the lower word is cut out on purpose")]
     pub(super) fn ramp(&self, change: i64) -> (i64, i64) {
         let half = shifted_right(high_i64_u32(change, self.reciprocal), u32::from(self.shift));
         let ramp = half << 1;
@@ -109,6 +115,11 @@ impl Channel<true> {
     }
 
     /// The band as steps from W0.
+    #[allow(
+        clippy::arithmetic_side_effects,
+        clippy::cast_possible_truncation,
+        reason = "set-up: frequencies in 2^-80 Hz are below 2^121, edges below 2^63"
+    )]
     fn fence_of(
         &self,
         plan: &RfPlan<'_>,
@@ -142,6 +153,11 @@ impl Channel<true> {
 }
 
 impl<const RADIATES: bool> Channel<RADIATES> {
+    #[allow(
+        clippy::arithmetic_side_effects,
+        clippy::cast_possible_truncation,
+        reason = "set-up: binary exponents, each within +-200; the shift is clamped to 30"
+    )]
     fn new(plan: &RfPlan<'_>, folded: &Folded, clocks: u32, fraction_bits: i32) -> Result<Self, TuningError> {
         let clock = plan.clock.to_bits();
         let (seconds, rest) = divide_nearest(u128::from(clocks) << 24, clock);
@@ -217,6 +233,10 @@ impl<const RADIATES: bool> Channel<RADIATES> {
 
     /// A delay without the bits that the channel does not use; differences of these never accumulate.
     #[inline]
+    #[allow(
+        clippy::cast_possible_truncation,
+        reason = "cut on purpose: only wrapping differences of two are used"
+    )]
     pub(super) fn truncated(&self, delay: Delay) -> i32 {
         shifted_right(delay.to_bits(), u32::from(self.delay_shift)) as i32
     }
@@ -228,6 +248,7 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     }
 
     /// What dropping bits of the delay can add to a difference, in seconds. For a proof; set-up only.
+    #[allow(clippy::arithmetic_side_effects, reason = "set-up: two numbers below 64")]
     pub fn delay_resolution(&self) -> f64 {
         libm::ldexp(1.0, i32::from(self.delay_shift) - Delay::FRACTION_BITS as i32)
     }
@@ -259,6 +280,10 @@ impl<const RADIATES: bool> Channel<RADIATES> {
     }
 
     #[cold]
+    #[allow(
+        clippy::arithmetic_side_effects,
+        reason = "2^32 times a word, and 2^32 times the clock's upper 8 bits"
+    )]
     fn refusal(&self, away: i64) -> TuningError {
         let (lowest, highest) = self.fence;
         let beyond = if away < lowest { lowest.abs_diff(away) } else { away.abs_diff(highest) };
@@ -275,15 +300,21 @@ const FASTEST: i32 = 32_766;
 
 /// To 44 fraction bits, rounded to the nearest.
 #[inline]
+#[allow(clippy::cast_possible_truncation, reason = "the upper word was tested: 32 bits are left")]
 pub(super) fn narrowed(rapidity: Rapidity) -> Result<i32, TuningError> {
     let above = (rapidity.to_bits() >> 32) as i32;
-    if above.wrapping_add(FASTEST) as u32 >= 2 * FASTEST as u32 {
+    if above.wrapping_add(FASTEST) as u32 >= (FASTEST as u32) << 1 {
         return Err(TuningError::TooFast);
     }
     Ok((rapidity.to_bits().wrapping_add(1 << 15) >> 16) as i32)
 }
 
 /// W0, modulo one cycle for a phase step, range-checked for a ratio.
+#[allow(
+    clippy::arithmetic_side_effects,
+    clippy::cast_possible_truncation,
+    reason = "set-up: a quotient of at most 2^127, of which whole cycles are cut off on purpose"
+)]
 fn nominal(folded: &Folded, clock: u64, fraction_bits: i32) -> Result<u64, TuningError> {
     let (whole, fraction) = divide_nearest(folded.nominal.unsigned_abs(), clock);
     if fraction_bits == 48 {

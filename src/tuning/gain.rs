@@ -16,6 +16,11 @@ pub(super) struct Gain {
 
 impl Gain {
     /// (`whole` + `fraction` 2^-64) 2^`exponent`, below 2^63 and not zero, with a minus sign where `negative`.
+    #[allow(
+        clippy::arithmetic_side_effects,
+        clippy::cast_possible_truncation,
+        reason = "set-up: binary exponents within +-200; words are cut out on purpose"
+    )]
     #[inline(never)]
     pub(super) fn new((whole, fraction): (u128, u64), exponent: i32, negative: bool) -> Self {
         // The factor is `bits` 2^places of the lowest word, to at least 64 bits.

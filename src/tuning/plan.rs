@@ -1,4 +1,8 @@
 //! The RF plan: what lies between the antenna and the oscillator.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "set-up: 64 bits times 61 in 128, and a sum of two such products"
+)]
 
 use super::TuningError;
 use crate::frequency::Frequency;
@@ -133,6 +137,7 @@ pub(super) fn scaled(frequency: Frequency, crystal: i64) -> Result<i128, TuningE
 }
 
 /// expm1 of a crystal offset, I4F60, by six terms: below 2^-10 the seventh is under 2^-82.
+#[allow(clippy::cast_possible_truncation, reason = "as small as the offset itself: below 2^51")]
 fn small_offset(crystal: i64) -> Result<i64, TuningError> {
     const ONE: i64 = 1 << 60;
     if crystal.unsigned_abs() >= 1 << 50 {

@@ -52,6 +52,11 @@ impl LinearTransponder {
     /// # Errors
     /// [`TuningError::TransponderNotUsable`] when the downlink is not a positive frequency of the format or the two
     /// are a factor 16 or more apart.
+    #[allow(
+        clippy::arithmetic_side_effects,
+        clippy::cast_possible_truncation,
+        reason = "set-up: sums of two numbers of 64 bits in 128; a ratio is at most 2^32"
+    )]
     pub fn pair(&self, up: Frequency, still: Still) -> Result<TransponderPair, TuningError> {
         let constant = super::plan::scaled_frequency(self.constant, self.crystal)?;
         let (up_bits, constant) = (i128::from(up.to_bits()), i128::from(constant));

@@ -64,8 +64,9 @@ fn solve(mut rows: Vec<Vec<f64>>) -> Vec<f64> {
         rows.swap(column, pivot);
         for row in column + 1..n {
             let factor = rows[row][column] / rows[column][column];
-            for k in column..=n {
-                rows[row][k] -= factor * rows[column][k];
+            let above = rows[column].clone();
+            for (term, known) in rows[row].iter_mut().zip(&above).skip(column) {
+                *term -= factor * known;
             }
         }
     }

@@ -229,7 +229,7 @@ impl VelocitySettings {
 }
 
 /// Steps of time; saturates.
-#[allow(clippy::cast_possible_truncation)] // a float becomes the nearest integer in range
+#[allow(clippy::cast_possible_truncation, reason = "a float becomes the nearest integer in range")]
 pub(super) fn time_steps(seconds: f32) -> i64 {
     (seconds * (1u32 << 30) as f32) as i64
 }

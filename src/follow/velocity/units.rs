@@ -33,13 +33,13 @@ pub(super) fn speed_from_rapidity(bits: i64) -> f32 {
 }
 
 /// Rapidity, or its rate, of a receding speed or acceleration.
-#[allow(clippy::cast_possible_truncation)] // a float becomes the nearest integer in range
+#[allow(clippy::cast_possible_truncation, reason = "a float becomes the nearest integer in range")]
 pub(super) fn rapidity_from_speed(speed: f32) -> i64 {
     (speed * -RAPIDITY_PER_SPEED) as i64
 }
 
 /// Delay of a distance.
-#[allow(clippy::cast_possible_truncation)] // a float becomes the nearest integer in range
+#[allow(clippy::cast_possible_truncation, reason = "a float becomes the nearest integer in range")]
 pub(super) fn delay_from_metres(metres: f32) -> i64 {
     (metres * DELAY_PER_METRE) as i64
 }
@@ -48,7 +48,7 @@ pub(super) fn delay_from_metres(metres: f32) -> i64 {
 /// table of rapidity `ahead`. The slope is exp(ahead) (1 - exp(level)) = -level - level^2/2 - level^3/6 -
 /// level ahead + ...; the first term is without the growth (its distance is added by the caller), the
 /// others are means over a straight growth: mean(level^2) = middle^2 + growth^2/12.
-#[allow(clippy::cast_possible_truncation)] // below 2^-10, which `step` checks, they fit
+#[allow(clippy::cast_possible_truncation, reason = "below 2^-10, which `step` checks, they fit")]
 pub(super) fn delay_of_level(level: i64, growth: i64, ahead: i64, steps: i64) -> i64 {
     // With 41 fraction bits rapidities below 2^-10 fit 32; a product of two has 82, then 60.
     let product = |a: i32, b: i32| i64::from(a).wrapping_mul(i64::from(b)) >> 22;

@@ -1,4 +1,9 @@
 //! One segment: from its Chebyshev series to stored coefficients and the bound on what they leave.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "set-up: orders and counts of points, below 100, and units of 2^-60 to 2^-20"
+)]
+#![allow(clippy::cast_possible_truncation, reason = "set-up: the field's limit is tested before")]
 
 use super::super::chebyshev::{self, Cosines};
 use super::super::table::{DEGREE, FIELDS, NOISE};

@@ -12,6 +12,11 @@
 //!   coefficients visibly decay more slowly is refused;
 //! * (d) for a delay that is smooth only to a stated roughness of its slope (a log), what interpolation makes of
 //!   the rough part.
+#![allow(clippy::arithmetic_side_effects, reason = "set-up: a span has at most 1025 cells, a segment 4096")]
+#![allow(
+    clippy::cast_possible_truncation,
+    reason = "set-up: the range is tested before, and a cast from a float saturates"
+)]
 
 mod audit;
 mod fit;

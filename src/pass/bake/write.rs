@@ -1,4 +1,12 @@
 //! The words of a table: header, directory, records, lateness partial.
+#![allow(
+    clippy::arithmetic_side_effects,
+    reason = "set-up: at most 256 segments, and binary exponents of floats"
+)]
+#![allow(
+    clippy::cast_possible_truncation,
+    reason = "set-up: fields are held below their width before, and words are cut out on purpose"
+)]
 
 use super::super::chebyshev::{self, Cosines};
 use super::super::geometry::{Direction, TaggedAt};

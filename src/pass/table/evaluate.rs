@@ -63,6 +63,11 @@ pub(super) struct Place {
 
 impl Layout {
     /// `None` when a field is outside the format.
+    #[allow(
+        clippy::arithmetic_side_effects,
+        clippy::cast_possible_truncation,
+        reason = "set-up: the ranges tested in `sane`"
+    )]
     pub(super) fn new(header: &[u32; HEADER_WORDS]) -> Option<Self> {
         let fraction = header[13] & 0xFF;
         let cell = header[13] >> 8 & 0xFF;
@@ -90,29 +95,36 @@ impl Layout {
     }
 
     /// Bound on the difference of two evaluations' errors in 2^-60 s.
+    #[allow(clippy::arithmetic_side_effects, reason = "set-up: shifts by 0 to 17 places")]
     pub(super) fn difference_noise(&self) -> u32 {
         DIFFERENCE_NOISE << (44 - u32::from(self.fraction).min(44))
     }
 
     /// Bound on what the evaluation adds to a rapidity in 2^-60: 7 units of the slope a segment (see [`NOISE`]),
     /// `shortest` being the log2 of the shortest segment in cells, and the kernel's rounding to 2^-44.
+    #[allow(
+        clippy::arithmetic_side_effects,
+        reason = "set-up: exponents below 100, and 7 shifted by 28 places at most"
+    )]
     pub(super) fn rapidity_noise(&self, shortest: u32) -> u32 {
-        let seconds = i32::from(self.cell) + shortest as i32;
+        let seconds = self.log_seconds(shortest);
         let places = (60 + 2 - i32::from(self.fraction) - seconds).clamp(0, 28);
         (7 << places) + (3 << 15)
     }
 
     /// Finds the segment of a time since the epoch, in 2^-30 s, by a search of fixed depth.
     #[inline]
+    #[allow(clippy::cast_possible_truncation, reason = "the middle half word is cut out on purpose")]
     pub(super) fn locate(&self, directory: &[u32], elapsed: i64, fraction: u32) -> Place {
         // The top 12 bits are the cell; the shift is below 32.
         let aligned =
             shifted_left(elapsed as u64, u32::from(self.align)) | (u64::from(fraction) << self.align) >> 32;
         let key = (aligned >> 32) as u32 | 0xF_FFFF;
-        let mut segment = 0;
+        let mut segment = 0_u32;
         let mut step = u32::from(self.entries / 2);
         while step != 0 {
-            segment += step & not_above(entry(directory, segment + step), key);
+            segment =
+                segment.wrapping_add(step & not_above(entry(directory, segment.wrapping_add(step)), key));
             step /= 2;
         }
         let found = entry(directory, segment);
@@ -130,6 +142,10 @@ impl Layout {
 
     /// Value, slope and curvature of a record at a place.
     #[inline]
+    #[allow(
+        clippy::cast_possible_truncation,
+        reason = "the nodes' sum has 34 bits: its upper 32 and its lowest two"
+    )]
     pub(super) fn motion(&self, record: &[u32; RECORD_WORDS + 1], place: &Place, base: i64) -> Motion {
         let [start, second, third, fourth, fifth, sixth, end] = *record;
         let u = place.coarse;
@@ -184,17 +200,18 @@ impl Layout {
     #[inline]
     fn scale(&self, value: Long, slope: i32, bend: i32, length: u32, base: i64) -> Motion {
         let fraction = i32::from(self.fraction);
-        let seconds = i32::from(self.cell) + length as i32;
+        let seconds = self.log_seconds(length);
         let joined = (i64::from(value.head) << TAIL).wrapping_add(i64::from(value.tail));
         let finer = (Delay::FRACTION_BITS - 12).wrapping_sub(u32::from(self.fraction));
         let delay = (shifted_left(joined as u64, finer) as i64).wrapping_add(base);
         // Slope in 2^-44, which is what the narrow logarithm takes.
-        let narrow_slope = shifted(slope, 44 + 2 - fraction - seconds);
+        let narrow_slope = shifted(slope, (44_i32 + 2).wrapping_sub(fraction).wrapping_sub(seconds));
         let signed = (narrow_slope ^ self.negate).wrapping_sub(self.negate);
         let rapidity = narrow::rapidity_of_slope(signed);
         let rapidity = (rapidity ^ self.negate).wrapping_sub(self.negate);
         // Rate in 2^-48 per second: two for the whole curvature, and the segment's length squared.
-        let rate = shifted(bend, 48 + 1 + 2 - fraction - 2 * seconds).wrapping_neg();
+        let rate =
+            shifted(bend, (48_i32 + 1 + 2).wrapping_sub(fraction).wrapping_sub(seconds << 1)).wrapping_neg();
         Motion {
             delay: Delay::from_bits(delay),
             rapidity: Rapidity::from_bits(i64::from(rapidity) << 16),
@@ -204,13 +221,19 @@ impl Layout {
 
     /// A slope per segment, per second.
     pub(super) fn per_second(&self, slope: i64, length: u32) -> i64 {
-        let seconds = i32::from(self.cell) + length as i32;
-        if seconds < 0 { slope << -seconds } else { slope >> seconds }
+        let seconds = self.log_seconds(length);
+        if seconds < 0 { slope << seconds.wrapping_neg() } else { slope >> seconds }
     }
 
     /// Half of a segment's length in seconds.
     pub(super) fn half_length(&self, length: u32) -> f64 {
-        libm::ldexp(0.5, i32::from(self.cell) + length as i32)
+        libm::ldexp(0.5, self.log_seconds(length))
+    }
+
+    /// log2 in seconds of a segment's length, given in cells.
+    #[inline]
+    fn log_seconds(&self, length: u32) -> i32 {
+        i32::from(self.cell).wrapping_add(length as i32)
     }
 }
 
@@ -234,7 +257,7 @@ impl Long {
 #[inline(always)]
 fn entry(directory: &[u32], index: u32) -> u32 {
     let word = directory.get((index >> 1) as usize).copied().unwrap_or(u32::MAX);
-    word << (16 * (!index & 1))
+    word << ((!index & 1) << 4)
 }
 
 /// All ones when `entry` is not above `key`, else zero.
@@ -251,12 +274,13 @@ fn times(value: i32, u: i32) -> i32 {
 
 /// The same, and the 16 bits below.
 #[inline(always)]
+#[allow(clippy::cast_possible_truncation, reason = "48 bits less 16")]
 fn times_with_rest(value: i32, u: i32) -> (i32, i32) {
     if SHORT_PRODUCTS {
         let low = (value & 0xFFFF).wrapping_mul(u);
         return ((value >> 16).wrapping_mul(u).wrapping_add(low >> 16), low & 0xFFFF);
     }
-    (((i64::from(value) * i64::from(u)) >> 16) as i32, value.wrapping_mul(u) & 0xFFFF)
+    ((i64::from(value).wrapping_mul(i64::from(u)) >> 16) as i32, value.wrapping_mul(u) & 0xFFFF)
 }
 
 /// `value` times a 16-bit fraction in 64 bits; |value| < 2^48.

@@ -1,4 +1,5 @@
 //! How fast the delay of a table changes: what the proof of a steering's error needs. Set-up only, in f64.
+#![allow(clippy::arithmetic_side_effects, reason = "set-up: orders up to 9, and a half word of a pair")]
 
 use super::{DEGREE, FIELDS, PassTable};
 

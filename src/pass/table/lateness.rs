@@ -74,12 +74,13 @@ impl PassTable<'_> {
     }
 
     /// Bend of the partial per second of lateness in 2^-60, and its slope in 2^-60 per second.
+    #[allow(clippy::cast_possible_truncation, reason = "half words are cut out on purpose")]
     fn bend(&self, place: &Place) -> (i64, i64) {
-        let section = self.segments() * RECORD_WORDS + 1;
-        let word = |index: usize| self.records.get(section + index).copied().unwrap_or(0);
+        let section = self.segments().wrapping_mul(RECORD_WORDS).wrapping_add(1);
+        let word = |index: usize| self.records.get(section.wrapping_add(index)).copied().unwrap_or(0);
         let shift = FRACTION.saturating_sub(word(0) >> 16 & 0xFF);
-        let record = place.segment * PARTIAL_RECORD_WORDS + PARTIAL_RECORD_WORDS;
-        let (first, last) = (word(record), word(record + PARTIAL_RECORD_WORDS));
+        let record = place.segment.wrapping_add(1).wrapping_mul(PARTIAL_RECORD_WORDS);
+        let (first, last) = (word(record), word(record.wrapping_add(PARTIAL_RECORD_WORDS)));
         let (start, end) = (i64::from(first as i16) << shift, i64::from(last as i16) << shift);
         let second = i64::from((first >> 16) as i16) << shift;
         let rise = end.wrapping_sub(start);
@@ -91,20 +92,21 @@ impl PassTable<'_> {
     }
 
     /// Change of the delay per second of lateness in 2^-60, and its slope in 2^-60 per second.
+    #[allow(clippy::cast_possible_truncation, reason = "half words are cut out on purpose")]
     fn partial(&self, place: &Place) -> (i64, i64) {
-        let section = self.segments() * RECORD_WORDS + 1;
-        let word = |index: usize| self.records.get(section + index).copied().unwrap_or(0);
+        let section = self.segments().wrapping_mul(RECORD_WORDS).wrapping_add(1);
+        let word = |index: usize| self.records.get(section.wrapping_add(index)).copied().unwrap_or(0);
         let units = word(0);
         let node_shift = FRACTION.saturating_sub(units & 0xFF);
         let fine_shift = node_shift.saturating_add(units >> 8 & 0xFF).min(40);
-        let record = 1 + place.segment * PARTIAL_RECORD_WORDS;
+        let record = place.segment.wrapping_mul(PARTIAL_RECORD_WORDS).wrapping_add(1);
         let node = |index| i64::from(word(index) as i32) << node_shift;
-        let (start, end) = (node(record), node(record + PARTIAL_RECORD_WORDS));
-        let coefficient = |order: usize| {
-            let half = (word(record + order / 2) >> (16 * (order % 2))) as u16 as i16;
-            i64::from(half) << fine_shift
+        let (start, end) = (node(record), node(record.wrapping_add(PARTIAL_RECORD_WORDS)));
+        let pair = |index: usize| {
+            let both = word(record.wrapping_add(index));
+            [both as i16, (both >> 16) as i16].map(|half| i64::from(half) << fine_shift)
         };
-        let [c2, c3, c4, c5] = core::array::from_fn(|index| coefficient(index + 2));
+        let ([c2, c3], [c4, c5]) = (pair(1), pair(2));
         let first = (end.wrapping_sub(start) >> 1).wrapping_sub(c3).wrapping_sub(c5);
         let zeroth = (end.wrapping_add(start) >> 1).wrapping_sub(c2).wrapping_sub(c4);
         let mut value = c5 << 5;

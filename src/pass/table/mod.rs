@@ -113,6 +113,7 @@ impl<'a> PassTable<'a> {
     ///
     /// # Errors
     /// [`TableError::Short`], [`TableError::NotATable`], [`TableError::NewerVersion`], [`TableError::Damaged`].
+    #[allow(clippy::arithmetic_side_effects, reason = "set-up: at most 65535 segments, so below 2^20 words")]
     pub fn new(words: &'a [u32]) -> Result<Self, TableError> {
         let header: &[u32; HEADER_WORDS] = match (words.first(), words.first_chunk()) {
             (Some(first), _) if first >> 16 != MAGIC => return Err(TableError::NotATable),
@@ -132,7 +133,7 @@ impl<'a> PassTable<'a> {
         let length = HEADER_WORDS + directory_words + record_words + partial_words + 1;
         let words = words.get(..length).ok_or(TableError::Short)?;
         let (sum, body) = words.split_last().ok_or(TableError::Short)?;
-        if checksum(body) != *sum || header[0] >> 8 & 0xF != DEGREE as u32 {
+        if checksum(body) != *sum || (header[0] >> 8 & 0xF) as usize != DEGREE {
             return Err(TableError::Damaged);
         }
         let after_header = words.get(HEADER_WORDS..).ok_or(TableError::Short)?;
