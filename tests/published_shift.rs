@@ -4,7 +4,6 @@
 //! exact fractions. Range rate positive = receding; a receding motion is a negative rapidity.
 #![allow(clippy::excessive_precision, clippy::approx_constant, reason = "digits as published")]
 
-
 use fixed::types::{I1F31, I1F63, I16F16, I32F32, I48F16};
 use shiftkeel::frequency::Frequency;
 use shiftkeel::rapidity::narrow::{self, NarrowRapidity};
