@@ -51,7 +51,7 @@ fn error_or_refused(result: Result<Rapidity, RapidityError>, exact: &Big) -> f64
 
 #[test]
 fn range_rate_in_metres_per_second() {
-    let worst = worst("I16F16", words(1, 20_000, 10_000_000), |bits| {
+    let worst = worst("I16F16", words(1, 20_000, 200_000), |bits| {
         error(Rapidity::from_range_rate(I16F16::from_bits(bits)), &receding(big(bits, 16)))
     });
     assert_tight("range rate, I16F16", worst, bounds::RANGE_RATE);
@@ -59,7 +59,7 @@ fn range_rate_in_metres_per_second() {
 
 #[test]
 fn range_rate_in_millimetres_per_second() {
-    let worst = worst("mm/s", words(2, 20_000, 10_000_000), |bits| {
+    let worst = worst("mm/s", words(2, 20_000, 200_000), |bits| {
         error(Rapidity::from_range_rate_mm_per_s(bits), &receding(big(bits, 0) / big(1000, 0)))
     });
     assert_tight("range rate, mm/s", worst, bounds::RANGE_RATE_MM_PER_S);
@@ -67,7 +67,7 @@ fn range_rate_in_millimetres_per_second() {
 
 #[test]
 fn range_rate_in_any_speed_below_light() {
-    let worst = worst("I32F32", below(LIGHT << 32, 3, 20_000, 10_000_000), |bits| {
+    let worst = worst("I32F32", below(LIGHT << 32, 3, 20_000, 200_000), |bits| {
         error_or_refused(Rapidity::from_range_rate_wide(I32F32::from_bits(bits)), &receding(big(bits, 32)))
     });
     assert_tight("range rate, I32F32", worst, bounds::RANGE_RATE_WIDE);
@@ -76,7 +76,7 @@ fn range_rate_in_any_speed_below_light() {
 #[test]
 fn range_rate_as_a_float() {
     let mut random = Random::new(4);
-    let floats = (0..count(20_000, 10_000_000)).map(|number| {
+    let floats = (0..count(20_000, 200_000)).map(|number| {
         let bits = random.bits() as u32;
         // Every other one between 1 m/s and the speed of light, where the work is.
         let exponent = if number % 2 == 0 { 127 + bits % 29 } else { (bits >> 8) % 156 };
@@ -92,7 +92,7 @@ fn range_rate_as_a_float() {
 
 #[test]
 fn velocity_ratio() {
-    let worst = worst("I1F63", below(i64::MAX, 5, 20_000, 10_000_000), |bits| {
+    let worst = worst("I1F63", below(i64::MAX, 5, 20_000, 200_000), |bits| {
         error_or_refused(Rapidity::from_beta(I1F63::from_bits(bits)), &big(bits, 63).atanh())
     });
     assert_tight("beta, I1F63", worst, bounds::BETA);
@@ -108,7 +108,7 @@ fn short_velocity_ratio_is_the_long_one() {
 
 #[test]
 fn time_dilation() {
-    let worst = worst("transverse", below(LIGHT << 32, 7, 20_000, 10_000_000), |bits| {
+    let worst = worst("transverse", below(LIGHT << 32, 7, 20_000, 200_000), |bits| {
         let beta = big(bits, 32) / light();
         let exact = (big(1, 0) - beta.sqr()).ln() / big(2, 0);
         error_or_refused(Rapidity::from_transverse_speed(I32F32::from_bits(bits)), &exact)
