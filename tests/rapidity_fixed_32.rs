@@ -60,6 +60,19 @@ fn factor_of_rapidity_within_its_bound_over_all_inputs() {
     assert_tight("factor of rapidity, 32 bits", worst, bounds::FACTOR_OF_RAPIDITY_32);
 }
 
+/// Rapidities so close below a multiple of ln 2 that a mantissa of 32 bits rounds up to the power of two.
+#[test]
+fn factor_just_below_a_power_of_two() {
+    let mut found = 0;
+    for power in -11..=11 {
+        let below = (f64::from(power) * core::f64::consts::LN_2 * 2_f64.powi(28)).floor() as i32;
+        let factor = factor_of_rapidity(I4F28::from_bits(below));
+        assert!(factor_error(factor, rapidity(below).exp()) <= bounds::FACTOR_OF_RAPIDITY_32, "{below}");
+        found += i32::from(factor.mantissa() == 1 << 31 && power != 0);
+    }
+    assert!(found >= 1, "0xe9d1bd01 is one");
+}
+
 #[test]
 fn factor_of_beta_within_its_bound_over_all_inputs() {
     let worst = worst(|bits| {

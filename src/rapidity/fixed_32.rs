@@ -198,15 +198,17 @@ const fn power<const FRACTION_BITS: u32>(x: i32) -> Power32 {
     power_from_steps::<false>(steps, remainder)
 }
 
-/// A power rounded to 32 bits; just below a power of two the mantissa may round to 2^32, that is to 0.
+/// A power rounded to 32 bits.
 #[inline(always)]
 const fn rounded(power: Power32) -> ShiftFactor32 {
-    // -1 where the mantissa is below one and must be doubled.
-    let short = !(power.mantissa as i64 >> 63);
-    let mantissa = power.mantissa.wrapping_add(power.mantissa & short as u64);
-    ShiftFactor32 {
-        mantissa: ((mantissa >> 32) as u32).wrapping_add(mantissa as u32 >> 31),
-        exponent: power.exponent.wrapping_add(short as i32),
+    let (high, low) = ((power.mantissa >> 32) as u32, power.mantissa as u32);
+    // Rounded first, so that what lies just below one becomes one and is not doubled beyond the word.
+    let whole = high.wrapping_add(low >> 31);
+    if whole >> 31 == 0 {
+        let mantissa = whole.wrapping_add(high).wrapping_add((low >> 30) & 1);
+        ShiftFactor32 { mantissa, exponent: power.exponent.wrapping_sub(1) }
+    } else {
+        ShiftFactor32 { mantissa: whole, exponent: power.exponent }
     }
 }
 
@@ -231,7 +233,6 @@ const fn rounded(power: Power32) -> ShiftFactor32 {
 /// assert_eq!((factor.mantissa(), factor.exponent()), (2_918_732_889, 1)); // e = 1.3591 * 2
 /// ```
 pub const fn factor_of_rapidity(rapidity: I4F28) -> ShiftFactor32 {
-    // No rapidity comes so close to a multiple of ln 2 from below that the mantissa would round to 2^32.
     rounded(power::<28>(rapidity.to_bits()))
 }
 
@@ -270,14 +271,7 @@ pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
         .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
         .wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
     // Half of ln 2 is 64 steps.
-    let factor =
-        rounded(power_from_steps::<true>(steps.wrapping_add(signed(half.exponent << 6, sign)), remainder));
-    // The largest beta rounds to 2^16.
-    let carry = factor.mantissa == 0;
-    ShiftFactor32 {
-        mantissa: factor.mantissa | (carry as u32) << 31,
-        exponent: factor.exponent.wrapping_add(carry as i32),
-    }
+    rounded(power_from_steps::<true>(steps.wrapping_add(signed(half.exponent << 6, sign)), remainder))
 }
 
 /// Velocity ratio of a rapidity: tanh(r).
