@@ -190,12 +190,12 @@ pub(super) const fn power_from_steps<const NEAREST: bool>(steps: i32, remainder:
 
 /// exp(x) of x with 28 or 27 fraction bits.
 #[inline(always)]
-const fn power<const FRACTION_BITS: u32>(x: i32) -> Power32 {
+const fn power<const FRACTION_BITS: u32, const NEAREST: bool>(x: i32) -> Power32 {
     let steps = (x >> 16).wrapping_mul(STEPS).wrapping_add(1 << (FRACTION_BITS - 10)) >> (FRACTION_BITS - 9);
     let remainder = (x << (39 - FRACTION_BITS))
         .wrapping_sub(steps.wrapping_mul(STEP_HIGH))
         .wrapping_sub(steps.wrapping_mul(STEP_LOW) >> 16);
-    power_from_steps::<false>(steps, remainder)
+    power_from_steps::<NEAREST>(steps, remainder)
 }
 
 /// A power rounded to 32 bits.
@@ -233,7 +233,7 @@ const fn rounded(power: Power32) -> ShiftFactor32 {
 /// assert_eq!((factor.mantissa(), factor.exponent()), (2_918_732_889, 1)); // e = 1.3591 * 2
 /// ```
 pub const fn factor_of_rapidity(rapidity: I4F28) -> ShiftFactor32 {
-    rounded(power::<28>(rapidity.to_bits()))
+    rounded(power::<28, false>(rapidity.to_bits()))
 }
 
 /// Frequency factor of a velocity ratio: sqrt((1 + b)/(1 - b)).
@@ -296,7 +296,7 @@ pub const fn factor_of_beta(beta: I1F31) -> ShiftFactor32 {
 pub const fn beta_of_rapidity(rapidity: I4F28) -> I1F31 {
     let bits = rapidity.to_bits();
     let sign = bits >> 31;
-    let power = power::<27>(bits.saturating_abs().wrapping_neg());
+    let power = power::<27, false>(bits.saturating_abs().wrapping_neg());
     // X with 63 fraction bits, 39 of them good.
     let x = power.mantissa >> power.exponent.unsigned_abs();
     let sum = (1_u64 << 63).saturating_add(x);
@@ -373,7 +373,7 @@ pub const fn offset_of_rapidity(rapidity: I4F28) -> ShiftOffset32 {
     if (bits.wrapping_add(SMALL) as u32) < 2 * SMALL as u32 {
         return small_offset(bits);
     }
-    let power = power::<28>(bits);
+    let power = power::<28, true>(bits);
     let (value, exponent) = offset_of_power(power, bits < 0);
     rounded_offset(value, exponent, bits >> 31)
 }
