@@ -9,6 +9,13 @@ use fixed::types::{U0F64, U16F48, U40F24};
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Default)]
 pub struct Frequency(U40F24);
 
+#[cfg(feature = "defmt")]
+impl defmt::Format for Frequency {
+    fn format(&self, formatter: defmt::Formatter<'_>) {
+        defmt::write!(formatter, "Frequency({=u64} * 2^-24 Hz)", self.to_bits());
+    }
+}
+
 impl Frequency {
     /// The bits: hertz times 2^24.
     pub const fn to_bits(self) -> u64 {
@@ -66,6 +73,13 @@ impl From<Frequency> for U40F24 {
 /// ```
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, Default)]
 pub struct PhaseStep(U0F64);
+
+#[cfg(feature = "defmt")]
+impl defmt::Format for PhaseStep {
+    fn format(&self, formatter: defmt::Formatter<'_>) {
+        defmt::write!(formatter, "PhaseStep({=u64} * 2^-64 cycle per clock)", self.to_bits());
+    }
+}
 
 impl PhaseStep {
     /// The bits: cycles per clock times 2^64, modulo 2^64.
@@ -150,6 +164,13 @@ impl PhaseRamp {
 /// Output over reference frequency of a synthesiser that multiplies: 16 integer and 48 fraction bits.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Default)]
 pub struct ClockRatio(U16F48);
+
+#[cfg(feature = "defmt")]
+impl defmt::Format for ClockRatio {
+    fn format(&self, formatter: defmt::Formatter<'_>) {
+        defmt::write!(formatter, "ClockRatio({=u64} * 2^-48)", self.to_bits());
+    }
+}
 
 impl ClockRatio {
     /// The bits: ratio times 2^48.

@@ -96,6 +96,7 @@ impl core::error::Error for ArcError {}
 
 /// What [`Arc::fit`] is asked for.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct ArcSettings {
     /// First instant.
     pub start: GpsTime,

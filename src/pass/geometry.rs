@@ -90,6 +90,7 @@ impl core::error::Error for GeometryError {}
 
 /// Where the ground end is: WGS-84 geodetic coordinates, fixed or moving at a constant velocity.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Site {
     position: Vector,
     velocity: Vector,
@@ -190,6 +191,7 @@ impl Site {
 
 /// Where the spacecraft stands in the sky of the site.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Look {
     /// Elevation in radians above the plane of the ellipsoid, no refraction.
     pub elevation: f64,
@@ -201,6 +203,7 @@ pub struct Look {
 
 /// What the geometry tells at an instant.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Passage {
     /// Apparent delay in seconds, clock term included; its slope is the shift. Zero of the spacecraft's clock
     /// is at the middle of the arc.

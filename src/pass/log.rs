@@ -80,6 +80,14 @@ pub struct RangeRateSample {
     pub range_rate: I16F16,
 }
 
+#[cfg(feature = "defmt")]
+impl defmt::Format for RangeRateSample {
+    fn format(&self, formatter: defmt::Formatter<'_>) {
+        let range_rate = self.range_rate.to_bits();
+        defmt::write!(formatter, "RangeRateSample({}, {=i32} * 2^-16 m/s)", self.time, range_rate);
+    }
+}
+
 impl RangeRateSample {
     /// From m/s (positive = receding), rounded to the nearest 2^-16 m/s.
     ///

@@ -7,6 +7,7 @@
 
 /// A routine and its worst error.
 #[derive(Clone, Copy, Debug)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Bound {
     /// Path of the routine below `rapidity`.
     pub routine: &'static str,

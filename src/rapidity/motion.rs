@@ -5,6 +5,7 @@ use super::Rapidity;
 /// Apparent one-way (or two-way) delay of the signal, signed, in units of 2^-56 s (1.4e-17 s,
 /// 6e-9 cycle at 437 MHz), range +-128 s.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Default)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Delay(i64);
 
 impl Delay {
@@ -24,6 +25,7 @@ impl Delay {
 
 /// Change of rapidity per second, I4F60 per second.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Default)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct RapidityRate(i64);
 
 impl RapidityRate {
@@ -40,6 +42,7 @@ impl RapidityRate {
 
 /// Delay, rapidity and rapidity rate at one instant.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Motion {
     /// Apparent delay of the signal.
     pub delay: Delay,

@@ -7,6 +7,7 @@ use crate::pass::{MotionExtremes, PassTable};
 
 /// A bound, or an estimate, in the two units that a radio cares for.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Bound {
     /// Of the frequency, in hertz.
     pub hertz: f64,
@@ -73,12 +74,14 @@ impl ProvenPart {
 
 /// How far the oscillator may be from what the model says, part by part. No instant may exceed the total.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Proven {
     parts: [Bound; ProvenPart::ALL.len()],
 }
 
 /// What the proof needs to know of a steering besides channel and table.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Steering {
     /// RF carrier in hertz.
     pub carrier: f64,
@@ -231,6 +234,7 @@ impl Proven {
 
 /// One-sigma inputs that no arithmetic can prove. Defaults are common practice, without a source.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Assumptions {
     /// Setting of the clock against true time, seconds.
     pub clock_setting: f64,
@@ -261,6 +265,7 @@ impl Default for Assumptions {
 
 /// What the assumptions may cost, one sigma each, in hertz.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Assumed {
     /// Name and hertz of each part.
     pub parts: [(&'static str, f64); 6],
@@ -298,6 +303,7 @@ impl Assumed {
 
 /// What the model leaves out, as an estimate in hertz.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Excluded {
     /// Smooth ionosphere of 20 to 50 TEC units at zenith; falls with the carrier.
     pub ionosphere: f64,

@@ -10,6 +10,7 @@ use crate::rapidity::Motion;
 
 /// State of a holding oscillator's steering; `BITS` is the width of the device's word (1 to 63).
 #[derive(Clone, Copy, Debug)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Hold<const BITS: u32> {
     word: u64,
     /// Step that was asked for and not given, in 2^-64 cycle per clock.
@@ -22,6 +23,7 @@ pub struct Hold<const BITS: u32> {
 
 /// What an interval's device is given.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Held {
     /// The device's word.
     pub word: u64,

@@ -27,6 +27,7 @@ use crate::frequency::Frequency;
 /// let channel = Channel::transmit(&RfPlan::direct(carrier, clock), 1000);
 /// ```
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Permission {
     lowest: Frequency,
     highest: Frequency,

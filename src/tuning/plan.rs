@@ -11,6 +11,7 @@ use crate::rapidity::wide_product::high_u64;
 
 /// One frequency conversion between the antenna and the oscillator.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Conversion {
     /// Nominal frequency of the local oscillator.
     pub frequency: Frequency,
@@ -31,6 +32,7 @@ pub enum Injection {
 
 /// A translation by hertz in a transponder that is not coherent: added to the frequency, not to the logarithms.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Translation {
     /// Nominal size.
     pub frequency: Frequency,
@@ -50,6 +52,7 @@ pub struct Translation {
 /// The step at no shift is within half of 2^-64 cycle per clock where all offsets are zero, and within 2^-60 of
 /// all frequencies of the plan together (1 nHz at 1 GHz) where they are not (`tests/channel.rs`).
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct RfPlan<'a> {
     /// Carrier f0 at the far end, in its own time.
     pub carrier: Frequency,

@@ -37,6 +37,7 @@ use crate::rapidity::Motion;
 /// # Ok::<(), shiftkeel::tuning::TuningError>(())
 /// ```
 #[derive(Clone, Copy, Debug)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Sweep {
     /// Step at the end of the last interval.
     end: u64,
@@ -48,6 +49,7 @@ pub struct Sweep {
 
 /// What an interval's oscillator is given.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Swept {
     /// Step of the first clock (half a clock's ramp on), for an accumulator that adds, then ramps.
     pub first: PhaseStep,

@@ -9,6 +9,7 @@ use crate::rapidity::narrow::{offset_of_rapidity, rapidity_of_offset};
 /// A transponder that holds the sum (inverting) or the difference (not inverting) of uplink and downlink
 /// constant at the spacecraft.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct LinearTransponder {
     /// f_up + f_down (inverting) or f_down - f_up (not inverting) at the spacecraft; for a downlink below the
     /// uplink, f_up - f_down with `downlink_below`.
@@ -35,6 +36,7 @@ pub enum Still {
 
 /// Both carriers at a place in the passband, and what moves with what.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct TransponderPair {
     /// Uplink carrier at the spacecraft.
     pub up: Frequency,

@@ -11,6 +11,7 @@ const LIGHT: f32 = 299_792_458.0;
 
 /// A range rate, held as rapidity, and the instant at which it was true.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Estimate {
     time: GpsTime,
     rapidity: Rapidity,

@@ -63,6 +63,7 @@ const WIDEST: u32 = 50;
 
 /// One step's input.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Tick {
     /// The instant of the step; later than the last one.
     pub now: GpsTime,

@@ -4,6 +4,7 @@ use super::super::table::{PassTable, TableError};
 
 /// What [`audit`] saw.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Audit {
     /// Largest difference of delay in seconds.
     pub worst_delay: f64,

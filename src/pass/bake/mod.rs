@@ -83,6 +83,7 @@ impl core::error::Error for BakeError {}
 
 /// What a table says about itself.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct BakeSettings {
     /// First instant.
     pub start: GpsTime,
@@ -308,6 +309,7 @@ pub fn bake_arc<'a>(
 
 /// What [`bake_arc`] is asked for.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Request {
     /// First instant.
     pub start: GpsTime,

@@ -5,6 +5,7 @@ use super::{DEGREE, FIELDS, PassTable};
 
 /// Bounds on the delay's derivatives over a whole table.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct MotionExtremes {
     /// Of the first derivative: the shift over the carrier.
     pub slope: f64,
