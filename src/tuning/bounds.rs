@@ -162,6 +162,23 @@ impl Proven {
         self.with(part, self.part(part).plus(more))
     }
 
+    /// What a straight ramp that lands by the sweep's rule does not follow.
+    fn ramp<const RADIATES: bool>(
+        channel: &Channel<RADIATES>,
+        steering: &Steering,
+        extremes: &MotionExtremes,
+    ) -> Bound {
+        let interval = steering.interval();
+        // A chord misses a curve by h^2/8 of its second derivative, and the phase of a trapezoid by h^3/12.
+        let bend = steering.carrier * extremes.jerk * interval * interval;
+        let change = steering.carrier * extremes.rate * interval / steering.clock;
+        let unit = steering.clock * channel.ramp_resolution(change);
+        Bound {
+            hertz: bend * (1.0 / 8.0 + 1.0 / 12.0) + 2.0 * unit,
+            cycles: (bend / 12.0 + 1.5 * unit) * interval,
+        }
+    }
+
     /// Of a [`Sweep`](super::Sweep) fed from a table, arc not included.
     ///
     /// # Source
@@ -176,14 +193,6 @@ impl Proven {
     ) -> Self {
         let extremes = table.extremes();
         let interval = steering.interval();
-        // A chord misses a curve by h^2/8 of its second derivative, and the phase of a trapezoid by h^3/12.
-        let bend = steering.carrier * extremes.jerk * interval * interval;
-        let change = steering.carrier * extremes.rate * interval / steering.clock;
-        let unit = steering.clock * channel.ramp_resolution(change);
-        let ramp = Bound {
-            hertz: bend * (1.0 / 8.0 + 1.0 / 12.0) + 2.0 * unit,
-            cycles: (bend / 12.0 + 1.5 * unit) * interval,
-        };
         // The rapidity's evaluation, and a unit of 2^-44 for rounding it and for its offset.
         let rapidity = f64::from(table.rapidity_noise()) * libm::ldexp(1.0, -60);
         let own = steering.carrier * (rapidity + libm::ldexp(1.0, -44));
@@ -194,7 +203,44 @@ impl Proven {
             .adding(ProvenPart::Arithmetic, of_own(own))
             .adding(ProvenPart::Arithmetic, of_means)
             .adding(ProvenPart::Constants, of_own(coarse_gain))
-            .with(ProvenPart::Ramp, ramp)
+            .with(ProvenPart::Ramp, Self::ramp(channel, steering, &extremes))
+    }
+
+    /// Of a [`Sweep`](super::Sweep) fed by [`Stretch`](super::Stretch)es of `ticks` ticks from a table, arc not
+    /// included.
+    ///
+    /// # Source
+    /// What the quartic misses of the table, by its fifth derivative and its joints, counts with the table's part. An
+    /// error x in each of the five delays (the evaluation's) becomes at most 2.21 x in between and 32/3 x over a
+    /// quarter of the stretch in the slope at the ends, the sums of the sizes of the weights.
+    pub fn of_stretch<const RADIATES: bool>(
+        channel: &Channel<RADIATES>,
+        table: &PassTable<'_>,
+        steering: &Steering,
+        ticks: u32,
+    ) -> Self {
+        let extremes = table.extremes();
+        let (carrier, interval, ticks) = (steering.carrier, steering.interval(), f64::from(ticks));
+        let quarter = interval * ticks / 4.0;
+        let (value, slope) = table.off_quartic(quarter);
+        // Half a unit in each difference, and as much again from the first, which takes it back by the end.
+        let units = ticks + ticks * ticks / 2.0 + ticks * ticks * ticks / 6.0;
+        let rounding = units * libm::ldexp(1.0, -74) / interval;
+        // Two evaluations differ by the noise: each is off by half of it from a common middle.
+        let noise = f64::from(table.evaluation_noise()) * libm::ldexp(0.5, -60);
+        let hertz = carrier * (32.0 / 3.0 * noise / quarter + rounding)
+            + steering.clock * units * libm::ldexp(1.0, -64);
+        let arithmetic = Bound { hertz, cycles: carrier * 3.21 * noise + 0.75 * hertz * interval };
+        let shift = extremes.slope * steering.time_error;
+        let time_grid = Bound {
+            hertz: carrier * (32.0 / 3.0 * shift / quarter + extremes.rate * steering.time_error),
+            cycles: carrier * 2.21 * shift,
+        };
+        Self::of_table(channel, table, steering, &extremes)
+            .adding(ProvenPart::Table, Bound { hertz: carrier * slope, cycles: carrier * value })
+            .with(ProvenPart::Arithmetic, arithmetic)
+            .with(ProvenPart::TimeGrid, time_grid)
+            .with(ProvenPart::Ramp, Self::ramp(channel, steering, &extremes))
     }
 
     /// Of a [`Hold`](super::Hold) with words of `bits` bits fed from a table, arc not included. `deadband` in

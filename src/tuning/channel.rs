@@ -231,6 +231,12 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         self.permitted(self.nominal.wrapping_add(offset))
     }
 
+    /// What a difference of delays in 2^-`guard` of [`Delay`]'s unit adds to the step of one interval; `None`
+    /// where 128 bits do not hold the product. Set-up only.
+    pub(super) fn steps_of_delay(&self, delay: i64, guard: u32) -> Option<i128> {
+        self.by_delay.times_wide(delay, guard + u32::from(self.delay_shift))
+    }
+
     /// A delay without the bits that the channel does not use; differences of these never accumulate.
     #[inline]
     #[allow(

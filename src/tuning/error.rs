@@ -30,6 +30,8 @@ pub enum TuningError {
     /// The rapidity is saturated or beyond 2^-13 (36 km/s), or it and the delay do not belong together, because an
     /// interval was missed, came twice, or the table is another: the last word stays.
     TooFast,
+    /// Every tick of a stretch was steered and no next one laid: the last word stays.
+    UsedUp,
 }
 
 impl core::fmt::Display for TuningError {
@@ -51,6 +53,7 @@ impl core::fmt::Display for TuningError {
                 return write!(formatter, "emission {hertz} Hz outside the permitted band: not radiated");
             }
             Self::TooFast => "motion beyond 2^-13 (36 km/s), or not one interval after the last: last word kept; begin again",
+            Self::UsedUp => "no tick of the stretch is left: last word kept; lay the next one in time",
         })
     }
 }

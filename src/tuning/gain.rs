@@ -56,6 +56,14 @@ impl Gain {
         self.shifted(self.product(x))
     }
 
+    /// The factor times `x` 2^-`places`, to the nearest; `None` where 128 bits do not hold the product.
+    pub(super) fn times_wide(&self, x: i64, places: u32) -> Option<i128> {
+        let factor =
+            (i128::from(self.high as i32) << 64) + (i128::from(self.middle) << 32) + i128::from(self.low);
+        let product = factor.checked_mul(i128::from(x))?;
+        Some(((product >> (31 + u32::from(self.right) + places)) + 1) >> 1)
+    }
+
     #[inline]
     fn product(&self, x: i32) -> i64 {
         let above = (x as u32).wrapping_mul(self.high);

@@ -17,6 +17,7 @@ mod gain;
 mod hold;
 mod permission;
 mod plan;
+mod stretch;
 mod sweep;
 mod transponder;
 
@@ -26,5 +27,6 @@ pub use error::TuningError;
 pub use hold::{Held, Hold};
 pub use permission::Permission;
 pub use plan::{Conversion, Injection, RfPlan, Translation};
+pub use stretch::{Stretch, StretchError, Stride};
 pub use sweep::{Sweep, Swept};
 pub use transponder::{LinearTransponder, Still, TransponderPair};

@@ -93,6 +93,11 @@ impl Sweep {
         self.remainder
     }
 
+    /// Goes on by [`Self::step`] from the motion at which a [`Stretch`](super::Stretch) was left.
+    pub fn resume<const RADIATES: bool>(&mut self, channel: &Channel<RADIATES>, motion: &Motion) {
+        self.delay = channel.truncated(motion.delay);
+    }
+
     /// Steers the coming interval, given the motion at its end.
     ///
     /// The motion is compared with that of the last call, one interval before: after a missed instant
@@ -114,21 +119,35 @@ impl Sweep {
         let own = channel.step(next.rapidity)?.to_bits();
         let delay = channel.truncated(next.delay);
         let mean = channel.mean(self.delay, delay);
-        if !channel.ramp.follows(mean.wrapping_sub(own)) {
+        let above = own.wrapping_sub(mean);
+        if !channel.ramp.follows(above.wrapping_neg()) {
             return Err(TuningError::TooFast);
         }
+        let swept = self.land(channel, mean, above as i64)?;
+        self.delay = delay;
+        Ok(swept)
+    }
+
+    /// The same, given the mean step, and what the model's own step at the end is above it.
+    #[inline(always)]
+    pub(super) fn land<const RADIATES: bool>(
+        &mut self,
+        channel: &Channel<RADIATES>,
+        mean: u64,
+        above: i64,
+    ) -> Result<Swept, TuningError> {
         let start = self.end;
-        let wanted = mean.wrapping_add(self.remainder as u64);
-        let half = (own.wrapping_sub(start) as i64) >> 1;
-        let change = wanted.wrapping_add(half as u64).wrapping_sub(start) as i64;
+        let wanted = mean.wrapping_sub(start).wrapping_add(self.remainder as u64) as i64;
+        // own - start = mean + above - start
+        let half = wanted.wrapping_sub(self.remainder).wrapping_add(above) >> 1;
+        let change = wanted.wrapping_add(half);
         let (ramp, made) = channel.ramp.ramp(change);
         let end = start.wrapping_add(made as u64);
         // Both ends: the start may come from before a change of the channel.
         channel.permitted(start)?;
         channel.permitted(end)?;
         self.end = end;
-        self.remainder = wanted.wrapping_sub(start).wrapping_sub((made >> 1) as u64) as i64;
-        self.delay = delay;
+        self.remainder = wanted.wrapping_sub(made >> 1);
         Ok(Swept {
             first: PhaseStep::from_bits(start.wrapping_add((ramp >> 1) as u64)),
             ramp: PhaseRamp::from_bits(ramp),

@@ -10,7 +10,7 @@ use shiftkeel::nco::Nco;
 use shiftkeel::pass::PassTable;
 use shiftkeel::rapidity::{Delay, Motion, Rapidity, RapidityRate};
 use shiftkeel::time::GpsTime;
-use shiftkeel::tuning::{Hold, Sweep};
+use shiftkeel::tuning::{Hold, Stretch, Stride, Sweep};
 
 /// From a motion to a step.
 pub fn channel(report: Report) {
@@ -101,5 +101,62 @@ pub fn steering(report: Report, table: &PassTable<'_>) {
     );
     if refused != 0 {
         console::fail("a step was refused, or the ticks ran out of the pass: not every call was a full step");
+    }
+    stretch(report, table);
+}
+
+/// The tick of a firmware that lays its stretches ahead, and the laying. When its ticks
+/// are used up the same stretch is taken again, and its sweep.
+fn stretch(report: Report, table: &PassTable<'_>) {
+    let receiver = must(plans::receiver(Rapidity::from_bits(1_700_000_000_000)), "the receiver");
+    let stride = must(Stride::new((1 << 58) / u64::from(plans::RATE), 7), "the stride");
+    let ends = |from| {
+        let to = from + ((i64::from(stride.ticks()) << GpsTime::FRACTION_BITS) / i64::from(plans::RATE));
+        [from, to].map(|time| (GpsTime::from_bits(time), 0))
+    };
+    let first = Stretch::lay(table, &receiver, &stride, ends(instant(table, 7)));
+    let first = must(first, "the first stretch");
+    line(report, "Stretch::lay", |index| instant(table, index), |time| {
+        let (mut table, mut channel, mut stride) = (table, &receiver, &stride);
+        let (table, channel) = (in_memory(&mut table), in_memory(&mut channel));
+        let laid = Stretch::lay(table, channel, in_memory(&mut stride), ends(time));
+        laid.map_or((0, 0), |mut laid| {
+            let motion = in_memory(&mut laid).motion();
+            (motion.delay.to_bits(), motion.rapidity.to_bits())
+        })
+    });
+    let begun = must(Sweep::begin(&receiver, &first.motion()), "the sweep of a stretch");
+    let (mut stretch, mut sweep) = (first, begun);
+    let none = |_| ();
+    line(report, "Stretch::tick", none, |()| {
+        let (mut channel, stretch, sweep) = (&receiver, in_memory(&mut stretch), in_memory(&mut sweep));
+        if stretch.left() == 0 {
+            (*stretch, *sweep) = (first, begun);
+        }
+        let steered = stretch.tick(sweep, in_memory(&mut channel));
+        steered.map_or(((0, 0), (0, (0, 0))), |(motion, swept)| {
+            let motion = (motion.delay.to_bits(), (motion.rapidity.to_bits(), motion.rate.to_bits()));
+            ((swept.first.to_bits(), swept.ramp.to_bits()), motion)
+        })
+    });
+    (stretch, sweep) = (first, begun);
+    let mut oscillator = Nco::at_phase(0);
+    let mut motion = Motion::default();
+    let mut missed = 0u32;
+    line(report, "tick=Stretch::tick+retune", none, |()| {
+        let (mut channel, stretch, sweep) = (&receiver, in_memory(&mut stretch), in_memory(&mut sweep));
+        if stretch.left() == 0 {
+            (*stretch, *sweep) = (first, begun);
+        }
+        match stretch.tick(sweep, in_memory(&mut channel)) {
+            Ok((at_end, swept)) => {
+                *in_memory(&mut motion) = at_end;
+                in_memory(&mut oscillator).retune(swept.first, swept.ramp);
+            }
+            Err(_) => missed += 1,
+        }
+    });
+    if missed != 0 {
+        console::fail("a tick of the stretch was refused");
     }
 }

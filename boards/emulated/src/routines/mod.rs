@@ -47,6 +47,7 @@ pub fn states(report: Bytes) {
     report("PassTable", size_of::<shiftkeel::pass::PassTable<'_>>());
     report("Channel", size_of::<shiftkeel::tuning::Channel<false>>());
     report("Sweep", size_of::<shiftkeel::tuning::Sweep>());
+    report("Stretch", size_of::<shiftkeel::tuning::Stretch<false>>());
     report("Hold", size_of::<shiftkeel::tuning::Hold<32>>());
     report("VelocityFilter", size_of::<shiftkeel::follow::velocity::VelocityFilter>());
     report("VelocitySettings", size_of::<shiftkeel::follow::velocity::VelocitySettings>());
