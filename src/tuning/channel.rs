@@ -231,9 +231,14 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         self.permitted(self.nominal.wrapping_add(offset))
     }
 
-    /// What a difference of delays in 2^-`guard` of [`Delay`]'s unit adds to the step of one interval; `None`
-    /// where 128 bits do not hold the product. Set-up only.
+    /// What a difference of delays in 2^-`guard` of [`Delay`]'s unit adds to the step of one interval, whole
+    /// cycles per clock included; `None` where 128 bits do not hold the product. Set-up only.
+    #[allow(clippy::arithmetic_side_effects, reason = "set-up: places below 64")]
     pub(super) fn steps_of_delay(&self, delay: i64, guard: u32) -> Option<i128> {
+        // Below 1 Hz of clock the gain may have lost whole cycles.
+        if self.clock_hertz == 0 {
+            return None;
+        }
         self.by_delay.times_wide(delay, guard + u32::from(self.delay_shift))
     }
 

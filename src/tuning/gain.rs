@@ -57,6 +57,7 @@ impl Gain {
     }
 
     /// The factor times `x` 2^-`places`, to the nearest; `None` where 128 bits do not hold the product.
+    #[allow(clippy::arithmetic_side_effects, reason = "set-up: three words make 96 bits; shifts below 128")]
     pub(super) fn times_wide(&self, x: i64, places: u32) -> Option<i128> {
         let factor =
             (i128::from(self.high as i32) << 64) + (i128::from(self.middle) << 32) + i128::from(self.low);
