@@ -37,20 +37,21 @@ impl Site {
             return Err(GeometryError::SiteOffEarth);
         }
         let radians = core::f64::consts::PI / 180.0;
-        let (sin_lat, cos_lat) = (libm::sin(latitude * radians), libm::cos(latitude * radians));
-        let (sin_lon, cos_lon) = (libm::sin(longitude * radians), libm::cos(longitude * radians));
-        let normal = EARTH_RADIUS / libm::sqrt(1.0 - ECCENTRICITY_SQUARED * sin_lat * sin_lat);
-        let level = (normal + height) * cos_lat;
+        let (sine_latitude, cosine_latitude) = (libm::sin(latitude * radians), libm::cos(latitude * radians));
+        let (sine_longitude, cosine_longitude) =
+            (libm::sin(longitude * radians), libm::cos(longitude * radians));
+        let normal = EARTH_RADIUS / libm::sqrt(1.0 - ECCENTRICITY_SQUARED * sine_latitude * sine_latitude);
+        let level = (normal + height) * cosine_latitude;
         Ok(Self {
             position: [
-                level * cos_lon,
-                level * sin_lon,
-                (normal * (1.0 - ECCENTRICITY_SQUARED) + height) * sin_lat,
+                level * cosine_longitude,
+                level * sine_longitude,
+                (normal * (1.0 - ECCENTRICITY_SQUARED) + height) * sine_latitude,
             ],
             velocity: [0.0; 3],
-            east: [-sin_lon, cos_lon, 0.0],
-            north: [-sin_lat * cos_lon, -sin_lat * sin_lon, cos_lat],
-            up: [cos_lat * cos_lon, cos_lat * sin_lon, sin_lat],
+            east: [-sine_longitude, cosine_longitude, 0.0],
+            north: [-sine_latitude * cosine_longitude, -sine_latitude * sine_longitude, cosine_latitude],
+            up: [cosine_latitude * cosine_longitude, cosine_latitude * sine_longitude, sine_latitude],
             epoch: GpsTime::default(),
             geodetic: [latitude, longitude, height],
         })

@@ -12,7 +12,7 @@ use crate::rapidity::narrow::{first_order_range_rate, offset_of_rapidity};
 use crate::rapidity::wide_product::shifted_right;
 use crate::rapidity::{Delay, Motion, Rapidity};
 
-/// log2 of the steepest rapidity rate that is followed, per second: 7.6e-6/s, ten times a low orbit's.
+/// log2 of the steepest rapidity rate that is followed, per second: 7.6e-6/s, twenty times that of an orbit at 550 km.
 const STEEPEST: i32 = -17;
 
 /// A channel that is steered every so many clocks: receiving (`RADIATES` false) or transmitting (true).
