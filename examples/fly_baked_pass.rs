@@ -77,6 +77,7 @@ fn main() -> Result<(), Failure> {
 
     let hertz = |whole| Frequency::from_hertz(whole).ok_or("a frequency below 1.09 THz");
     let channel = Channel::receive(&RfPlan::direct(hertz(CARRIER)?, hertz(CLOCK)?), CLOCKS)?;
+    channel.suits(&table)?;
     let time_error = 0.5f64.powi(31);
     let steering = Steering { carrier: CARRIER as f64, clock: CLOCK as f64, clocks: CLOCKS, time_error };
     let proven = Proven::of_sweep(&channel, &table, &steering).total();

@@ -186,6 +186,7 @@ impl GpsTime {
         self,
         duration: Duration<u64, NUMERATOR, DENOMINATOR>,
     ) -> Self {
+        const { assert!(DENOMINATOR != 0, "a timer's tick has a denominator") };
         let Some(scaled) = (duration.as_ticks() as u128 * NUMERATOR as u128).checked_mul(1 << 30) else {
             return Self(i64::MAX);
         };

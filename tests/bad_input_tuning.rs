@@ -6,8 +6,10 @@ mod steered;
 
 use fixed::types::{I16F16, I32F32};
 use shiftkeel::frequency::{Frequency, PhaseStep};
-use shiftkeel::pass::{Direction, TableError};
+use shiftkeel::pass::bake::{BakeSettings, bake};
+use shiftkeel::pass::{Direction, TableError, TaggedAt};
 use shiftkeel::rapidity::{Delay, Motion, Rapidity};
+use shiftkeel::time::GpsTime;
 use shiftkeel::tuning::{
     Channel, Conversion, Hold, Injection, Permission, RatioChannel, RfPlan, Sweep, Translation, TuningError,
 };
@@ -367,6 +369,85 @@ fn wrong_table_and_wrong_time() {
     }
     assert_eq!(hold.word(), word);
     assert!(hold.step(&channel, &motion(12).unwrap(), false).is_ok());
+}
+
+/// A table belongs to one end of the signal: a receiver is asked with the time of reception, a transmitter with that
+/// of transmission.
+#[test]
+fn tables_of_the_other_end() {
+    let plan = RfPlan::direct(hertz(CARRIER), hertz(1_000_000));
+    let receiver = Channel::receive(&plan, 10_000).unwrap();
+    let synthesiser = RatioChannel::receive(&plan, 10_000).unwrap();
+    let permission = Permission::to_radiate(hertz(CARRIER - 20_000), hertz(CARRIER + 20_000)).unwrap();
+    let transmitter = Channel::transmit(&plan, 10_000, &permission).unwrap();
+    for (direction, tagged_at, is_received) in [
+        (Direction::Down, TaggedAt::Ground, true),
+        (Direction::Down, TaggedAt::Spacecraft, false),
+        (Direction::Up, TaggedAt::Ground, false),
+        (Direction::Up, TaggedAt::Spacecraft, true),
+        (Direction::TwoWay, TaggedAt::Ground, true),
+    ] {
+        let start = GpsTime::default();
+        let settings = BakeSettings {
+            start,
+            end: start.plus_seconds(60.0),
+            slope_tolerance: 1e-11,
+            delay_tolerance: 1e-11,
+            roughness: 0.0,
+            direction,
+            tagged_at,
+            object: 0,
+            element_epoch: start,
+            site: [0; 3],
+            arc_digest: 0,
+        };
+        let mut words = [0; 64];
+        let table = bake(&mut words, &settings, |seconds| 2e-3 + 1e-6 * seconds, None).unwrap();
+        let (suits, refused) = (Ok(()), Err(TuningError::OtherEnd));
+        assert_eq!(receiver.suits(&table), if is_received { suits } else { refused });
+        assert_eq!(synthesiser.suits(&table), receiver.suits(&table));
+        assert_eq!(transmitter.suits(&table), if is_received { refused } else { suits });
+    }
+    assert!(TuningError::OtherEnd.to_string().contains("reception"));
+}
+
+/// 8.4 GHz, a clock of 48 kHz and intervals of 10 s: a low orbit may change the step by half a cycle per clock in one,
+/// which could as well go the other way round. Changes up to 3/8 are followed, and exactly; more is refused.
+#[test]
+fn changes_near_half_a_cycle_per_clock() {
+    const CLOCKS: u32 = 480_000;
+    let channel = Channel::receive(&RfPlan::direct(hertz(8_400_000_000), hertz(48_000)), CLOCKS).unwrap();
+    // Delay a t^2 / 2, so the shift over the carrier is -a t, and the step changes by as much in every interval.
+    let motion = |change: f64, seconds: f64| {
+        let acceleration = change * 48_000.0 / (8.4e9 * 10.0);
+        let delay = acceleration * seconds * seconds / 2.0;
+        Motion {
+            delay: Delay::from_bits((delay * 2f64.powi(56)).round() as i64),
+            rapidity: Rapidity::from_bits(((-acceleration * seconds).ln_1p() * 2f64.powi(60)).round() as i64),
+            ..Motion::default()
+        }
+    };
+    for change in [-0.37, -0.26, -0.1, 0.1, 0.26, 0.37] {
+        let mut sweep = Sweep::begin(&channel, &motion(change, 0.0)).unwrap();
+        let mut hold = Hold::<32>::begin(&channel, &motion(change, 0.0), 0).unwrap();
+        for interval in 1..=10 {
+            let next = motion(change, 10.0 * f64::from(interval));
+            let swept = sweep.step(&channel, &next).unwrap();
+            let made = swept.change(CLOCKS) as f64 / TURN;
+            assert!((made + change).abs() < 1e-6, "{made} {change}");
+            let held = hold.step(&channel, &next, false).unwrap();
+            let middle = -change * (f64::from(interval) - 0.5);
+            let away = held.step.to_bits().wrapping_sub(channel.nominal_step().to_bits()) as i64;
+            let missed = away as f64 / TURN - middle;
+            assert!((missed - missed.round()).abs() < 1e-6, "{missed}");
+        }
+    }
+    for change in [-0.6, -0.5, -0.38, 0.38, 0.5, 0.6] {
+        let mut sweep = Sweep::begin(&channel, &motion(change, 0.0)).unwrap();
+        assert_eq!(sweep.step(&channel, &motion(change, 10.0)), Err(TuningError::TooFast), "{change}");
+        let mut hold = Hold::<32>::begin(&channel, &motion(change, 0.0), 0).unwrap();
+        assert_eq!(hold.step(&channel, &motion(change, 10.0), false), Err(TuningError::TooFast), "{change}");
+    }
 }
 
 /// Range rates at the ends of their format give steps, and receivers never refuse.

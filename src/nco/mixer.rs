@@ -26,7 +26,7 @@ const CHUNK: usize = 128;
 /// exactly those of [`Nco`].
 ///
 /// # Cost
-/// About 28 instructions for a complex sample on a Cortex-M4F and 58 on a Cortex-M0, oscillator included, in
+/// About 30 instructions for a complex sample on a Cortex-M4F and 58 on a Cortex-M0, oscillator included, in
 /// blocks of 128 or more; independent of the data. 1 KiB of table.
 ///
 /// # Source

@@ -13,6 +13,7 @@
 
 use super::arc::{Arc, Trajectory};
 use super::chebyshev::{self, Cosines};
+use super::site::{EARTH_RADIUS, Site, Vector};
 use crate::time::GpsTime;
 
 /// Speed of light, m/s, exact.
@@ -21,10 +22,7 @@ const LIGHT: f64 = 299_792_458.0;
 const EARTH_ROTATION: f64 = 7.292_115_146_706_979e-5;
 /// Gravitational parameter, m^3/s^2.
 const EARTH_GRAVITY: f64 = 3.986_004_418e14;
-const EARTH_RADIUS: f64 = 6_378_137.0;
 const EARTH_OBLATENESS: f64 = 1.082_626_68e-3;
-/// WGS-84 first eccentricity squared.
-const ECCENTRICITY_SQUARED: f64 = 6.694_379_990_141_317e-3;
 /// Rate of geocentric coordinate time against a clock on the geoid (L_G).
 const GEOID_RATE: f64 = 6.969_290_134e-10;
 /// Gravity at the surface, m/s^2: enough for a site's height.
@@ -33,8 +31,6 @@ const SURFACE_GRAVITY: f64 = 9.81;
 const LIGHT_TIME_STEPS: usize = 4;
 /// Points at which the spacecraft clock's rate is taken over the arc.
 const CLOCK_POINTS: usize = 8;
-
-type Vector = [f64; 3];
 
 /// Which way the signal runs.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -46,6 +42,19 @@ pub enum Direction {
     Up,
     /// Ground to spacecraft and coherently back; the spacecraft's clock cancels.
     TwoWay,
+}
+
+impl Direction {
+    /// Whether time read at `tagged_at` is that of the signal's reception, not of its transmission.
+    ///
+    /// ```
+    /// use shiftkeel::pass::{Direction, TaggedAt};
+    /// assert!(Direction::Down.is_received_at(TaggedAt::Ground));
+    /// assert!(!Direction::Up.is_received_at(TaggedAt::Ground));
+    /// ```
+    pub fn is_received_at(self, tagged_at: TaggedAt) -> bool {
+        (self == Self::Up) == (tagged_at == TaggedAt::Spacecraft)
+    }
 }
 
 /// At which end the time that a table is asked with is read.
@@ -88,107 +97,6 @@ impl core::fmt::Display for GeometryError {
 
 impl core::error::Error for GeometryError {}
 
-/// Where the ground end is: WGS-84 geodetic coordinates, fixed or moving at a constant velocity.
-#[derive(Clone, Copy, Debug, PartialEq)]
-#[cfg_attr(feature = "defmt", derive(defmt::Format))]
-pub struct Site {
-    position: Vector,
-    velocity: Vector,
-    east: Vector,
-    north: Vector,
-    up: Vector,
-    epoch: GpsTime,
-    geodetic: [f64; 3],
-}
-
-fn dot(a: &Vector, b: &Vector) -> f64 {
-    a.iter().zip(b).fold(0.0, |sum, (x, y)| sum + x * y)
-}
-
-fn minus(a: &Vector, b: &Vector) -> Vector {
-    let [ax, ay, az] = *a;
-    let [bx, by, bz] = *b;
-    [ax - bx, ay - by, az - bz]
-}
-
-/// Position turned about the Earth's axis by `angle` (positive eastwards).
-fn turned(vector: &Vector, angle: f64) -> Vector {
-    let [x, y, z] = *vector;
-    let (sine, cosine) = (libm::sin(angle), libm::cos(angle));
-    [cosine * x - sine * y, sine * x + cosine * y, z]
-}
-
-/// Velocity that the Earth's rotation gives to an Earth-fixed place.
-fn carried(place: &Vector) -> Vector {
-    let [x, y, _] = *place;
-    [-EARTH_ROTATION * y, EARTH_ROTATION * x, 0.0]
-}
-
-impl Site {
-    /// A fixed site: latitude and longitude in degrees (north and east positive), height in metres above the
-    /// WGS-84 ellipsoid.
-    ///
-    /// # Errors
-    /// [`GeometryError::SiteOffEarth`].
-    pub fn geodetic(latitude: f64, longitude: f64, height: f64) -> Result<Self, GeometryError> {
-        let on_earth = latitude.abs() <= 90.0 && longitude.abs() <= 360.0 && (-500.0..=1e5).contains(&height);
-        if !on_earth {
-            return Err(GeometryError::SiteOffEarth);
-        }
-        let radians = core::f64::consts::PI / 180.0;
-        let (sin_lat, cos_lat) = (libm::sin(latitude * radians), libm::cos(latitude * radians));
-        let (sin_lon, cos_lon) = (libm::sin(longitude * radians), libm::cos(longitude * radians));
-        let normal = EARTH_RADIUS / libm::sqrt(1.0 - ECCENTRICITY_SQUARED * sin_lat * sin_lat);
-        let level = (normal + height) * cos_lat;
-        Ok(Self {
-            position: [
-                level * cos_lon,
-                level * sin_lon,
-                (normal * (1.0 - ECCENTRICITY_SQUARED) + height) * sin_lat,
-            ],
-            velocity: [0.0; 3],
-            east: [-sin_lon, cos_lon, 0.0],
-            north: [-sin_lat * cos_lon, -sin_lat * sin_lon, cos_lat],
-            up: [cos_lat * cos_lon, cos_lat * sin_lon, sin_lat],
-            epoch: GpsTime::default(),
-            geodetic: [latitude, longitude, height],
-        })
-    }
-
-    /// The same site moving at a constant Earth-fixed velocity (east, north, up in m/s), where it is at `epoch`.
-    ///
-    /// # Errors
-    /// [`GeometryError::SiteTooFast`].
-    pub fn moving(self, [east, north, up]: [f64; 3], epoch: GpsTime) -> Result<Self, GeometryError> {
-        let speed = libm::sqrt(east * east + north * north + up * up);
-        if !(0.0..=1000.0).contains(&speed) {
-            return Err(GeometryError::SiteTooFast);
-        }
-        let mut velocity = [0.0; 3];
-        for (index, component) in velocity.iter_mut().enumerate() {
-            let part = |axis: &Vector| axis.get(index).copied().unwrap_or(0.0);
-            *component = east * part(&self.east) + north * part(&self.north) + up * part(&self.up);
-        }
-        Ok(Self { velocity, epoch, ..self })
-    }
-
-    /// Latitude and longitude in degrees, height in metres, as given.
-    pub fn geodetic_coordinates(&self) -> [f64; 3] {
-        self.geodetic
-    }
-
-    /// Earth-fixed position in metres.
-    pub fn earth_fixed(&self) -> [f64; 3] {
-        self.position
-    }
-
-    fn at(&self, seconds_from_epoch: f64) -> Vector {
-        let [x, y, z] = self.position;
-        let [u, v, w] = self.velocity;
-        [x + u * seconds_from_epoch, y + v * seconds_from_epoch, z + w * seconds_from_epoch]
-    }
-}
-
 /// Where the spacecraft stands in the sky of the site.
 #[derive(Clone, Copy, Debug, PartialEq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
@@ -229,17 +137,40 @@ pub struct Geometry {
     site_offset: f64,
 }
 
+fn dot(a: &Vector, b: &Vector) -> f64 {
+    a.iter().zip(b).fold(0.0, |sum, (x, y)| sum + x * y)
+}
+
+fn minus(a: &Vector, b: &Vector) -> Vector {
+    let [ax, ay, az] = *a;
+    let [bx, by, bz] = *b;
+    [ax - bx, ay - by, az - bz]
+}
+
+/// Position turned about the Earth's axis by `angle` (positive eastwards).
+fn turned(vector: &Vector, angle: f64) -> Vector {
+    let [x, y, z] = *vector;
+    let (sine, cosine) = (libm::sin(angle), libm::cos(angle));
+    [cosine * x - sine * y, sine * x + cosine * y, z]
+}
+
+/// Velocity that the Earth's rotation gives to an Earth-fixed place.
+fn carried(place: &Vector) -> Vector {
+    let [x, y, _] = *place;
+    [-EARTH_ROTATION * y, EARTH_ROTATION * x, 0.0]
+}
+
 impl Geometry {
     /// Joins arc and site. `lateness`: how many seconds later than its elements the spacecraft is in its orbit
     /// (the Earth turns on meanwhile).
-    ///
-    /// # Errors
-    /// [`GeometryError::LatenessTooLarge`], [`GeometryError::TwoWayTag`].
     ///
     /// # Accuracy
     /// Rapidity within 2e-15 and delay within 1e-14 s of an independently written model on the same positions; with
     /// what an arc leaves 0.5 mHz at 437 MHz over all reference orbits (`tests/geometry.rs`). Differences in the
     /// clock of a moving site are left out (1e-12 at 250 m/s).
+    ///
+    /// # Errors
+    /// [`GeometryError::LatenessTooLarge`], [`GeometryError::TwoWayTag`].
     pub fn new(
         arc: &Arc<'_>,
         site: &Site,

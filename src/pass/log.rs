@@ -178,7 +178,7 @@ impl<'a> RangeRateLog<'a> {
             }
         }
         let legs = if direction == Direction::TwoWay { 2.0 } else { 1.0 };
-        let at_receiver = (direction == Direction::Up) == (tagged_at == TaggedAt::Spacecraft);
+        let at_receiver = direction.is_received_at(tagged_at);
         Ok(Self { samples, legs, at_receiver, index: 0, sum: 0 })
     }
 

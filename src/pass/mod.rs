@@ -12,9 +12,11 @@ mod chebyshev;
 mod geometry;
 mod log;
 mod packing;
+mod site;
 mod table;
 
 pub use arc::{Arc, ArcError, ArcModel, ArcSettings, MAX_ARC_WORDS, Trajectory};
-pub use geometry::{Direction, Geometry, GeometryError, Look, Passage, Site, TaggedAt};
+pub use geometry::{Direction, Geometry, GeometryError, Look, Passage, TaggedAt};
 pub use log::{LogError, RangeRateLog, RangeRateSample};
+pub use site::Site;
 pub use table::{MotionExtremes, PassTable, TableError};

@@ -27,8 +27,12 @@ pub enum TuningError {
         /// Hertz beyond the nearer edge.
         hertz: u32,
     },
-    /// The rapidity is saturated or beyond 2^-13 (36 km/s), or it and the delay do not belong together, because an
-    /// interval was missed, came twice, or the table is another: the last word stays.
+    /// The table is asked with the time of the signal's other end: a receiver's with that of transmission, or a
+    /// transmitter's with that of reception.
+    OtherEnd,
+    /// The rapidity is saturated or beyond 2^-13 (36 km/s); or it and the delay do not belong together, because an
+    /// interval was missed, came twice, or the table is another; or the step changes by 3/8 of a cycle per clock or more
+    /// in an interval: the last word stays.
     TooFast,
     /// Every tick of a stretch was steered and no next one laid: the last word stays.
     UsedUp,
@@ -52,7 +56,12 @@ impl core::fmt::Display for TuningError {
             Self::OutsideFence { hertz } => {
                 return write!(formatter, "emission {hertz} Hz outside the permitted band: not radiated");
             }
-            Self::TooFast => "motion beyond 2^-13 (36 km/s), or not one interval after the last: last word kept; begin again",
+            Self::OtherEnd => {
+                "table of the other end: bake it for reception here (receiver) or transmission from here (transmitter)"
+            }
+            Self::TooFast => {
+                "motion beyond 2^-13 (36 km/s), not one interval after the last, or above 3/8 cycle per clock in it: last word kept; begin again, or steer more often"
+            }
             Self::UsedUp => "no tick of the stretch is left: last word kept; lay the next one in time",
         })
     }

@@ -17,6 +17,7 @@ mod gain;
 mod hold;
 mod permission;
 mod plan;
+mod ramp;
 mod stretch;
 mod sweep;
 mod transponder;

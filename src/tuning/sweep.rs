@@ -11,6 +11,7 @@
 //! interval only: the phase at its end is off by half of what a straight line between the model's own ends
 //! cannot follow of the model inside it, and an error is forgotten after two intervals.
 
+use super::channel::Asked;
 use super::{Channel, TuningError};
 use crate::frequency::{PhaseRamp, PhaseStep};
 use crate::rapidity::Motion;
@@ -101,7 +102,8 @@ impl Sweep {
     /// Steers the coming interval, given the motion at its end.
     ///
     /// The motion is compared with that of the last call, one interval before: after a missed instant
-    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too fast).
+    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too fast). So is a step that changes by 3/8 of a
+    /// cycle per clock or more in an interval (18 kHz at a clock of 48 kHz): steer more often.
     ///
     /// # Accuracy
     /// Frequency and phase within [`Proven::of_sweep`](super::Proven::of_sweep) (`tests/steering.rs`).
@@ -116,14 +118,8 @@ impl Sweep {
         channel: &Channel<RADIATES>,
         next: &Motion,
     ) -> Result<Swept, TuningError> {
-        let own = channel.step(next.rapidity)?.to_bits();
-        let delay = channel.truncated(next.delay);
-        let mean = channel.mean(self.delay, delay);
-        let above = own.wrapping_sub(mean);
-        if !channel.ramp.follows(above.wrapping_neg()) {
-            return Err(TuningError::TooFast);
-        }
-        let swept = self.land(channel, mean, above as i64)?;
+        let Asked { own, mean, delay } = channel.asked(self.delay, next)?;
+        let swept = self.land(channel, mean, own.wrapping_sub(mean) as i64)?;
         self.delay = delay;
         Ok(swept)
     }

@@ -10,7 +10,7 @@ pub fn times(a: i128, b: i128) -> i128 {
     let (x, y) = (a.unsigned_abs(), b.unsigned_abs());
     let (x1, x0) = (x >> 64, x & u128::from(u64::MAX));
     let (y1, y0) = (y >> 64, y & u128::from(u64::MAX));
-    let middle = (x1 * y0 + (x0 * y0 >> 64)) + x0 * y1;
+    let middle = (x1 * y0 + ((x0 * y0) >> 64)) + x0 * y1;
     // The product 2^-64 is x1 y1 2^64 + middle; 56 more bits go.
     let size = (((x1 * y1) << 8) + (middle >> 56)) as i128;
     if (a < 0) != (b < 0) { -size } else { size }

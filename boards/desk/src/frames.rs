@@ -121,6 +121,8 @@ pub enum SiteError {
 }
 
 /// A place fixed to the Earth, in geodetic coordinates of WGS-84.
+///
+/// The crate's own `Site` is not used: this model is what the crate's is held against, so it shares no code with it.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Site {
     latitude: f64,

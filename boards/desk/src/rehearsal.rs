@@ -181,6 +181,7 @@ impl<'a> Rehearsal<'a> {
     pub fn run(&self, mut progress: impl FnMut(f64)) -> anyhow::Result<Outcome> {
         let (frequency, carrier) = self.carrier()?;
         let tuning = Tuning::new(frequency, self.baked.order.direction, &self.oscillator)?;
+        tuning.suits(&self.table)?;
         let proven = tuning
             .proven(&self.table, carrier.hertz(), &self.oscillator)
             .with(ProvenPart::Arc, self.baked.arc_bound);

@@ -42,12 +42,12 @@ impl PassTable<'_> {
     /// Delay, rapidity and rate when the spacecraft is late in its orbit by `lateness` (2^-24 s, within +-8 s;
     /// positive = later than its elements say).
     ///
-    /// # Errors
-    /// As [`Self::at`], with the span shifted by the lateness; [`TableError::NoLateness`].
-    ///
     /// # Accuracy
     /// 10 mHz and 0.05 cycle at 437 MHz at 3 s of lateness on a pass at 550 km, the errors of a table of 10 mHz
     /// included; 3 mHz from one of 1 mHz; 40 mHz overhead at 320 km (`tests/lateness.rs`).
+    ///
+    /// # Errors
+    /// As [`Self::at`], with the span shifted by the lateness; [`TableError::NoLateness`].
     pub fn at_late(&self, time: GpsTime, lateness: i32) -> Result<Motion, TableError> {
         if !self.has_lateness() || !(-LARGEST..=LARGEST).contains(&lateness) {
             return Err(TableError::NoLateness);

@@ -151,14 +151,14 @@ impl<'a> PassTable<'a> {
 
     /// Delay, rapidity and rate at an instant.
     ///
-    /// # Errors
-    /// [`TableError::Before`], [`TableError::After`]: a table never extrapolates.
-    ///
     /// # Accuracy
     /// Delay within [`Self::proven_delay`] and its slope within [`Self::proven_slope`] of what was baked;
     /// between two instants the delay's evaluation adds at most [`Self::evaluation_noise`]. The rapidity is
     /// within [`Self::proven_slope`] and [`Self::rapidity_noise`]. The rate is the stored curve's and carries no
     /// proven error: some mHz/s at 437 MHz for a low orbit (all in `tests/pass_table.rs`).
+    ///
+    /// # Errors
+    /// [`TableError::Before`], [`TableError::After`]: a table never extrapolates.
     ///
     /// # Cost
     /// The same number of instructions at every instant of a table; see the cost table in README.md.

@@ -125,6 +125,17 @@ impl Tuning {
         Channel::receive(&plan, oscillator.clocks).map(Self::Receive)
     }
 
+    /// Checks that the table tells the motion of this channel's end.
+    ///
+    /// # Errors
+    /// [`TuningError::OtherEnd`].
+    pub fn suits(&self, table: &PassTable<'_>) -> Result<(), TuningError> {
+        match self {
+            Self::Receive(channel) => channel.suits(table),
+            Self::Transmit(channel) => channel.suits(table),
+        }
+    }
+
     /// The proven error, arc not included.
     pub fn proven(&self, table: &PassTable<'_>, carrier: f64, oscillator: &Oscillator) -> Proven {
         let steering =
