@@ -17,9 +17,9 @@ fn rapidity(bits: i32) -> f64 {
     f64::from(bits) / (1_u64 << 28) as f64
 }
 
-/// atanh without the cancellation of a generic one.
+/// atanh without cancellation at either end.
 fn inverse_tangent(b: f64) -> f64 {
-    0.5 * (2.0 * b / (1.0 - b)).ln_1p()
+    (0.5 * (2.0 * b.abs() / (1.0 - b.abs())).ln_1p()).copysign(b)
 }
 
 #[test]

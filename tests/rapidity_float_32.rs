@@ -69,7 +69,7 @@ fn rapidity_of_beta_is_correctly_rounded() {
     let rough = |b: f64| match b.abs() {
         1.0 => b * f64::INFINITY,
         0.0 => b,
-        _ => 0.5 * (2.0 * b / (1.0 - b)).ln_1p(),
+        size => (0.5 * (2.0 * size / (1.0 - size)).ln_1p()).copysign(b),
     };
     assert_correctly_rounded("atanh", rapidity_of_beta, rough, |b| b.atanh());
 }

@@ -57,7 +57,7 @@ bounds! {
     NARROW_SLOPE_OF_RAPIDITY, "narrow::slope_of_rapidity", "2^-44", 0.502;
     FIRST_ORDER_RANGE_RATE, "narrow::first_order_range_rate", "2^-16 m/s", 1.2;
     FIRST_ORDER_RANGE_RATE_BELOW_8_KM_S, "narrow::first_order_range_rate below 8 km/s", "2^-16 m/s", 0.65;
-    RAPIDITY_OF_BETA_32, "fixed_32::rapidity_of_beta", "2^-28", 0.51;
+    RAPIDITY_OF_BETA_32, "fixed_32::rapidity_of_beta", "2^-28", 0.502;
     BETA_OF_RAPIDITY_32, "fixed_32::beta_of_rapidity", "2^-31", 0.52;
     FACTOR_OF_RAPIDITY_32, "fixed_32::factor_of_rapidity", "the mantissa", 0.52;
     FACTOR_OF_BETA_32, "fixed_32::factor_of_beta", "the mantissa", 0.52;
