@@ -47,10 +47,10 @@ pub struct Channel<const RADIATES: bool> {
 
 /// What an interval asks for.
 pub(super) struct Asked {
-    /// The model's own step at the end.
-    pub(super) own: u64,
     /// The mean step.
     pub(super) mean: u64,
+    /// What the model's own step at the end is above it.
+    pub(super) above: i64,
     /// Truncated delay at the end: the next interval's start.
     pub(super) delay: i32,
 }
@@ -274,8 +274,9 @@ impl<const RADIATES: bool> Channel<RADIATES> {
         let own = self.step(next.rapidity)?.to_bits();
         let delay = self.truncated(next.delay);
         let mean = self.mean(before, delay);
-        if self.ramp.follows(mean.wrapping_sub(own)) {
-            Ok(Asked { own, mean, delay })
+        let above = own.wrapping_sub(mean);
+        if self.ramp.follows(above.wrapping_neg()) {
+            Ok(Asked { mean, above: above as i64, delay })
         } else {
             Err(TuningError::TooFast)
         }

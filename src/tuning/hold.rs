@@ -72,8 +72,9 @@ impl<const BITS: u32> Hold<BITS> {
     /// packet is on the air); the word stays and the phase is taken up afresh afterwards.
     ///
     /// The motion is compared with that of the last call, one interval before: after a missed instant
-    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too fast). So is a step that changes by 3/8 of a
-    /// cycle per clock or more in an interval (18 kHz at a clock of 48 kHz): steer more often.
+    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too
+    /// fast). So is a step that changes by 3/8 of a cycle per clock or more in an interval (18 kHz at a clock of
+    /// 48 kHz): steer more often.
     ///
     /// # Accuracy
     /// The frequency within [`Proven::of_hold`](super::Proven::of_hold); the phase at every interval's end, without

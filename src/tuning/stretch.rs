@@ -9,7 +9,7 @@ use core::sync::atomic::{Ordering, compiler_fence};
 
 use super::{Channel, Sweep, Swept, TuningError};
 use crate::frequency::divide_nearest;
-use crate::pass::{Direction, PassTable, TableError, TaggedAt};
+use crate::pass::{PassTable, TableError};
 use crate::rapidity::narrow::rapidity_of_slope;
 use crate::rapidity::{Delay, Motion, Rapidity, RapidityRate};
 use crate::time::GpsTime;
@@ -23,6 +23,7 @@ const COEFFICIENT_GUARD: u32 = 49;
 ///
 /// Settings, made once; see [`Stretch`]. As many ticks as last one to two seconds is right for a low orbit.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Stride {
     /// 2^-58 s.
     interval: u64,
@@ -232,13 +233,7 @@ impl<const RADIATES: bool> Stretch<RADIATES> {
         stride: &Stride,
         [from, to]: [(GpsTime, u32); 2],
     ) -> Result<Self, StretchError> {
-        let at_transmitter = matches!(
-            (table.direction(), table.tagged_at()),
-            (Direction::Up, TaggedAt::Ground) | (Direction::Down, TaggedAt::Spacecraft)
-        );
-        if at_transmitter != RADIATES {
-            return Err(StretchError::OtherEnd);
-        }
+        channel.suits(table).map_err(|_| StretchError::OtherEnd)?;
         let mut delays = [0; 5];
         let instants = stride.instants(from, to).ok_or(StretchError::StrideNotUsable)?;
         for (delay, instant) in delays.iter_mut().zip(instants) {

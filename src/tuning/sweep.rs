@@ -102,8 +102,9 @@ impl Sweep {
     /// Steers the coming interval, given the motion at its end.
     ///
     /// The motion is compared with that of the last call, one interval before: after a missed instant
-    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too fast). So is a step that changes by 3/8 of a
-    /// cycle per clock or more in an interval (18 kHz at a clock of 48 kHz): steer more often.
+    /// [`Self::begin`] again (the shift of two intervals in one, or of none, is refused as too
+    /// fast). So is a step that changes by 3/8 of a cycle per clock or more in an interval (18 kHz at a clock of
+    /// 48 kHz): steer more often.
     ///
     /// # Accuracy
     /// Frequency and phase within [`Proven::of_sweep`](super::Proven::of_sweep) (`tests/steering.rs`).
@@ -118,8 +119,8 @@ impl Sweep {
         channel: &Channel<RADIATES>,
         next: &Motion,
     ) -> Result<Swept, TuningError> {
-        let Asked { own, mean, delay } = channel.asked(self.delay, next)?;
-        let swept = self.land(channel, mean, own.wrapping_sub(mean) as i64)?;
+        let Asked { mean, above, delay } = channel.asked(self.delay, next)?;
+        let swept = self.land(channel, mean, above)?;
         self.delay = delay;
         Ok(swept)
     }

@@ -22,7 +22,7 @@ const FINER_QUANTA: i32 = 3;
 const LARGEST_FIELD: f64 = 2_147_483_647.0;
 
 impl<'a> Arc<'a> {
-    /// Fits and writes an arc into `buffer` ([`MAX_ARC_WORDS`] always suffice); `position` gives the
+    /// Fits and writes an arc into `buffer` ([`super::MAX_ARC_WORDS`] always suffice); `position` gives the
     /// Earth-fixed position in metres at seconds from `settings.start`.
     ///
     /// The lowest degree that meets the tolerance is taken.
