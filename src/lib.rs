@@ -21,7 +21,7 @@
 //! | [`frequency`] | hertz, phase steps, ramps, clock ratios |
 //! | [`rapidity`] | ln(received / transmitted frequency): shifts that add |
 //! | [`pass`] | arc, geometry, bake, table |
-//! | [`tuning`] | RF plan to word: channel, sweep, hold, transponder pair, permission, bounds |
+//! | [`tuning`] | RF plan to word: channel, sweep, hold, stretch, transponder pair, permission, bounds |
 //! | [`nco`] | phase accumulator, cosine and sine, mixer |
 //! | [`follow`] | velocity filter |
 //!
