@@ -162,7 +162,7 @@ impl<'a> PassTable<'a> {
     ///
     /// # Cost
     /// The same number of instructions at every instant of a table; see the cost table in README.md.
-    #[inline]
+    #[inline(never)]
     pub fn at(&self, time: GpsTime) -> Result<Motion, TableError> {
         self.read(time, 0)
     }
@@ -174,12 +174,13 @@ impl<'a> PassTable<'a> {
     ///
     /// # Errors
     /// As [`Self::at`].
-    #[inline]
+    #[inline(never)]
     pub fn at_fine(&self, time: GpsTime, fraction: u32) -> Result<Motion, TableError> {
         self.read(time, fraction)
     }
 
-    /// Always inlined, so that an instant on the grid does not pay for one between.
+    /// Always inlined, so that an instant on the grid does not pay for one between; the two that call it are not, so
+    /// that a tick's other numbers do not compete with theirs for registers.
     #[inline(always)]
     fn read(&self, time: GpsTime, fraction: u32) -> Result<Motion, TableError> {
         let elapsed = time.to_bits().wrapping_sub(self.epoch);
