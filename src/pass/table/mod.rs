@@ -162,9 +162,9 @@ impl<'a> PassTable<'a> {
     ///
     /// # Cost
     /// The same number of instructions at every instant of a table; see the cost table in README.md.
-    #[inline(never)]
+    #[inline]
     pub fn at(&self, time: GpsTime) -> Result<Motion, TableError> {
-        self.read(time, 0)
+        self.at_fine(time, 0)
     }
 
     /// The same at an instant finer than the grid of [`GpsTime`]: `fraction` is the rest in 2^-62 s.
@@ -174,15 +174,8 @@ impl<'a> PassTable<'a> {
     ///
     /// # Errors
     /// As [`Self::at`].
-    #[inline(never)]
+    #[inline]
     pub fn at_fine(&self, time: GpsTime, fraction: u32) -> Result<Motion, TableError> {
-        self.read(time, fraction)
-    }
-
-    /// Always inlined, so that an instant on the grid does not pay for one between; the two that call it are not, so
-    /// that a tick's other numbers do not compete with theirs for registers.
-    #[inline(always)]
-    fn read(&self, time: GpsTime, fraction: u32) -> Result<Motion, TableError> {
         let elapsed = time.to_bits().wrapping_sub(self.epoch);
         if elapsed < 0 {
             return Err(TableError::Before);
