@@ -116,15 +116,20 @@ fn stretch(report: Report, table: &PassTable<'_>) {
     };
     let first = Stretch::lay(table, &receiver, &stride, ends(instant(table, 7)));
     let first = must(first, "the first stretch");
-    line(report, "Stretch::lay", |index| instant(table, index), |time| {
-        let (mut table, mut channel, mut stride) = (table, &receiver, &stride);
-        let (table, channel) = (in_memory(&mut table), in_memory(&mut channel));
-        let laid = Stretch::lay(table, channel, in_memory(&mut stride), ends(time));
-        laid.map_or((0, 0), |mut laid| {
-            let motion = in_memory(&mut laid).motion();
-            (motion.delay.to_bits(), motion.rapidity.to_bits())
-        })
-    });
+    line(
+        report,
+        "Stretch::lay",
+        |index| instant(table, index),
+        |time| {
+            let (mut table, mut channel, mut stride) = (table, &receiver, &stride);
+            let (table, channel) = (in_memory(&mut table), in_memory(&mut channel));
+            let laid = Stretch::lay(table, channel, in_memory(&mut stride), ends(time));
+            laid.map_or((0, 0), |mut laid| {
+                let motion = in_memory(&mut laid).motion();
+                (motion.delay.to_bits(), motion.rapidity.to_bits())
+            })
+        },
+    );
     let begun = must(Sweep::begin(&receiver, &first.motion()), "the sweep of a stretch");
     let (mut stretch, mut sweep) = (first, begun);
     let none = |_| ();
