@@ -152,7 +152,7 @@ impl VelocityFilter {
     /// more; 2^31 s or more since the last step).
     ///
     /// # Cost
-    /// Instructions with an estimate, alpha-beta / alpha-beta-gamma / pass: 1600 / 1700 / 2400 on a
+    /// Instructions with an estimate, alpha-beta / alpha-beta-gamma / pass: about 1700 / 1700 / 2400 on a
     /// Cortex-M4F, 11 000 / 17 000 / 49 000 on a Cortex-M0; half of it or less without one. A restart or
     /// confirmation replays up to eight estimates once.
     pub fn step(&mut self, settings: &VelocitySettings, tick: Tick) -> Result<Outcome, FollowError> {
@@ -187,7 +187,7 @@ impl VelocityFilter {
     /// cycles over 20 s in one prediction (`tests/velocity_filter.rs`).
     ///
     /// # Cost
-    /// Instructions, alpha-beta / alpha-beta-gamma / pass: 340 / 350 / 530 on a Cortex-M4F, 2200 / 3000 /
+    /// Instructions, alpha-beta / alpha-beta-gamma / pass: about 380 / 380 / 530 on a Cortex-M4F, 2200 / 3000 /
     /// 10 400 on a Cortex-M0.
     pub fn predict(&self, settings: &VelocitySettings, at: GpsTime) -> Option<Motion> {
         let from = &self.steered;
