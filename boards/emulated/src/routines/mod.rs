@@ -26,6 +26,7 @@ pub fn all(report: Report, bytes: Bytes) {
     general::range_rate(report);
     rapidity::narrow_conversions(report);
     rapidity::fixed_32_conversions(report);
+    rapidity::float_32_conversions(report);
     general::functions(report);
     oscillator::cosine_and_sine(report);
     general::cosine_and_sine(report);

@@ -2,7 +2,7 @@
 
 use super::{Report, line, sample};
 use fixed::types::{I1F31, I1F63, I4F28, I16F16, I32F32};
-use shiftkeel::rapidity::{Rapidity, compose_beta_32, fixed_32, narrow};
+use shiftkeel::rapidity::{Rapidity, compose_beta_32, fixed_32, float_32, narrow};
 
 /// Speeds to rapidities.
 pub fn from_speeds(report: Report) {
@@ -92,6 +92,16 @@ pub fn fixed_32_conversions(report: Report) {
         let offset = fixed_32::offset_of_rapidity(I4F28::from_bits(rapidity));
         (offset.mantissa(), offset.exponent())
     });
+}
+
+/// The f32 conversions over the range of the alternatives' rows.
+pub fn float_32_conversions(report: Report) {
+    let wide = |index| sample::signed(index, 0.99) as f32;
+    line(report, "float_32::rapidity_of_beta", wide, float_32::rapidity_of_beta);
+    line(report, "float_32::beta_of_rapidity", wide, float_32::beta_of_rapidity);
+    line(report, "float_32::factor_of_rapidity", wide, float_32::factor_of_rapidity);
+    line(report, "float_32::factor_of_beta", wide, float_32::factor_of_beta);
+    line(report, "float_32::offset_of_rapidity", wide, float_32::offset_of_rapidity);
 }
 
 /// A range rate as I16F16 bits.
