@@ -13,7 +13,7 @@ use super::super::geometry::{Direction, TaggedAt};
 use super::super::packing::checksum;
 use super::super::table::{
     BASE_FRACTION, CELL_BITS, DEGREE, HEADER_WORDS, MAGIC, PARTIAL_RECORD_WORDS, PartialRecord, RECORD_WORDS,
-    SPAN_FRACTION, VERSION,
+    SPAN_FRACTION, VERSION, directory_entry,
 };
 use super::fit::{Fit, POINTS, SMOOTHNESS, Storage, round};
 use super::{BakeError, BakeSettings, Units, plan};
@@ -202,7 +202,7 @@ fn write_partial(
     late: &mut dyn FnMut(f64, f64) -> f64,
 ) -> Result<usize, BakeError> {
     let mut sampled = |segment: usize| {
-        let entry = directory.get(segment / 2).map_or(0, |word| word >> (16 * (segment % 2)) & 0xFFFF);
+        let entry = directory_entry(directory, segment as u32) >> 16;
         let half = units.cell_seconds() * libm::ldexp(1.0, (entry & 0xF) as i32) / 2.0;
         Sampled::new(units.cell_seconds() * f64::from(entry >> (16 - CELL_BITS)), half, late)
     };

@@ -255,7 +255,7 @@ impl Long {
 
 /// An entry of the directory in its upper half word; the lower half is whatever stands beside it.
 #[inline(always)]
-fn entry(directory: &[u32], index: u32) -> u32 {
+pub(in crate::pass) fn entry(directory: &[u32], index: u32) -> u32 {
     let word = directory.get((index >> 1) as usize).copied().unwrap_or(u32::MAX);
     word << ((!index & 1) << 4)
 }

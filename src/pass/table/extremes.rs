@@ -1,6 +1,8 @@
 //! How fast the delay of a table changes: what the proof of a steering's error needs. Set-up only, in f64.
-#![allow(clippy::arithmetic_side_effects, reason = "set-up: orders up to 9, and a half word of a pair")]
+#![allow(clippy::arithmetic_side_effects, reason = "set-up: orders up to 9, and binary exponents")]
+#![allow(clippy::cast_possible_truncation, reason = "set-up: at most 1024 segments")]
 
+use super::evaluate::entry;
 use super::{DEGREE, FIELDS, PassTable};
 
 /// Bounds on the delay's derivatives over a whole table.
@@ -123,8 +125,8 @@ impl PassTable<'_> {
         let (start, end) = (f64::from(start as i32), f64::from(end as i32));
         series[0] = (start + end) * unit - even;
         series[1] = (end - start) * unit - odd;
-        let entry = self.directory.get(segment / 2).map_or(0, |word| word >> (16 * (segment % 2)));
-        (series, self.layout.half_length(entry & 0xF))
+        let entry = entry(self.directory, segment as u32);
+        (series, self.layout.half_length(entry >> 16 & 0xF))
     }
 }
 

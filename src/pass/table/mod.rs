@@ -35,7 +35,7 @@ use crate::time::GpsTime;
 
 pub use extremes::MotionExtremes;
 
-pub(super) use evaluate::{LEAST_FRACTION, LONGEST, MOST_FRACTION, NOISE};
+pub(super) use evaluate::{LEAST_FRACTION, LONGEST, MOST_FRACTION, NOISE, entry as directory_entry};
 pub(super) use lateness::{PARTIAL_RECORD_WORDS, PartialRecord};
 
 pub(super) const MAGIC: u32 = 0x4B54;
@@ -287,8 +287,9 @@ impl<'a> PassTable<'a> {
     /// # Cost
     /// A loop over the segments: for set-up.
     pub fn rapidity_noise(&self) -> u32 {
-        let entries = self.directory.iter().flat_map(|word| [word & 0xFFFF, word >> 16]);
-        let shortest = entries.take(self.segments()).map(|entry| entry & 0xF).min();
+        let lengths =
+            (0..self.word(13) >> 16).map(|segment| evaluate::entry(self.directory, segment) >> 16 & 0xF);
+        let shortest = lengths.min();
         self.layout.rapidity_noise(shortest.unwrap_or(0))
     }
 
